@@ -1,0 +1,1 @@
+"""Other libraries and the online service; nothing else imports astroplan or astroquery."""

@@ -1,0 +1,1 @@
+"""Decisions: numbers in, numbers out; no description and no astropy."""

@@ -1,0 +1,1 @@
+"""Words and pictures: tables, figures, page, calendar; computes nothing."""

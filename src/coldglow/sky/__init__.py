@@ -1,0 +1,1 @@
+"""Where things are: a time grid in, place, orientation and observability out."""
