@@ -1,0 +1,404 @@
+"""The command line: words in, one answer out, an exit status.
+
+Nothing heavy is imported until a command runs, so that `--help` answers at once.
+"""
+
+from __future__ import annotations
+
+import argparse
+import re
+import sys
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from coldglow.errors import ColdglowError
+
+if TYPE_CHECKING:
+    from coldglow.report.results import Result
+
+DONE, NOT_FEASIBLE, WRONG_INPUT, INTERNAL, INTERRUPTED = 0, 1, 2, 70, 130
+
+Add = Callable[[argparse.ArgumentParser], None]
+Run = Callable[[argparse.Namespace], "Result | str"]
+
+
+@dataclass(frozen=True, slots=True)
+class Command:
+    """One command: the question it answers, an example, its arguments and what runs it.
+
+    `word` is the name of the one positional word that the command needs, or '' where it needs none or many.
+    """
+
+    question: str
+    example: str
+    word: str
+    add: Add
+    run: Run
+
+
+class Parser(argparse.ArgumentParser):
+    """argparse with wrong input as status 2 and one line that says where help is."""
+
+    def error(self, message: str) -> None:  # type: ignore[override]
+        """Print the mistake and leave with status 2."""
+        self.exit(WRONG_INPUT, f"{self.prog}: {message}; `{self.prog} --help` lists what is accepted\n")
+
+
+def request_word(parser: argparse.ArgumentParser) -> None:
+    """Add the REQUEST word that most commands take."""
+    parser.add_argument("word", nargs="*", metavar="REQUEST.yaml", help="path of the request")
+
+
+def target_word(parser: argparse.ArgumentParser) -> None:
+    """Add the TARGET word."""
+    parser.add_argument("word", nargs="*", metavar="TARGET", help="name or path of a target")
+
+
+def add_place(parser: argparse.ArgumentParser) -> None:
+    """Add the two ways to say where the observer stands."""
+    where = parser.add_mutually_exclusive_group(required=True)
+    where.add_argument("--instrument", metavar="NAME", help="observe from this instrument, within its limits")
+    where.add_argument(
+        "--site",
+        nargs=3,
+        metavar=("LON", "LAT", "HEIGHT"),
+        help="longitude (deg, east positive), latitude (deg), height (m)",
+    )
+
+
+def add_times(parser: argparse.ArgumentParser) -> None:
+    """Add the two ways to say when."""
+    parser.add_argument("--from", dest="first", metavar="DATE", help="first instant (UTC, ISO date or time)")
+    parser.add_argument("--to", dest="last", metavar="DATE", help="last instant (UTC)")
+    parser.add_argument("--step", default="1h", metavar="DT", help="step (bare number: minutes; default 1h)")
+    parser.add_argument("--at", nargs="+", action="extend", metavar="TIME", help="these instants (UTC)")
+
+
+def add_glow(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `glow`."""
+    target_word(parser)
+    parser.add_argument("--temperature", metavar="T", help="temperature (bare number: K)")
+    parser.add_argument("--column", metavar="N", help="vertical column (bare number: m-2)")
+    parser.add_argument("--band", nargs=2, metavar=("FROM", "TO"), help="wavelengths (bare numbers: um)")
+
+
+def run_glow(words: argparse.Namespace) -> Result:
+    """Run `glow`."""
+    from coldglow.answers import glow
+
+    return glow(words.word, temperature=words.temperature, column=words.column, band=words.band)
+
+
+def add_sky(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `sky`."""
+    target_word(parser)
+    add_place(parser)
+    add_times(parser)
+    parser.add_argument("--longitudes", metavar="SYSTEM", help="longitude system of the target")
+
+
+def run_sky(words: argparse.Namespace) -> Result:
+    """Run `sky`."""
+    from coldglow.answers import sky
+
+    return sky(
+        words.word,
+        instrument=words.instrument,
+        site=words.site,
+        first=words.first,
+        last=words.last,
+        step=words.step,
+        at=words.at,
+        longitudes=words.longitudes,
+    )
+
+
+def add_expose(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `expose`."""
+    request_word(parser)
+    parser.add_argument("--at", metavar="TIME", help="the moment (UTC); default: the median observable step")
+
+
+def run_expose(words: argparse.Namespace) -> Result:
+    """Run `expose`."""
+    from coldglow.answers import expose
+
+    return expose(words.word, at=words.at)
+
+
+def add_hours(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `hours`."""
+    request_word(parser)
+    parser.add_argument("--length", metavar="DT", help="best stretch of this length in each night (bare: h)")
+
+
+def run_hours(words: argparse.Namespace) -> Result:
+    """Run `hours`."""
+    from coldglow.answers import hours
+
+    return hours(words.word, length=words.length)
+
+
+def run_nights(words: argparse.Namespace) -> Result:
+    """Run `nights`."""
+    from coldglow.answers import nights
+
+    return nights(words.word)
+
+
+def add_plan(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `plan`."""
+    request_word(parser)
+    parser.add_argument("--out", required=True, metavar="DIR", help="folder to write")
+    parser.add_argument("--force", action="store_true", help="move an existing folder aside first")
+
+
+def run_plan(words: argparse.Namespace) -> Result:
+    """Run `plan`."""
+    from coldglow.answers import plan
+
+    return plan(words.word, out=words.out, force=words.force)
+
+
+def add_check(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `check`."""
+    parser.add_argument("word", nargs="+", metavar="FILE", help="descriptions to read")
+
+
+def run_check(words: argparse.Namespace) -> Result:
+    """Run `check`."""
+    from coldglow.answers import check
+
+    return check(words.word)
+
+
+def add_show(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `show`."""
+    parser.add_argument(
+        "word", nargs="*", metavar="NAME", help="targets, instruments, or the name of one; empty: both lists"
+    )
+
+
+def run_show(words: argparse.Namespace) -> Result:
+    """Run `show`."""
+    from coldglow.answers import show
+
+    return show(words.word or "")
+
+
+def add_draft(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `draft`."""
+    parser.add_argument("--target", required=True, metavar="NAME")
+    parser.add_argument("--instrument", required=True, metavar="NAME")
+
+
+def run_draft(words: argparse.Namespace) -> str:
+    """Run `draft`."""
+    from coldglow.answers import draft
+
+    return draft(words.target, words.instrument)
+
+
+COMMANDS: dict[str, Command] = {
+    "plan": Command(
+        "Everything for one proposal, as a report",
+        "coldglow plan examples/uranus-season.yaml --out uranus-plan",
+        "REQUEST.yaml",
+        add_plan,
+        run_plan,
+    ),
+    "glow": Command(
+        "How bright is it, line by line?",
+        "coldglow glow uranus --temperature 500K --band 3.4um 4.1um",
+        "TARGET",
+        add_glow,
+        run_glow,
+    ),
+    "sky": Command(
+        "Where is it, which longitude faces us, how fast does it recede?",
+        "coldglow sky uranus --site -70.4deg -24.6deg 2600m --from 2027-11-20 --to 2027-11-21 --step 1h",
+        "TARGET",
+        add_sky,
+        run_sky,
+    ),
+    "expose": Command(
+        "How long must I integrate, and what limits me?",
+        "coldglow expose examples/uranus-season.yaml --at 2027-11-25T05:00",
+        "REQUEST.yaml",
+        add_expose,
+        run_expose,
+    ),
+    "hours": Command(
+        "Which hours of which nights are best?",
+        "coldglow hours examples/uranus-season.yaml --write hours.ecsv",
+        "REQUEST.yaml",
+        add_hours,
+        run_hours,
+    ),
+    "nights": Command(
+        "How many nights must I request?",
+        "coldglow nights examples/uranus-season.yaml",
+        "REQUEST.yaml",
+        request_word,
+        run_nights,
+    ),
+    "draft": Command(
+        "Start a request of my own",
+        "coldglow draft --target uranus --instrument echelle-4m > my.yaml",
+        "",
+        add_draft,
+        run_draft,
+    ),
+    "check": Command(
+        "Is my file right, and what did you understand?",
+        "coldglow check my.yaml",
+        "",
+        add_check,
+        run_check,
+    ),
+    "show": Command(
+        "What ships with it?",
+        "coldglow show uranus --write uranus.json",
+        "",
+        add_show,
+        run_show,
+    ),
+}
+
+
+def overview() -> str:
+    """Return the text of `coldglow --help`."""
+    width = max(map(len, COMMANDS))
+    lines = [f"  {name:<{width}}  {command.question}" for name, command in COMMANDS.items()]
+    return "\n".join(
+        [
+            "usage: coldglow COMMAND ...",
+            "",
+            "Can a giant planet's infrared H3+ glow be detected: when, for how long, in how many nights?",
+            "",
+            *lines,
+            "",
+            "`coldglow COMMAND --help` explains one of them with an example; `coldglow --version` tells the version.",
+            "Exit status: 0 done, 1 not feasible (with --strict), 2 wrong input, 70 internal error,",
+            "130 interrupted.",
+        ]
+    )
+
+
+def build_parser(name: str) -> Parser:
+    """Return the parser of one command."""
+    command = COMMANDS[name]
+    parser = Parser(
+        prog=f"coldglow {name}",
+        description=command.question,
+        epilog=f"example:\n  {command.example}",
+        formatter_class=argparse.RawDescriptionHelpFormatter,
+        allow_abbrev=False,
+    )
+    command.add(parser)
+    if name != "draft":
+        parser.add_argument(
+            "--write",
+            action="append",
+            default=[],
+            metavar="FILE",
+            help="also write the answer, format by extension: .ecsv .csv .json .tex",
+        )
+        parser.add_argument("--strict", action="store_true", help="exit status 1 when the answer is no")
+    return parser
+
+
+def parse(arguments: Sequence[str]) -> tuple[Command, argparse.Namespace]:
+    """Parse the words after `coldglow`.
+
+    A word such as ``-70.4deg`` is a value, not an option (a leading blank tells argparse so), and an option
+    that takes a list gives its last word back when the command's own word is missing, so that
+    ``--at T1 T2 TARGET`` works.
+    """
+    name, *rest = arguments
+    parser = build_parser(name)
+    command = COMMANDS[name]
+    shielded = [f" {word}" if re.match(r"-\.?\d", word) else word for word in rest]
+    words = parser.parse_intermixed_args(shielded)
+    for key, value in vars(words).items():
+        if isinstance(value, list):
+            setattr(words, key, [item.strip() if isinstance(item, str) else item for item in value])
+        elif isinstance(value, str):
+            setattr(words, key, value.strip())
+    if command.word:
+        found = words.word
+        if not found:
+            for value in vars(words).values():
+                if isinstance(value, list) and len(value) > 1 and value[-1] == rest[-1]:
+                    found = [value.pop()]
+        if len(found) != 1:
+            parser.error(f"give one {command.word}" + (f", not {len(found)}" if found else ""))
+        words.word = found[0]
+    elif name == "show":
+        if len(words.word) > 1:
+            parser.error("give one name at most")
+        words.word = words.word[0] if words.word else ""
+    return command, words
+
+
+def run(arguments: Sequence[str]) -> int:
+    """Run one command and print its answer; return the exit status."""
+    command, words = parse(arguments)
+    answer = command.run(words)
+    if isinstance(answer, str):
+        sys.stdout.write(answer)
+        return DONE
+    for path in words.write:
+        answer.write(path)
+    print(answer)
+    for sentence in answer.warnings:
+        print(f"note: {sentence}", file=sys.stderr)
+    return NOT_FEASIBLE if words.strict and not answer.feasible else DONE
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Entry point of the `coldglow` command; returns the exit status."""
+    words = list(sys.argv[1:] if arguments is None else arguments)
+    if not words or words[0] in ("-h", "--help", "help"):
+        print(overview())
+        return DONE if words else WRONG_INPUT
+    if words[0] == "--version":
+        from coldglow import __version__
+
+        print(f"coldglow {__version__}")
+        return DONE
+    if words[0] not in COMMANDS:
+        from difflib import get_close_matches
+
+        near = get_close_matches(words[0], COMMANDS, 1)
+        hint = f"; did you mean `{near[0]}`?" if near else ""
+        print(f"coldglow: no command `{words[0]}`{hint} (`coldglow --help` lists them)", file=sys.stderr)
+        return WRONG_INPUT
+    try:
+        return run(words)
+    except ColdglowError as error:
+        print(error, file=sys.stderr)
+        return WRONG_INPUT
+    except SystemExit as stop:
+        return int(stop.code or 0)
+    except KeyboardInterrupt:
+        print("interrupted; nothing was left half-written", file=sys.stderr)
+        return INTERRUPTED
+    except BrokenPipeError:
+        sys.stderr.close()
+        return DONE
+    except Exception as error:
+        import traceback
+
+        traceback.print_exc()
+        print(
+            f"coldglow: internal error ({type(error).__name__}). This is a fault of the program, not of your "
+            "input: please report it with the command and the lines above.",
+            file=sys.stderr,
+        )
+        return INTERNAL
+
+
+if __name__ == "__main__":
+    sys.exit(main())
