@@ -1,0 +1,203 @@
+"""Temperature and column at a date: how the ionosphere goes on from the epoch of its description."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from datetime import UTC, datetime, timedelta
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from coldglow.describe.records import Cooling, Emission, Estimate
+from coldglow.errors import RangeError
+
+Floats = NDArray[np.float64]
+
+COLDEST_K = 150.0  # the span of the line list; below it no light is left, above it lines are missing
+HOTTEST_K = 1500.0
+JULIAN_YEAR_S = 365.25 * 86400.0
+
+
+def seconds_since(epoch: str, dates: str | Sequence[str] | ArrayLike) -> Floats:
+    """Return the seconds from an ISO date to other ones, ndarray[date].
+
+    `dates` are ISO dates or times (one or a sequence), or decimal years (2031.5 is the middle of 2031).
+    Calendar days of 86 400 s: leap seconds, under a minute in a century, do not matter to a cooling law.
+
+    Raises: RangeError if a text is no ISO date.
+    """
+    start = _moment(epoch)
+    listed = np.atleast_1d(np.asarray(dates))
+    moments = [_moment(str(item)) for item in listed] if listed.dtype.kind in "UO" else [
+        _year_moment(float(item)) for item in listed
+    ]
+    return np.array([(moment - start).total_seconds() for moment in moments])
+
+
+def state_at(
+    emission: Emission, cooling: Cooling, dates: str | Sequence[str] | ArrayLike
+) -> tuple[Floats, Floats]:
+    """Return the temperature in K and the vertical column in m^-2 on these dates, each ndarray[date].
+
+    The temperature follows the law: constant; T0 + rate t; floor + (T0 - floor) exp(-t / time scale); or a
+    table, straight between its dates. The column is N0 exp(column rate t), or that of the table with
+    ln N straight between its dates.
+
+    Raises: RangeError with the key path, for a date after `valid_until` or outside the table, and where
+    the law leaves 150-1500 K. A straight line with a floor stops there instead.
+    """
+    time_s = seconds_since(cooling.epoch, dates)
+    _refuse_late(cooling, time_s)
+    temperature_k = _temperature(
+        cooling,
+        time_s,
+        emission.temperature_k.value,
+        cooling.rate_k_s.value,
+        cooling.floor_k.value if cooling.floor_k else None,
+        cooling.time_scale_s.value if cooling.time_scale_s else None,
+    )
+    _refuse_outside(cooling, time_s, temperature_k)
+    column_m2 = _column(cooling, time_s, emission.column_m2.value, cooling.column_rate_s.value)
+    return temperature_k, column_m2
+
+
+def sample_states(
+    emission: Emission,
+    cooling: Cooling,
+    dates: str | Sequence[str] | ArrayLike,
+    trials: int,
+    rng: np.random.Generator,
+) -> tuple[Floats, Floats]:
+    """Return temperature in K and column in m^-2 of possible planets, each ndarray[trial, date].
+
+    One trial is one planet: a temperature, a column and a law drawn from their uncertainties and then
+    followed through all dates. T, rate, column rate and floor are normal; the column and the time scale,
+    which cannot be negative, log-normal with the stated value as median and sigma(ln) = uncertainty / value.
+    The uncertainty of a table is that of the emission block, common to all its dates. A trial that leaves
+    150-1500 K is held at that edge: at 150 K no light is left, so "not detectable" stays what it is.
+    The night-to-night scatter is not in here: it averages over nights, the uncertainty does not.
+
+    Raises: RangeError as `state_at`, whose answer is the one for no uncertainty at all.
+    """
+    central_k, _ = state_at(emission, cooling, dates)
+    time_s = seconds_since(cooling.epoch, dates)
+    draws = rng.standard_normal((6, trials, 1))  # always six, so that one uncertainty leaves the others' draws
+    start_k = _normal(emission.temperature_k, draws[0])
+    temperature_k = _temperature(
+        cooling,
+        time_s,
+        start_k,
+        _normal(cooling.rate_k_s, draws[1]),
+        _normal(cooling.floor_k, draws[2]) if cooling.floor_k else None,
+        _log_normal(cooling.time_scale_s, draws[3]) if cooling.time_scale_s else None,
+    )
+    if cooling.law == "table":
+        temperature_k = central_k + (start_k - emission.temperature_k.value)
+    column_m2 = _column(cooling, time_s, emission.column_m2.value, _normal(cooling.column_rate_s, draws[4]))
+    column_m2 = column_m2 * np.exp(_relative(emission.column_m2) * draws[5])
+    shape = (trials, time_s.size)
+    return (
+        np.broadcast_to(np.clip(temperature_k, COLDEST_K, HOTTEST_K), shape).copy(),
+        np.broadcast_to(column_m2, shape).copy(),
+    )
+
+
+def _temperature(
+    cooling: Cooling,
+    time_s: Floats,
+    start_k: float | Floats,
+    rate_k_s: float | Floats,
+    floor_k: float | Floats | None,
+    time_scale_s: float | Floats | None,
+) -> Floats:
+    """Return the law as it stands, before any limit; parameters broadcast against ndarray[date]."""
+    if cooling.law == "table":
+        return np.interp(time_s, seconds_since(cooling.epoch, cooling.table_dates), cooling.table_temperature_k)
+    if cooling.law == "exponential":
+        if floor_k is None or time_scale_s is None:
+            raise RangeError("An exponential cooling needs both a floor and a time scale.", "cooling")
+        return np.asarray(floor_k + (start_k - floor_k) * np.exp(-time_s / time_scale_s))
+    if cooling.law == "linear":
+        line = start_k + rate_k_s * time_s
+        return np.asarray(line if floor_k is None else np.maximum(line, floor_k))
+    return np.asarray(start_k + 0.0 * time_s)
+
+
+def _column(cooling: Cooling, time_s: Floats, start_m2: float, rate_s: float | Floats) -> Floats:
+    if cooling.law == "table" and cooling.table_column_m2:
+        table_s = seconds_since(cooling.epoch, cooling.table_dates)
+        return np.exp(np.interp(time_s, table_s, np.log(cooling.table_column_m2)))
+    return np.asarray(start_m2 * np.exp(rate_s * time_s))
+
+
+def _refuse_late(cooling: Cooling, time_s: Floats) -> None:
+    """Refuse dates after the law's validity, or outside its table."""
+    if cooling.law == "table":
+        table_s = seconds_since(cooling.epoch, cooling.table_dates)
+        if np.any((time_s < table_s.min()) | (time_s > table_s.max())):
+            wrong = time_s[(time_s < table_s.min()) | (time_s > table_s.max())][0]
+            raise RangeError(
+                f"The cooling table says nothing about {_date(cooling, wrong)}: it runs from "
+                f"{cooling.table_dates[0]} to {cooling.table_dates[-1]}.",
+                "cooling.table",
+            )
+    stops_at_floor = cooling.law == "linear" and cooling.floor_k is not None
+    if cooling.valid_until and not stops_at_floor:
+        latest_s = seconds_since(cooling.epoch, cooling.valid_until)[0]
+        if np.any(time_s > latest_s):
+            raise RangeError(
+                f"The {cooling.law} cooling is said to hold until {cooling.valid_until}, and "
+                f"{_date(cooling, time_s.max())} is later; ask for earlier dates, or write a later "
+                "valid_until, or a law with a floor.",
+                "cooling.valid_until",
+            )
+
+
+def _refuse_outside(cooling: Cooling, time_s: Floats, temperature_k: Floats) -> None:
+    """Refuse a law that has left the temperatures that the line list covers."""
+    wrong = (temperature_k < COLDEST_K) | (temperature_k > HOTTEST_K)
+    if not wrong.any() or cooling.law == "constant":
+        return  # a constant temperature is a matter of the emission block, which says so itself
+    first = int(np.argmax(wrong))
+    advice = (
+        "; give floor_k where the cooling shall stop, or ask for earlier dates"
+        if cooling.law == "linear" and temperature_k[first] < COLDEST_K
+        else ""
+    )
+    key = {"linear": "cooling.rate", "exponential": "cooling.time_scale", "table": "cooling.table"}[cooling.law]
+    raise RangeError(
+        f"The {cooling.law} cooling gives {temperature_k[first]:.0f} K on {_date(cooling, time_s[first])}; "
+        f"the line list holds from {COLDEST_K:.0f} K to {HOTTEST_K:.0f} K{advice}.",
+        key,
+    )
+
+
+def _normal(estimate: Estimate, draws: Floats) -> Floats:
+    return estimate.value + estimate.uncertainty * draws
+
+
+def _log_normal(estimate: Estimate, draws: Floats) -> Floats:
+    return np.asarray(estimate.value * np.exp(_relative(estimate) * draws))
+
+
+def _relative(estimate: Estimate) -> float:
+    return estimate.uncertainty / estimate.value if estimate.value else 0.0
+
+
+def _moment(text: str) -> datetime:
+    try:
+        moment = datetime.fromisoformat(text)
+    except ValueError:
+        raise RangeError(f"{text!r} is no ISO date; write for instance 2031-10-01.", "cooling.epoch") from None
+    return moment.replace(tzinfo=UTC) if moment.tzinfo is None else moment
+
+
+def _year_moment(year: float) -> datetime:
+    whole = math.floor(year)
+    start = datetime(whole, 1, 1, tzinfo=UTC)
+    return start + (year - whole) * (datetime(whole + 1, 1, 1, tzinfo=UTC) - start)
+
+
+def _date(cooling: Cooling, time_s: float) -> str:
+    return (_moment(cooling.epoch) + timedelta(seconds=float(time_s))).date().isoformat()

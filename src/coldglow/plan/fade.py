@@ -1,0 +1,209 @@
+"""Until when a cooling planet stays detectable: information over (temperature, column), states, nights.
+
+Numbers only. Trials are possible planets, years the seasons asked about, each with its own geometry.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy.interpolate import RectBivariateSpline
+
+from coldglow.errors import RangeError
+
+Floats = NDArray[np.float64]
+Bools = NDArray[np.bool_]
+
+INTERVAL = (0.15865525393145707, 0.5, 0.8413447460685429)  # -1 sigma, median, +1 sigma of a normal
+
+
+@dataclass(frozen=True, slots=True)
+class InformationGrid:
+    """Information (SNR^2 before floors) of one night in each year, over temperature and column.
+
+    `temperature_k` ndarray[temperature] and `column_m2` ndarray[column] ascend; `information` is
+    ndarray[year, temperature, column], marginalised over the nuisances of the visit, of the night that
+    would be used in that year. A year without an observable night holds zeros.
+    """
+
+    temperature_k: Floats
+    column_m2: Floats
+    information: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class Rules:
+    """What counts as detected, and what can be spent.
+
+    1/SNR^2 of n equal nights = (1/I + visit_floor^2)/n + common_floor^2. `budget_nights` are whole nights;
+    `clear_nights` is the probability of 0, 1, ... budget clear nights among them, None = all are clear.
+    """
+
+    snr: float
+    budget_nights: int
+    visit_floor: float = 0.0
+    common_floor: float = 0.0
+    clear_nights: Floats | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Spread:
+    """Median and central 68 % interval; every value is one that occurred in a trial, so inf stays inf."""
+
+    median: Floats
+    low: Floats
+    high: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class Outlook:
+    """What becomes of the target: every array is ndarray[year].
+
+    `dropout_year` is the first year that needs more than the budget, inf where that is none of the years
+    asked about; `dropout_probability` the share of the trials in which it is one of them.
+    """
+
+    year: Floats
+    temperature_k: Spread
+    column_m2: Spread
+    relative_brightness: Spread
+    snr_one_night: Spread
+    nights_needed: Spread
+    probability_detectable: Floats
+    probability_error: Floats
+    dropout_year: Spread
+    dropout_probability: float
+
+
+def grid_axes(
+    temperature_k: Floats, column_m2: Floats, temperatures: int = 24, columns: int = 12
+) -> tuple[Floats, Floats]:
+    """Return axes for an `InformationGrid` that cover all these states: even in 1/T and in ln N.
+
+    With these numbers ln(information) is interpolated to 1e-3 or better (measured in the tests).
+    """
+    coldest, hottest = _widened(1.0 / np.max(temperature_k), 1.0 / np.min(temperature_k), 1e-5)
+    least, most = _widened(np.log(np.min(column_m2)), np.log(np.max(column_m2)), 0.1)
+    return 1.0 / np.linspace(hottest, coldest, temperatures), np.exp(np.linspace(least, most, columns))
+
+
+def night_information(grid: InformationGrid, year: int, temperature_k: ArrayLike, column_m2: ArrayLike) -> Floats:
+    """Return the information of one night in the year of that index, for states of any (broadcast) shape.
+
+    ln(information) is interpolated by a bicubic spline in 1/T and ln N, in both of which it is nearly
+    straight (exp(-c2 E/T) lines; N^2 or N by what makes the noise).
+
+    Raises: RangeError for a state outside the grid.
+    """
+    kelvin, column = np.broadcast_arrays(np.asarray(temperature_k, float), np.asarray(column_m2, float))
+    slack = 1e-9
+    for name, unit, values, axis in (
+        ("temperature", "K", kelvin, grid.temperature_k),
+        ("column", "m-2", column, grid.column_m2),
+    ):
+        wrong = (values < axis[0] * (1 - slack)) | (values > axis[-1] * (1 + slack)) | np.isnan(values)
+        if wrong.any():
+            raise RangeError(
+                f"A {name} of {values[wrong].flat[0]:.4g} {unit} lies outside the tabulated span of "
+                f"{axis[0]:.4g} to {axis[-1]:.4g} {unit}."
+            )
+    table = grid.information[year]
+    if not table.any():
+        return np.zeros(kelvin.shape)
+    spline = RectBivariateSpline(
+        -1.0 / grid.temperature_k,
+        np.log(grid.column_m2),
+        np.log(np.maximum(table, np.finfo(float).tiny)),
+        kx=min(3, grid.temperature_k.size - 1),
+        ky=min(3, grid.column_m2.size - 1),
+    )
+    return np.asarray(np.exp(spline.ev(-1.0 / kelvin, np.log(column))))
+
+
+def nights_for(information: ArrayLike, rules: Rules) -> Floats:
+    """Return the whole clear nights that reach the goal, inf where nothing does; shape as `information`."""
+    per_night = np.asarray(information, dtype=float)
+    left = rules.snr**-2.0 - rules.common_floor**2
+    if left <= 0.0:
+        return np.full(per_night.shape, np.inf)
+    with np.errstate(divide="ignore", over="ignore"):
+        exact = (1.0 / per_night + rules.visit_floor**2) / left
+    return np.maximum(1.0, np.ceil(exact * (1.0 - 1e-12)))  # exactly reached is reached, despite rounding
+
+
+def snr_of(information: ArrayLike, rules: Rules, nights: float = 1.0) -> Floats:
+    """Return the SNR of a number of equal nights under the floors; shape as `information`."""
+    per_night = np.asarray(information, dtype=float)
+    with np.errstate(divide="ignore", over="ignore"):
+        variance = (1.0 / per_night + rules.visit_floor**2) / nights + rules.common_floor**2
+        return np.asarray(1.0 / np.sqrt(variance))
+
+
+def outlook(
+    year: ArrayLike,
+    grid: InformationGrid,
+    temperature_k: Floats,
+    column_m2: Floats,
+    brightness: Floats,
+    rules: Rules,
+    reference: ArrayLike | None = None,
+) -> Outlook:
+    """Return what becomes of the target in each year.
+
+    `temperature_k`, `column_m2` and `brightness` (any unit, all lines asked for) are ndarray[trial, year];
+    brightness is told relative to `reference`, a scalar or ndarray[trial] (default: the first year of the
+    same trial, so that what is uncertain about today cancels). A single trial without uncertainty is the
+    deterministic answer.
+
+    Raises: RangeError for a state outside the grid.
+    """
+    years = np.asarray(year, dtype=float)
+    information = np.stack(
+        [night_information(grid, i, temperature_k[:, i], column_m2[:, i]) for i in range(years.size)], axis=1
+    )
+    needed = nights_for(information, rules)
+    base = brightness[:, 0] if reference is None else np.broadcast_to(reference, brightness.shape[:1])
+    chance = _chance(needed, rules)
+    out = needed > rules.budget_nights
+    dropout = np.where(out.any(axis=1), years[np.argmax(out, axis=1)], np.inf)
+    return Outlook(
+        year=years,
+        temperature_k=spread(temperature_k),
+        column_m2=spread(column_m2),
+        relative_brightness=spread(brightness / base[:, None]),
+        snr_one_night=spread(snr_of(information, rules)),
+        nights_needed=spread(needed),
+        probability_detectable=chance.mean(axis=0),
+        probability_error=chance.std(axis=0) / np.sqrt(chance.shape[0]),
+        dropout_year=spread(dropout),
+        dropout_probability=float(np.isfinite(dropout).mean()),
+    )
+
+
+def nights_map(
+    grid: InformationGrid, year: int, temperature_k: Floats, column_m2: Floats, rules: Rules
+) -> Floats:
+    """Return the nights needed over ndarray[temperature, column] with the geometry of one year."""
+    return nights_for(night_information(grid, year, temperature_k[:, None], column_m2[None, :]), rules)
+
+
+def spread(values: Floats) -> Spread:
+    """Return median and 68 % interval over the trials, the first axis."""
+    low, median, high = np.quantile(values, INTERVAL, axis=0, method="inverted_cdf")
+    return Spread(median=np.asarray(median), low=np.asarray(low), high=np.asarray(high))
+
+
+def _chance(needed: Floats, rules: Rules) -> Floats:
+    """Return the probability that the budget has enough clear nights, of the shape of `needed`."""
+    if rules.clear_nights is None:
+        return (needed <= rules.budget_nights).astype(float)
+    at_least = np.append(np.cumsum(np.asarray(rules.clear_nights, dtype=float)[::-1])[::-1], 0.0)
+    index = np.where(needed < at_least.size, needed, at_least.size - 1).astype(int)
+    return at_least[index]
+
+
+def _widened(low: float, high: float, least: float) -> tuple[float, float]:
+    margin = max(0.01 * (high - low), least)
+    return low - margin, high + margin

@@ -1,0 +1,122 @@
+"""Faintest things that can be detected: coldest temperature, smallest column, both against time.
+
+Numbers only. A `measure` is any vectorised function that grows with what is detected (the SNR for a given
+time, or the information per second), and `needed` the value of it that counts as a detection.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.interpolate import CubicSpline
+from scipy.optimize import brentq
+
+Floats = NDArray[np.float64]
+Measure = Callable[[Floats], Floats]
+
+COLDEST_K, HOTTEST_K = 150.0, 1500.0  # the span of the line list
+SMALLEST_M2, LARGEST_M2 = 1e10, 1e20
+
+
+@dataclass(frozen=True, slots=True)
+class Edge:
+    """Where detection begins.
+
+    `kind` is "found"; "below" when all of the span is detectable, `value` then being its lower end; or
+    "none" when nothing of it is, `value` then being nan. `low` and `high` are the span that was searched.
+    """
+
+    value: float
+    kind: Literal["found", "below", "none"]
+    low: float
+    high: float
+
+
+def required_information(snr: float, visit_floor: float = 0.0, common_floor: float = 0.0) -> float:
+    """Return the information of one visit that reaches an SNR under floors: 1/SNR^2 = 1/I + floors^2.
+
+    inf when the floors alone keep the SNR below the goal: then no time is long enough.
+    """
+    left = snr**-2.0 - visit_floor**2 - common_floor**2
+    return 1.0 / left if left > 0.0 else np.inf
+
+
+def coldest_temperature(
+    measure: Measure, needed: float, low_k: float = COLDEST_K, high_k: float = HOTTEST_K
+) -> Edge:
+    """Return the lowest temperature in K at which `measure` reaches `needed`.
+
+    `measure` takes and returns ndarray[temperature]. At a fixed column a line grows with temperature only up
+    to some 1000 K, where the partition function takes over; so the span is scanned from its cold end and
+    the first rise to `needed` is the answer. Scanned and solved in 1/T, in which ln I is nearly straight.
+    """
+    nodes = 1.0 / np.linspace(1.0 / low_k, 1.0 / high_k, 64)
+    nodes[0], nodes[-1] = low_k, high_k
+    return _first_rise(measure, needed, nodes, lambda value: 1.0 / value)
+
+
+def smallest_column(
+    measure: Measure, needed: float, low_m2: float = SMALLEST_M2, high_m2: float = LARGEST_M2
+) -> Edge:
+    """Return the smallest column in m^-2 at which `measure` reaches `needed`.
+
+    `measure` takes and returns ndarray[column]. The SNR is linear in N only while the background makes the
+    noise, so this is a root in ln N, whatever the regime.
+    """
+    nodes = np.geomspace(low_m2, high_m2, 41)
+    nodes[0], nodes[-1] = low_m2, high_m2
+    return _first_rise(measure, needed, nodes, np.exp, np.log)
+
+
+def against_time(
+    find: Callable[[Measure, float], Edge], rate: Measure, information: float, time_s: Floats
+) -> tuple[Edge, ...]:
+    """Return the edge of detection for each time, one per element of ndarray[time].
+
+    `find` is `coldest_temperature` or `smallest_column`, `rate` the information per second as a function of
+    the same quantity, `information` what a detection needs (`required_information`). Information grows in
+    proportion to time, so a longer time is a smaller rate needed.
+    """
+    with np.errstate(divide="ignore"):
+        return tuple(find(rate, float(needed)) for needed in information / np.asarray(time_s, dtype=float))
+
+
+def tabulated(temperature_k: Floats, measure: Floats) -> Measure:
+    """Return a function of temperature through tabulated values > 0, by a spline of ln(value) in 1/T.
+
+    40 points over 150-1500 K hold an SNR to 1e-4 (measured in the tests).
+    """
+    order = np.argsort(-np.asarray(temperature_k, dtype=float))
+    spline = CubicSpline(
+        1.0 / np.asarray(temperature_k, dtype=float)[order], np.log(np.asarray(measure, dtype=float)[order])
+    )
+    return lambda value: np.asarray(np.exp(spline(1.0 / np.asarray(value, dtype=float))))
+
+
+def _first_rise(
+    measure: Measure,
+    needed: float,
+    nodes: Floats,
+    back: Callable[[float], float],
+    forth: Callable[[float], float] | None = None,
+) -> Edge:
+    """Return the first rise of `measure` to `needed` along the nodes, solved in the variable forth(value)."""
+    forth = back if forth is None else forth
+    low, high = float(nodes[0]), float(nodes[-1])
+    enough = np.asarray(measure(nodes)) >= needed
+    if not enough.any():
+        return Edge(np.nan, "none", low, high)
+    first = int(np.argmax(enough))
+    if first == 0:
+        return Edge(low, "below", low, high)
+
+    def lacking(variable: float) -> float:
+        value = float(np.asarray(measure(np.array([back(variable)])))[0])
+        return value / needed - 1.0
+
+    root = brentq(lacking, forth(nodes[first - 1]), forth(nodes[first]), xtol=1e-300, rtol=1e-14, maxiter=200)
+    return Edge(float(back(root)), "found", low, high)
