@@ -29,9 +29,11 @@ def seconds_since(epoch: str, dates: str | Sequence[str] | ArrayLike) -> Floats:
     """
     start = _moment(epoch)
     listed = np.atleast_1d(np.asarray(dates))
-    moments = [_moment(str(item)) for item in listed] if listed.dtype.kind in "UO" else [
-        _year_moment(float(item)) for item in listed
-    ]
+    moments = (
+        [_moment(str(item)) for item in listed]
+        if listed.dtype.kind in "UO"
+        else [_year_moment(float(item)) for item in listed]
+    )
     return np.array([(moment - start).total_seconds() for moment in moments])
 
 
@@ -82,7 +84,9 @@ def sample_states(
     """
     central_k, _ = state_at(emission, cooling, dates)
     time_s = seconds_since(cooling.epoch, dates)
-    draws = rng.standard_normal((6, trials, 1))  # always six, so that one uncertainty leaves the others' draws
+    draws = rng.standard_normal(
+        (6, trials, 1)
+    )  # always six, so that one uncertainty leaves the others' draws
     start_k = _normal(emission.temperature_k, draws[0])
     temperature_k = _temperature(
         cooling,
@@ -113,7 +117,9 @@ def _temperature(
 ) -> Floats:
     """Return the law as it stands, before any limit; parameters broadcast against ndarray[date]."""
     if cooling.law == "table":
-        return np.interp(time_s, seconds_since(cooling.epoch, cooling.table_dates), cooling.table_temperature_k)
+        return np.interp(
+            time_s, seconds_since(cooling.epoch, cooling.table_dates), cooling.table_temperature_k
+        )
     if cooling.law == "exponential":
         if floor_k is None or time_scale_s is None:
             raise RangeError("An exponential cooling needs both a floor and a time scale.", "cooling")
@@ -165,7 +171,9 @@ def _refuse_outside(cooling: Cooling, time_s: Floats, temperature_k: Floats) -> 
         if cooling.law == "linear" and temperature_k[first] < COLDEST_K
         else ""
     )
-    key = {"linear": "cooling.rate", "exponential": "cooling.time_scale", "table": "cooling.table"}[cooling.law]
+    key = {"linear": "cooling.rate", "exponential": "cooling.time_scale", "table": "cooling.table"}[
+        cooling.law
+    ]
     raise RangeError(
         f"The {cooling.law} cooling gives {temperature_k[first]:.0f} K on {_date(cooling, time_s[first])}; "
         f"the line list holds from {COLDEST_K:.0f} K to {HOTTEST_K:.0f} K{advice}.",
@@ -189,7 +197,9 @@ def _moment(text: str) -> datetime:
     try:
         moment = datetime.fromisoformat(text)
     except ValueError:
-        raise RangeError(f"{text!r} is no ISO date; write for instance 2031-10-01.", "cooling.epoch") from None
+        raise RangeError(
+            f"{text!r} is no ISO date; write for instance 2031-10-01.", "cooling.epoch"
+        ) from None
     return moment.replace(tzinfo=UTC) if moment.tzinfo is None else moment
 
 

@@ -12,6 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 from scipy.interpolate import RectBivariateSpline
 
 from coldglow.errors import RangeError
+from coldglow.plan.goal import demanded_information, with_floor
 
 Floats = NDArray[np.float64]
 Bools = NDArray[np.bool_]
@@ -89,7 +90,9 @@ def grid_axes(
     return 1.0 / np.linspace(hottest, coldest, temperatures), np.exp(np.linspace(least, most, columns))
 
 
-def night_information(grid: InformationGrid, year: int, temperature_k: ArrayLike, column_m2: ArrayLike) -> Floats:
+def night_information(
+    grid: InformationGrid, year: int, temperature_k: ArrayLike, column_m2: ArrayLike
+) -> Floats:
     """Return the information of one night in the year of that index, for states of any (broadcast) shape.
 
     ln(information) is interpolated by a bicubic spline in 1/T and ln N, in both of which it is nearly
@@ -124,21 +127,17 @@ def night_information(grid: InformationGrid, year: int, temperature_k: ArrayLike
 
 def nights_for(information: ArrayLike, rules: Rules) -> Floats:
     """Return the whole clear nights that reach the goal, inf where nothing does; shape as `information`."""
-    per_night = np.asarray(information, dtype=float)
-    left = rules.snr**-2.0 - rules.common_floor**2
-    if left <= 0.0:
-        return np.full(per_night.shape, np.inf)
+    per_night = with_floor(information, rules.visit_floor)
+    demand = demanded_information(rules.snr, rules.common_floor)
     with np.errstate(divide="ignore", over="ignore"):
-        exact = (1.0 / per_night + rules.visit_floor**2) / left
+        exact = demand / per_night
     return np.maximum(1.0, np.ceil(exact * (1.0 - 1e-12)))  # exactly reached is reached, despite rounding
 
 
 def snr_of(information: ArrayLike, rules: Rules, nights: float = 1.0) -> Floats:
     """Return the SNR of a number of equal nights under the floors; shape as `information`."""
-    per_night = np.asarray(information, dtype=float)
-    with np.errstate(divide="ignore", over="ignore"):
-        variance = (1.0 / per_night + rules.visit_floor**2) / nights + rules.common_floor**2
-        return np.asarray(1.0 / np.sqrt(variance))
+    visits = nights * with_floor(information, rules.visit_floor)
+    return np.asarray(np.sqrt(with_floor(visits, rules.common_floor)))
 
 
 def outlook(

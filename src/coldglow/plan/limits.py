@@ -36,15 +36,6 @@ class Edge:
     high: float
 
 
-def required_information(snr: float, visit_floor: float = 0.0, common_floor: float = 0.0) -> float:
-    """Return the information of one visit that reaches an SNR under floors: 1/SNR^2 = 1/I + floors^2.
-
-    inf when the floors alone keep the SNR below the goal: then no time is long enough.
-    """
-    left = snr**-2.0 - visit_floor**2 - common_floor**2
-    return 1.0 / left if left > 0.0 else np.inf
-
-
 def coldest_temperature(
     measure: Measure, needed: float, low_k: float = COLDEST_K, high_k: float = HOTTEST_K
 ) -> Edge:
@@ -78,8 +69,8 @@ def against_time(
     """Return the edge of detection for each time, one per element of ndarray[time].
 
     `find` is `coldest_temperature` or `smallest_column`, `rate` the information per second as a function of
-    the same quantity, `information` what a detection needs (`required_information`). Information grows in
-    proportion to time, so a longer time is a smaller rate needed.
+    the same quantity, `information` what one visit needs for a detection. Information grows in proportion
+    to time, so a longer time is a smaller rate needed.
     """
     with np.errstate(divide="ignore"):
         return tuple(find(rate, float(needed)) for needed in information / np.asarray(time_s, dtype=float))

@@ -77,5 +77,7 @@ def nearest_standards(
         return np.where(found, np.take_along_axis(values, ranked, axis=0), np.nan).T
 
     return Choice(
-        star=np.where(found, ranked, -1).T, airmass_difference=chosen(difference), separation_rad=chosen(apart)
+        star=np.where(found, ranked, -1).T,
+        airmass_difference=chosen(difference),
+        separation_rad=chosen(apart),
     )

@@ -76,7 +76,9 @@ def calendar_text(events: Iterable[Event], name: str, stamp_utc: str, version: s
     lines = [
         "BEGIN:VCALENDAR",
         "VERSION:2.0",
-        f"PRODID:-//coldglow//coldglow {_text(version)}//EN" if version else "PRODID:-//coldglow//coldglow//EN",
+        f"PRODID:-//coldglow//coldglow {_text(version)}//EN"
+        if version
+        else "PRODID:-//coldglow//coldglow//EN",
         "CALSCALE:GREGORIAN",
         "METHOD:PUBLISH",
         f"NAME:{_text(name)}",
