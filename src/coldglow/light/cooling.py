@@ -2,44 +2,34 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
-from datetime import UTC, datetime, timedelta
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
 from coldglow.describe.records import Cooling, Emission, Estimate
 from coldglow.errors import RangeError
+from coldglow.sky.clock import DAY_S, utc_from_iso
 
 Floats = NDArray[np.float64]
 
 COLDEST_K = 150.0  # the span of the line list; below it no light is left, above it lines are missing
 HOTTEST_K = 1500.0
-JULIAN_YEAR_S = 365.25 * 86400.0
 
 
-def seconds_since(epoch: str, dates: str | Sequence[str] | ArrayLike) -> Floats:
-    """Return the seconds from an ISO date to other ones, ndarray[date].
+def seconds_since(epoch: str, dates: str | Sequence[str]) -> Floats:
+    """Return the seconds from an ISO date (or time, UTC) to one or several other ones, ndarray[date].
 
-    `dates` are ISO dates or times (one or a sequence), or decimal years (2031.5 is the middle of 2031).
-    Calendar days of 86 400 s: leap seconds, under a minute in a century, do not matter to a cooling law.
+    Days of 86 400 s: leap seconds, under a minute in a century, do not matter to a cooling law.
 
     Raises: RangeError if a text is no ISO date.
     """
-    start = _moment(epoch)
-    listed = np.atleast_1d(np.asarray(dates))
-    moments = (
-        [_moment(str(item)) for item in listed]
-        if listed.dtype.kind in "UO"
-        else [_year_moment(float(item)) for item in listed]
-    )
-    return np.array([(moment - start).total_seconds() for moment in moments])
+    start = utc_from_iso(epoch)
+    listed = [dates] if isinstance(dates, str) else list(dates)
+    return np.array([utc_from_iso(date) for date in listed]) - start
 
 
-def state_at(
-    emission: Emission, cooling: Cooling, dates: str | Sequence[str] | ArrayLike
-) -> tuple[Floats, Floats]:
+def state_at(emission: Emission, cooling: Cooling, dates: str | Sequence[str]) -> tuple[Floats, Floats]:
     """Return the temperature in K and the vertical column in m^-2 on these dates, each ndarray[date].
 
     The temperature follows the law: constant; T0 + rate t; floor + (T0 - floor) exp(-t / time scale); or a
@@ -67,7 +57,7 @@ def state_at(
 def sample_states(
     emission: Emission,
     cooling: Cooling,
-    dates: str | Sequence[str] | ArrayLike,
+    dates: str | Sequence[str],
     trials: int,
     rng: np.random.Generator,
 ) -> tuple[Floats, Floats]:
@@ -117,9 +107,8 @@ def _temperature(
 ) -> Floats:
     """Return the law as it stands, before any limit; parameters broadcast against ndarray[date]."""
     if cooling.law == "table":
-        return np.interp(
-            time_s, seconds_since(cooling.epoch, cooling.table_dates), cooling.table_temperature_k
-        )
+        table_s = seconds_since(cooling.epoch, cooling.table_dates)
+        return np.interp(time_s, table_s, cooling.table_temperature_k)
     if cooling.law == "exponential":
         if floor_k is None or time_scale_s is None:
             raise RangeError("An exponential cooling needs both a floor and a time scale.", "cooling")
@@ -171,13 +160,11 @@ def _refuse_outside(cooling: Cooling, time_s: Floats, temperature_k: Floats) -> 
         if cooling.law == "linear" and temperature_k[first] < COLDEST_K
         else ""
     )
-    key = {"linear": "cooling.rate", "exponential": "cooling.time_scale", "table": "cooling.table"}[
-        cooling.law
-    ]
+    key = {"linear": "rate", "exponential": "time_scale", "table": "table"}[cooling.law]
     raise RangeError(
         f"The {cooling.law} cooling gives {temperature_k[first]:.0f} K on {_date(cooling, time_s[first])}; "
         f"the line list holds from {COLDEST_K:.0f} K to {HOTTEST_K:.0f} K{advice}.",
-        key,
+        f"cooling.{key}",
     )
 
 
@@ -193,21 +180,5 @@ def _relative(estimate: Estimate) -> float:
     return estimate.uncertainty / estimate.value if estimate.value else 0.0
 
 
-def _moment(text: str) -> datetime:
-    try:
-        moment = datetime.fromisoformat(text)
-    except ValueError:
-        raise RangeError(
-            f"{text!r} is no ISO date; write for instance 2031-10-01.", "cooling.epoch"
-        ) from None
-    return moment.replace(tzinfo=UTC) if moment.tzinfo is None else moment
-
-
-def _year_moment(year: float) -> datetime:
-    whole = math.floor(year)
-    start = datetime(whole, 1, 1, tzinfo=UTC)
-    return start + (year - whole) * (datetime(whole + 1, 1, 1, tzinfo=UTC) - start)
-
-
 def _date(cooling: Cooling, time_s: float) -> str:
-    return (_moment(cooling.epoch) + timedelta(seconds=float(time_s))).date().isoformat()
+    return str(np.datetime64(cooling.epoch[:10]) + np.timedelta64(int(time_s // DAY_S), "D"))

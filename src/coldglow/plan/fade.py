@@ -200,7 +200,7 @@ def _chance(needed: Floats, rules: Rules) -> Floats:
         return (needed <= rules.budget_nights).astype(float)
     at_least = np.append(np.cumsum(np.asarray(rules.clear_nights, dtype=float)[::-1])[::-1], 0.0)
     index = np.where(needed < at_least.size, needed, at_least.size - 1).astype(int)
-    return at_least[index]
+    return np.asarray(at_least[index])
 
 
 def _widened(low: float, high: float, least: float) -> tuple[float, float]:

@@ -73,12 +73,11 @@ def calendar_text(events: Iterable[Event], name: str, stamp_utc: str, version: s
     RFC 7986, section 5.1.
     """
     stamp = _utc(stamp_utc)
+    program = f"coldglow {version}".strip()
     lines = [
         "BEGIN:VCALENDAR",
         "VERSION:2.0",
-        f"PRODID:-//coldglow//coldglow {_text(version)}//EN"
-        if version
-        else "PRODID:-//coldglow//coldglow//EN",
+        f"PRODID:-//coldglow//{_text(program)}//EN",
         "CALSCALE:GREGORIAN",
         "METHOD:PUBLISH",
         f"NAME:{_text(name)}",
@@ -132,7 +131,7 @@ def _text(value: str) -> str:
 
 
 def _fold(line: str) -> list[str]:
-    """Cut a line into pieces of at most 75 octets, never inside a character; later ones start with a space."""
+    """Cut a line into pieces of at most 75 octets, not inside a character; later ones start with a space."""
     pieces, piece, octets = [], "", 0
     for character in line:
         size = len(character.encode())
