@@ -74,9 +74,7 @@ def sample_states(
     """
     central_k, _ = state_at(emission, cooling, dates)
     time_s = seconds_since(cooling.epoch, dates)
-    draws = rng.standard_normal(
-        (6, trials, 1)
-    )  # always six, so that one uncertainty leaves the others' draws
+    draws = rng.standard_normal((6, trials, 1))  # all six always: setting one uncertainty to 0 keeps the rest
     start_k = _normal(emission.temperature_k, draws[0])
     temperature_k = _temperature(
         cooling,
