@@ -1,0 +1,332 @@
+"""Where a body stands in the sky of an observer: light time, deflection, aberration, the turning Earth.
+
+Everything slow (bodies, precession and nutation) is computed exactly at nodes on a fixed lattice, one a
+day, and interpolated by cubic Hermite polynomials; everything fast (the Earth's rotation with the
+observer on it) exactly at each instant. The lattice is fixed in time and the interpolation local, so a
+piece of a grid gives the same numbers as the whole. Measured interpolation error: 40 m in distance,
+3e-3 m/s in rate, 0.001 arcsec in the frame (``tests/sky/test_place.py``).
+
+Left out: polar motion (0.5 arcsec in altitude), refraction, light deflection by planets.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import erfa
+import numpy as np
+
+from coldglow.describe.records import Orbit, Site
+from coldglow.sky.clock import DAY_S, Floats, tdb_from_tt, ut1_from_tt
+from coldglow.sky.ephemeris import AU_M, Ephemeris, check_span
+
+LIGHT_M_S = erfa.CMPS
+L2_DISTANCE_M = 0.01 * AU_M
+_EARTH_TURN_RAD_S = 2 * np.pi * 1.00273781191135448 / DAY_S  # ERFA era00: turns per UT1 day
+_J2000_JD = 2451545.0
+_NODE_S = DAY_S
+_MOON_NODE_S = 3600.0
+_MARGIN_S = 3 * DAY_S + 6 * 3600.0  # nodes beyond the instants, and the light time to Neptune
+_AROUND = 2  # nodes on either side that the derivative at a node needs
+
+
+# ---------------------------------------------------------------- interpolation on a fixed lattice
+
+
+@dataclass(frozen=True, slots=True)
+class Lattice:
+    """Nodes around given instants, at whole multiples of the step."""
+
+    step_s: float
+    tt_s: Floats  # ndarray[node]
+    left: np.ndarray  # ndarray[time]: node before the instant
+    part: Floats  # ndarray[time]: 0 .. 1 from that node to the next
+
+    def value(self, values: Floats, rates: Floats) -> Floats:
+        """Return the cubic Hermite value at the instants of quantities ndarray[node, ...]."""
+        a, b, c, d = self._coefficients(values, rates)
+        x = self._part_like(values)
+        i = self.left
+        result: Floats = a[i] + x * (b[i] + x * (c[i] + x * d[i]))
+        return result
+
+    def rate(self, values: Floats, rates: Floats) -> Floats:
+        """Return the derivative per second at the instants of the same polynomials."""
+        _, b, c, d = self._coefficients(values, rates)
+        x = self._part_like(values)
+        i = self.left
+        result: Floats = (b[i] + x * (2 * c[i] + x * (3 * d[i]))) / self.step_s
+        return result
+
+    def slope(self, values: Floats) -> Floats:
+        """Return the derivative per second at the nodes from five nodes each (not at the outer ones)."""
+        return (
+            8 * (np.roll(values, -1, 0) - np.roll(values, 1, 0))
+            - (np.roll(values, -2, 0) - np.roll(values, 2, 0))
+        ) / (12 * self.step_s)
+
+    def _part_like(self, values: Floats) -> Floats:
+        return self.part.reshape(-1, *(1,) * (values.ndim - 1))
+
+    def _coefficients(self, values: Floats, rates: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+        """Return the four coefficients of the polynomial that begins at each node."""
+        change = np.roll(values, -1, 0) - values
+        begin, end = self.step_s * rates, self.step_s * np.roll(rates, -1, 0)
+        return values, begin, 3 * change - 2 * begin - end, begin + end - 2 * change
+
+
+def lattice(tt_s: Floats, step_s: float) -> Lattice:
+    """Return the nodes around the instants ndarray[time]; gaps between distant instants hold none."""
+    number = np.floor(tt_s / step_s)
+    first = int(number.min()) - _AROUND
+    offset = (number - first).astype(np.int64)
+    used = np.zeros(int(offset.max()) + _AROUND + 2, dtype=bool)
+    for shift in range(-_AROUND, _AROUND + 2):
+        used[offset + shift] = True
+    position = np.cumsum(used) - 1
+    nodes = step_s * (first + np.flatnonzero(used)).astype(np.float64)
+    return Lattice(step_s, nodes, position[offset], tt_s / step_s - number)
+
+
+# ---------------------------------------------------------------- the observer
+
+
+@dataclass(frozen=True, slots=True)
+class Observer:
+    """Someone who looks, at every instant. Vectors are ndarray[time, xyz] in ICRS axes."""
+
+    place: Site | Orbit
+    ephemeris: Ephemeris
+    tt_s: Floats
+    nodes: Lattice
+    offset_m: Floats  # from the Earth's centre
+    offset_rate_m_s: Floats
+    velocity_m_s: Floats  # relative to the barycentre of the solar system
+    from_sun_m: Floats
+    frame: Floats  # ndarray[time, 3, 3]: from ICRS axes to the true equator and equinox of date
+    sidereal_rad: Floats  # local apparent sidereal time; nan in space
+
+
+@dataclass(frozen=True, slots=True)
+class Sight:
+    """What an observer sees of one body. ndarray[time, xyz].
+
+    `astrometric_m` and its rate are in ICRS axes, with light time only; `apparent` is a unit vector of the
+    true equator and equinox of date, with light deflection by the Sun and aberration.
+    `heliocentric_m` points to the body from where the Sun was when that light left it.
+    """
+
+    astrometric_m: Floats
+    rate_m_s: Floats
+    heliocentric_m: Floats
+    apparent: Floats
+
+    @property
+    def distance_m(self) -> Floats:
+        """Return the distance that the light has come, ndarray[time]."""
+        return length(self.astrometric_m)
+
+
+def observe(place: Site | Orbit, tt_s: Floats, ephemeris: Ephemeris) -> Observer:
+    """Return the observer at a place at instants ndarray[time] (TT seconds from J2000).
+
+    In space (`Orbit`) the observer stands 0.01 au beyond the Earth on the line from the Sun, a stand-in for
+    an orbit around that point: the true place differs by up to 800 000 km (0.1 arcmin for the giant planets).
+
+    Raises:
+        DateError: an instant outside the ephemeris.
+
+    Source: IAU 2006/2000A precession-nutation and sidereal time as in ERFA (pnm06a, s06, eors, era00).
+
+    """
+    tt_s = np.atleast_1d(np.asarray(tt_s, dtype=float))
+    for body in ("sun", "earth"):
+        check_span(ephemeris, body, tdb_from_tt(tt_s), _MARGIN_S)
+    nodes = lattice(tt_s, _NODE_S)
+    earth, earth_rate = ephemeris.state("earth", tdb_from_tt(nodes.tt_s))
+    sun, sun_rate = ephemeris.state("sun", tdb_from_tt(nodes.tt_s))
+
+    matrix = erfa.pnm06a(_J2000_JD, nodes.tt_s / DAY_S)
+    x, y = erfa.bpn2xy(matrix)
+    origins = erfa.eors(matrix, erfa.s06(_J2000_JD, nodes.tt_s / DAY_S, x, y))
+    frame = nodes.value(matrix, nodes.slope(matrix))
+
+    away, away_rate = earth - sun, earth_rate - sun_rate
+    if isinstance(place, Site):
+        origins = nodes.value(origins, nodes.slope(origins))
+        turn = erfa.era00(_J2000_JD, ut1_from_tt(tt_s) / DAY_S) - origins
+        offset, offset_rate = _on_the_ground(place, turn)
+        offset, offset_rate = from_date(frame, offset), from_date(frame, offset_rate)
+        sidereal = turn + place.longitude_rad
+    else:
+        sun_distance = length(away)[:, None]
+        unit = away / sun_distance
+        scale = L2_DISTANCE_M / sun_distance
+        beyond, beyond_rate = L2_DISTANCE_M * unit, scale * (away_rate - unit * dot(unit, away_rate)[:, None])
+        offset, offset_rate = nodes.value(beyond, beyond_rate), nodes.rate(beyond, beyond_rate)
+        sidereal = np.full(tt_s.size, np.nan)
+    return Observer(
+        place,
+        ephemeris,
+        tt_s,
+        nodes,
+        offset,
+        offset_rate,
+        nodes.rate(earth, earth_rate) + offset_rate,
+        nodes.value(away, away_rate) + offset,
+        frame,
+        sidereal,
+    )
+
+
+def see(observer: Observer, body: str) -> Sight:
+    """Return what the observer sees of a body.
+
+    The light time is that to the Earth's centre; an observer on the ground gets the light up to 0.02 s
+    earlier or later (1e-4 arcsec), one in space up to 5 s (65 km, 0.02 arcsec).
+
+    Raises:
+        NotFoundError: the ephemeris has no such body.
+        DateError: an instant outside the ephemeris.
+
+    Source: apparent places as in ERFA (ld, ab); Urban & Seidelmann 2013, Explanatory Supplement to the
+    Astronomical Almanac, 3rd ed., chapter 7.
+
+    """
+    check_span(observer.ephemeris, body, tdb_from_tt(observer.tt_s), _MARGIN_S)
+    step_s = _MOON_NODE_S if body == "moon" else _NODE_S
+    nodes = observer.nodes if step_s == observer.nodes.step_s else lattice(observer.tt_s, step_s)
+    geocentric, geocentric_rate, heliocentric, heliocentric_rate = _with_light_time(
+        observer.ephemeris, body, nodes
+    )
+    astrometric = nodes.value(geocentric, geocentric_rate) - observer.offset_m
+    rate = nodes.rate(geocentric, geocentric_rate) - observer.offset_rate_m_s
+    from_sun = nodes.value(heliocentric, heliocentric_rate)
+
+    direction = astrometric / length(astrometric)[:, None]
+    if body not in ("sun", "moon"):
+        away = length(observer.from_sun_m)
+        direction = erfa.ld(
+            1.0,
+            direction,
+            from_sun / length(from_sun)[:, None],
+            observer.from_sun_m / away[:, None],
+            away / AU_M,
+            1e-6,
+        )
+    beta = observer.velocity_m_s / LIGHT_M_S
+    direction = erfa.ab(direction, beta, length(observer.from_sun_m) / AU_M, np.sqrt(1 - dot(beta, beta)))
+    return Sight(astrometric, rate, from_sun, to_date(observer.frame, direction))
+
+
+def altitude_azimuth(observer: Observer, apparent: Floats) -> tuple[Floats, Floats]:
+    """Return airless altitude and azimuth (from north through east), ndarray[time]; nan in space."""
+    if not isinstance(observer.place, Site):
+        nowhere = np.full(observer.tt_s.size, np.nan)
+        return nowhere, nowhere
+    south, east = _meridian_axes(observer, apparent)
+    sin_lat, cos_lat = np.sin(observer.place.latitude_rad), np.cos(observer.place.latitude_rad)
+    up = cos_lat * south + sin_lat * apparent[:, 2]
+    north = cos_lat * apparent[:, 2] - sin_lat * south
+    return np.arctan2(up, np.hypot(north, east)), np.arctan2(east, north) % (2 * np.pi)
+
+
+def hour_angle_rad(observer: Observer, apparent: Floats) -> Floats:
+    """Return the hour angle in -pi .. pi, positive west of the meridian, ndarray[time]; nan in space."""
+    south, east = _meridian_axes(observer, apparent)
+    return np.arctan2(-east, south)
+
+
+def parallactic_angle_rad(observer: Observer, apparent: Floats) -> Floats:
+    """Return the position angle of the zenith, from north through east, ndarray[time]; nan in space.
+
+    Source: Urban & Seidelmann 2013, Explanatory Supplement, 3rd ed., section 7.1.3.
+    """
+    if not isinstance(observer.place, Site):
+        return np.full(observer.tt_s.size, np.nan)
+    south, east = _meridian_axes(observer, apparent)  # cos(dec) times cos and -sin of the hour angle
+    cos_dec = np.hypot(apparent[:, 0], apparent[:, 1])
+    tan_lat = np.tan(observer.place.latitude_rad)
+    return np.arctan2(-east, tan_lat * cos_dec**2 - apparent[:, 2] * south)
+
+
+# ---------------------------------------------------------------- vectors
+
+
+def dot(a: Floats, b: Floats) -> Floats:
+    """Return the scalar product over the last axis."""
+    product: Floats = np.einsum("...i,...i->...", a, b)
+    return product
+
+
+def length(a: Floats) -> Floats:
+    """Return the length over the last axis."""
+    result: Floats = np.sqrt(dot(a, a))
+    return result
+
+
+def separation_rad(a: Floats, b: Floats) -> Floats:
+    """Return the angle between unit vectors ndarray[time, xyz], exact for small and large ones."""
+    return 2 * np.arctan2(length(a - b), length(a + b))
+
+
+def longitude_latitude(a: Floats) -> tuple[Floats, Floats]:
+    """Return the angles of vectors ndarray[time, xyz]: longitude 0 .. 2 pi and latitude."""
+    return np.arctan2(a[:, 1], a[:, 0]) % (2 * np.pi), np.arctan2(a[:, 2], np.hypot(a[:, 0], a[:, 1]))
+
+
+def to_date(frame: Floats, vector: Floats) -> Floats:
+    """Turn vectors from ICRS axes to the true equator and equinox of date."""
+    turned: Floats = np.einsum("tij,tj->ti", frame, vector)
+    return turned
+
+
+def from_date(frame: Floats, vector: Floats) -> Floats:
+    """Turn vectors from the true equator and equinox of date to ICRS axes."""
+    turned: Floats = np.einsum("tji,tj->ti", frame, vector)
+    return turned
+
+
+# ---------------------------------------------------------------- inside
+
+
+def _meridian_axes(observer: Observer, apparent: Floats) -> tuple[Floats, Floats]:
+    """Return the parts of a direction toward the equator's point on the meridian, and toward east."""
+    cos, sin = np.cos(observer.sidereal_rad), np.sin(observer.sidereal_rad)
+    return cos * apparent[:, 0] + sin * apparent[:, 1], cos * apparent[:, 1] - sin * apparent[:, 0]
+
+
+def _on_the_ground(site: Site, turn_rad: Floats) -> tuple[Floats, Floats]:
+    """Return place and velocity of a site from the Earth's centre, true equator and equinox of date."""
+    x, y, z = erfa.gd2gc(1, site.longitude_rad, site.latitude_rad, site.height_m)
+    cos, sin = np.cos(turn_rad), np.sin(turn_rad)
+    east, north = cos * x - sin * y, sin * x + cos * y
+    place = np.stack([east, north, np.full(turn_rad.size, z)], axis=1)
+    rate = _EARTH_TURN_RAD_S * np.stack([-north, east, np.zeros(turn_rad.size)], axis=1)
+    return place, rate
+
+
+def _with_light_time(
+    ephemeris: Ephemeris, body: str, nodes: Lattice
+) -> tuple[Floats, Floats, Floats, Floats]:
+    """Return geocentric place and rate, and heliocentric place and rate, of a body at light time.
+
+    The rate is the derivative of the place against the time of the observer.
+    """
+    tdb_s = tdb_from_tt(nodes.tt_s)
+    earth, earth_rate = ephemeris.state("earth", tdb_s)
+    tau = np.zeros(nodes.tt_s.size)
+    for _ in range(4):
+        there, there_rate = ephemeris.state(body, tdb_s - tau)
+        tau = length(there - earth) / LIGHT_M_S
+    place = there - earth
+    unit = place / length(place)[:, None]
+    # d/dt of |P(t - tau) - E(t)| = c dtau/dt, solved for dtau/dt
+    slower = dot(unit, there_rate - earth_rate) / (LIGHT_M_S + dot(unit, there_rate))
+    there_rate = there_rate * (1 - slower)[:, None]
+
+    sun_tau = np.zeros(tau.size)
+    for _ in range(3):
+        sun, sun_rate = ephemeris.state("sun", tdb_s - tau - sun_tau)
+        sun_tau = length(there - sun) / LIGHT_M_S
+    return place, there_rate - earth_rate, there - sun, there_rate - sun_rate
