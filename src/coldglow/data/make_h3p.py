@@ -34,7 +34,10 @@ def main(lines_path: str, levels_path: str, out_path: str) -> None:
     if np.abs(energy[upper] - energy[lower] - wavenumber).max() > 1:
         raise SystemExit("a line's wavenumber is not the difference of its levels")
     weight = np.array([int(level["g_total"]) for level in levels], dtype=np.int16)
-    if any(int(line["g_ns"]) * (2 * int(line["J_upper"]) + 1) != weight[i] for line, i in zip(lines, upper, strict=True)):
+    if any(
+        int(line["g_ns"]) * (2 * int(line["J_upper"]) + 1) != weight[i]
+        for line, i in zip(lines, upper, strict=True)
+    ):
         raise SystemExit("a line's degeneracy is not that of its upper level")
     bands, band = np.unique([line["band"] for line in lines], return_inverse=True)
     labels, label = np.unique([line["line"].replace(";", ",") for line in lines], return_inverse=True)
@@ -57,4 +60,8 @@ def main(lines_path: str, levels_path: str, out_path: str) -> None:
 
 
 if __name__ == "__main__":
-    main(sys.argv[1], sys.argv[2], sys.argv[3] if len(sys.argv) > 3 else str(Path(__file__).with_name("h3p.npz")))
+    main(
+        sys.argv[1],
+        sys.argv[2],
+        sys.argv[3] if len(sys.argv) > 3 else str(Path(__file__).with_name("h3p.npz")),
+    )

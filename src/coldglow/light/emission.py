@@ -112,7 +112,9 @@ def optical_depth(
     t = temperature[..., np.newaxis]
     lower = np.exp(-C2_M_K * lines.lower_energy_m1 / t) / _sums(temperature)[0][..., np.newaxis]
     induced = -np.expm1(-C2_M_K * lines.wavenumber_m1 / t)
-    strength = lines.einstein_a_s * lines.weight * lines.wavelength_m**3 / (8.0 * np.pi * np.sqrt(2.0 * np.pi))
+    strength = (
+        lines.einstein_a_s * lines.weight * lines.wavelength_m**3 / (8.0 * np.pi * np.sqrt(2.0 * np.pi))
+    )
     column = np.asarray(column_m2, dtype=np.float64)[..., np.newaxis]
     return column * strength * lower * induced / sigma
 
