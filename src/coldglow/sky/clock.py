@@ -148,11 +148,15 @@ def tt_from_iso(text: str) -> float:
 
 
 def iso_from_tt(tt_s: ArrayLike, unit: str = "s") -> NDArray[np.str_]:
-    """Return ISO UTC strings (``2027-11-25T05:30:00``), rounded to the unit: ``s``, ``ms`` or ``m``."""
+    """Return ISO UTC strings (``2027-11-25T05:30:00``), rounded to the unit: ``s``, ``ms`` or ``m``.
+
+    An instant that is nan (an event that does not happen) gives an empty string.
+    """
     utc_ms = np.rint(utc_from_tt(tt_s) * 1000.0)
+    happens = np.isfinite(utc_ms)
     half_ms = {"ms": 0, "s": 500, "m": 30_000}[unit]
-    moments = _J2000_UTC + (utc_ms + half_ms).astype("timedelta64[ms]")
-    return np.datetime_as_string(moments.astype(f"datetime64[{unit}]"))
+    moments = _J2000_UTC + (np.where(happens, utc_ms, 0.0) + half_ms).astype("timedelta64[ms]")
+    return np.where(happens, np.datetime_as_string(moments.astype(f"datetime64[{unit}]")), "")
 
 
 def iso(grid: TimeGrid, index: int) -> str:

@@ -44,19 +44,12 @@ class Lattice:
 
     def value(self, values: Floats, rates: Floats) -> Floats:
         """Return the cubic Hermite value at the instants of quantities ndarray[node, ...]."""
-        a, b, c, d = self._coefficients(values, rates)
-        x = self._part_like(values)
-        i = self.left
-        result: Floats = a[i] + x * (b[i] + x * (c[i] + x * d[i]))
-        return result
+        return self._horner(self._coefficients(values, rates))
 
     def rate(self, values: Floats, rates: Floats) -> Floats:
         """Return the derivative per second at the instants of the same polynomials."""
         _, b, c, d = self._coefficients(values, rates)
-        x = self._part_like(values)
-        i = self.left
-        result: Floats = (b[i] + x * (2 * c[i] + x * (3 * d[i]))) / self.step_s
-        return result
+        return self._horner((b / self.step_s, 2 * c / self.step_s, 3 * d / self.step_s))
 
     def slope(self, values: Floats) -> Floats:
         """Return the derivative per second at the nodes from five nodes each (not at the outer ones)."""
@@ -65,8 +58,14 @@ class Lattice:
             - (np.roll(values, -2, 0) - np.roll(values, 2, 0))
         ) / (12 * self.step_s)
 
-    def _part_like(self, values: Floats) -> Floats:
-        return self.part.reshape(-1, *(1,) * (values.ndim - 1))
+    def _horner(self, coefficients: tuple[Floats, ...]) -> Floats:
+        """Return the polynomials at the instants, coefficients ndarray[node, ...] from the lowest power."""
+        part = self.part.reshape(-1, *(1,) * (coefficients[0].ndim - 1))
+        result: Floats = coefficients[-1].take(self.left, axis=0)
+        for coefficient in coefficients[-2::-1]:
+            result *= part
+            result += coefficient.take(self.left, axis=0)
+        return result
 
     def _coefficients(self, values: Floats, rates: Floats) -> tuple[Floats, Floats, Floats, Floats]:
         """Return the four coefficients of the polynomial that begins at each node."""
@@ -141,7 +140,7 @@ def observe(place: Site | Orbit, tt_s: Floats, ephemeris: Ephemeris) -> Observer
     """
     tt_s = np.atleast_1d(np.asarray(tt_s, dtype=float))
     for body in ("sun", "earth"):
-        check_span(ephemeris, body, tdb_from_tt(tt_s), _MARGIN_S)
+        check_span(ephemeris, body, tt_s, _MARGIN_S)
     nodes = lattice(tt_s, _NODE_S)
     earth, earth_rate = ephemeris.state("earth", tdb_from_tt(nodes.tt_s))
     sun, sun_rate = ephemeris.state("sun", tdb_from_tt(nodes.tt_s))
@@ -193,7 +192,7 @@ def see(observer: Observer, body: str) -> Sight:
     Astronomical Almanac, 3rd ed., chapter 7.
 
     """
-    check_span(observer.ephemeris, body, tdb_from_tt(observer.tt_s), _MARGIN_S)
+    check_span(observer.ephemeris, body, observer.tt_s, _MARGIN_S)
     step_s = _MOON_NODE_S if body == "moon" else _NODE_S
     nodes = observer.nodes if step_s == observer.nodes.step_s else lattice(observer.tt_s, step_s)
     geocentric, geocentric_rate, heliocentric, heliocentric_rate = _with_light_time(
@@ -247,7 +246,8 @@ def parallactic_angle_rad(observer: Observer, apparent: Floats) -> Floats:
     south, east = _meridian_axes(observer, apparent)  # cos(dec) times cos and -sin of the hour angle
     cos_dec = np.hypot(apparent[:, 0], apparent[:, 1])
     tan_lat = np.tan(observer.place.latitude_rad)
-    return np.arctan2(-east, tan_lat * cos_dec**2 - apparent[:, 2] * south)
+    angle: Floats = np.arctan2(-east, tan_lat * cos_dec**2 - apparent[:, 2] * south)
+    return angle
 
 
 # ---------------------------------------------------------------- vectors
