@@ -96,3 +96,19 @@ def phase_uncertainty_rad(system: LongitudeSystem, interval_s: ArrayLike) -> Flo
 def absolute_phase_uncertainty_rad(system: LongitudeSystem, tdb_s: ArrayLike) -> Floats:
     """Return `phase_uncertainty_rad` from the tie epoch of the system to TDB seconds from J2000."""
     return phase_uncertainty_rad(system, np.asarray(tdb_s, dtype=float) - system.tie_epoch_s)
+
+
+def in_system_rad(
+    longitude_rad: ArrayLike, system: LongitudeSystem, other: LongitudeSystem, tdb_s: ArrayLike
+) -> Floats:
+    """Return longitudes of one system of a body in another of its systems, at TDB seconds from J2000.
+
+    The pole is common to both, so only the meridians' angles differ.
+    """
+    tdb_s = np.asarray(tdb_s, dtype=float)
+    ahead = (
+        other.prime_meridian_rad - system.prime_meridian_rad + (other.rate_rad_s - system.rate_rad_s) * tdb_s
+    )
+    east = -np.asarray(longitude_rad) if system.grows == "west" else np.asarray(longitude_rad)
+    east = east - ahead
+    return np.asarray((-east if other.grows == "west" else east) % (2 * np.pi))

@@ -1,0 +1,359 @@
+"""The path of the data as one readable function: descriptions and a state in, information over time out.
+
+Target, instrument and dates give a track; the steps that can be observed give moments; the disk seen
+through the opening at each moment gives a beam; beam, air and state give counts; counts give the Fisher
+matrix per second of open shutter. Everything that decides (which hours, how many nights) starts from the
+`Scenario` made here.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, fields
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.constants import c
+from scipy.interpolate import RegularGridInterpolator
+
+from coldglow.describe.records import (
+    Conditions,
+    Instrument,
+    LongitudeSystem,
+    Request,
+    Setting,
+    Site,
+    Sky,
+    Target,
+    Use,
+)
+from coldglow.detect.beam import Beam, Disk, join_beams, point_spread, see_disk
+from coldglow.detect.exposure import Exposure, Moments, expose_moments
+from coldglow.light.atmosphere import Atmosphere, load_atmosphere
+from coldglow.light.atmosphere import validity_warnings as atmosphere_warnings
+from coldglow.light.emission import optical_depth_warnings, validity_warnings
+from coldglow.light.lines import load_lines
+from coldglow.light.shell import path_factor, view_of, visible_points
+from coldglow.plan.stretches import Steps, runs
+from coldglow.sky.clock import season_grid, tdb_from_tt
+from coldglow.sky.orientation import in_system_rad
+from coldglow.sky.track import Track, make_track
+
+Array = NDArray[np.float64]
+
+MOMENT_SPACING_S = 1800.0  # information is interpolated between moments; tests measure what that costs
+MOMENTS_PER_TURN = 36  # with spots
+FEW = 100  # up to so many moments each is looked at by itself
+
+
+@dataclass(frozen=True, slots=True)
+class State:
+    """The ionosphere: temperature, vertical column (mean over the shell), share of it in equilibrium."""
+
+    temperature_k: float
+    column_m2: float
+    lte_fraction: float = 1.0
+
+    @property
+    def shining_m2(self) -> float:
+        """Column that glows as if in equilibrium."""
+        return self.column_m2 * self.lte_fraction
+
+
+@dataclass(frozen=True, slots=True)
+class Air:
+    """The night assumed: seeing (FWHM at 0.5 micron, zenith) and precipitable water."""
+
+    seeing_rad: float
+    water_m: float
+
+
+@dataclass(frozen=True, slots=True)
+class Scenario:
+    """Information over time for one target, instrument, setting, state and air; arrays are ndarray[time]."""
+
+    target: Target
+    use: Use
+    state: State
+    air: Air
+    track: Track
+    usable: NDArray[np.bool_]  # observable, on a night that the request may use
+    steps: Steps
+    moments: NDArray[np.int64]  # ndarray[moment], steps that were worked out; the rest is interpolated
+    exposure: Exposure | None  # at the moments; None where nothing can be observed
+    prior: Array  # ndarray[4, 4], added once to the sum of each visit
+    warnings: tuple[str, ...]
+
+    @property
+    def overhead_s(self) -> float:
+        """Clock time that each visit costs before its first exposure."""
+        operation = self.use.instrument.operation
+        return operation.acquisition_s + operation.standards_s
+
+
+def state_of(target: Target) -> State:
+    """Return the state that the target's description gives."""
+    emission = target.emission
+    return State(emission.temperature_k.value, emission.column_m2.value, emission.lte_fraction.value)
+
+
+def air_of(sky: Sky, conditions: Conditions) -> Air:
+    """Return the night assumed at a site: a quartile of it, or what the request states instead."""
+    seeing, water = conditions.seeing_rad, conditions.water_m
+    return Air(
+        getattr(sky.seeing_rad, conditions.name) if seeing is None else seeing,
+        getattr(sky.water_m, conditions.name) if water is None else water,
+    )
+
+
+def air_over(instrument: Instrument) -> Atmosphere | None:
+    """Return the atmosphere above an instrument, None in space."""
+    place = instrument.place
+    return load_atmosphere(place.height_m, instrument.atmosphere) if isinstance(place, Site) else None
+
+
+def watch(request: Request, use: Use, first: str = "", last: str = "") -> Track:
+    """Return the track of the request's target over its nights (or from `first` to `last`) at one site."""
+    dates, place = request.dates, use.instrument.place
+    grid = season_grid(first or dates.first, last or dates.last, dates.step_s, place)
+    systems = {system.name: system for system in request.target.rotation.systems}
+    return make_track(
+        request.target, place, use.instrument.limits, grid, systems[request.longitudes], request.ephemeris
+    )
+
+
+def usable_steps(request: Request, track: Track) -> NDArray[np.bool_]:
+    """Return ndarray[time]: observable, on an offered night, not on a forbidden one."""
+    dates = request.dates
+    allowed = np.array(
+        [
+            (not dates.offered or day in dates.offered) and day not in dates.forbidden
+            for day in track.night_dates
+        ],
+        dtype=bool,
+    )
+    on_a_night = track.night >= 0
+    return np.asarray(track.observable & on_a_night & allowed[np.where(on_a_night, track.night, 0)])
+
+
+def scenario(
+    request: Request, use: Use, track: Track, state: State | None = None, air: Air | None = None
+) -> Scenario:
+    """Return the information over time for one use of an instrument.
+
+    Args:
+        request: whose target, dates and goal count.
+        use: instrument and setting.
+        track: of the target from the instrument's place.
+        state: of the ionosphere; default: the description's.
+        air: seeing and water; default: the request's conditions.
+
+    """
+    target, instrument, setting = request.target, use.instrument, use.setting
+    state = state or state_of(target)
+    air = air or air_of(instrument.sky, request.conditions)
+    usable = usable_steps(request, track)
+    chosen = pick_moments(track, usable, target)
+    atmosphere = air_over(instrument)
+    exposure = None
+    if chosen.size:
+        exposure = expose_moments(
+            moments_of(target, instrument, setting, track.take(chosen), air),
+            load_lines(),
+            state.temperature_k,
+            state.shining_m2,
+            target.continuum,
+            atmosphere,
+            instrument,
+            setting,
+            request.goal.lines,
+        )
+    return Scenario(
+        target,
+        use,
+        state,
+        air,
+        track,
+        usable,
+        _steps(track, usable, chosen, exposure),
+        chosen,
+        exposure,
+        np.zeros((4, 4)) if exposure is None else exposure.prior,
+        tuple(_warnings(target, setting, state, atmosphere, track.airmass[usable], air)),
+    )
+
+
+def pick_moments(track: Track, usable: NDArray[np.bool_], target: Target) -> NDArray[np.int64]:
+    """Return the steps to be worked out: both ends of every stretch and some half-hours between."""
+    spacing_s = MOMENT_SPACING_S
+    if target.emission.spots:
+        spacing_s = min(spacing_s, track.system.period_s / MOMENTS_PER_TURN)
+    stride = max(int(spacing_s / track.grid.step_s), 1) if track.grid.step_s else 1
+    first, end = runs(track.grid.time_s, track.grid.step_s or np.inf, usable, track.night)
+    pieces = [np.unique(np.append(np.arange(a, b, stride), b - 1)) for a, b in zip(first, end, strict=True)]
+    return np.concatenate(pieces) if pieces else np.empty(0, dtype=np.int64)
+
+
+def moments_of(target: Target, instrument: Instrument, setting: Setting, track: Track, air: Air) -> Moments:
+    """Return the conditions at every instant of a (short) track, all of them observable."""
+    size = track.grid.time_s.size
+    airmass = np.where(np.isfinite(track.airmass), track.airmass, 1.0)
+    return Moments(
+        airmass,
+        track.range_rate_m_s,
+        np.full(size, air.water_m),
+        track.sun_distance_m,
+        beams(target, instrument, setting, track, airmass, air.seeing_rad),
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class _Geometry:
+    """What the beam depends on; arrays of any one shape."""
+
+    diameter_rad: Array
+    latitude_rad: Array
+    longitude_rad: Array
+    pole_rad: Array
+    parallactic_rad: Array
+    airmass: Array
+
+
+def beams(
+    target: Target, instrument: Instrument, setting: Setting, track: Track, airmass: Array, seeing_rad: float
+) -> Beam:
+    """Return what the opening sees at every instant of a track.
+
+    For more than a hundred instants it is worked out on a grid over what it depends on (date, airmass; the
+    parallactic angle or the longitude only where they matter) and interpolated; the error is below 0.3 %
+    of the light (tests/test_scenario.py), with spots below 2 %.
+    """
+    geometry = _Geometry(
+        track.equatorial_diameter_rad,
+        track.sub_observer_latitude_rad,
+        longitude_for_spots_rad(target, track),
+        track.pole_angle_rad,
+        np.nan_to_num(track.parallactic_angle_rad),
+        airmass,
+    )
+    if airmass.size <= FEW:
+        return _look(target, instrument, setting, track, geometry, seeing_rad)
+    time_s = track.grid.time_s
+    axes = [_axis(time_s, 8), _axis(airmass, 5)]
+    where = [time_s, airmass]
+    turning = instrument.opening.angle == "parallactic"
+    if turning:
+        axes.append(np.linspace(-np.pi, np.pi, 37))
+        where.append(np.angle(np.exp(1j * geometry.parallactic_rad)))
+    if target.emission.spots:
+        axes.append(np.linspace(0.0, 2.0 * np.pi, MOMENTS_PER_TURN * 2 + 1))
+        where.append(np.mod(geometry.longitude_rad, 2.0 * np.pi))
+    mesh = [part.ravel() for part in np.meshgrid(*axes, indexing="ij")]
+    zero = np.zeros_like(mesh[0])
+    at = _Geometry(
+        np.interp(mesh[0], time_s, geometry.diameter_rad),
+        np.interp(mesh[0], time_s, geometry.latitude_rad),
+        mesh[-1] if target.emission.spots else zero,
+        np.interp(mesh[0], time_s, np.unwrap(geometry.pole_rad)),
+        mesh[2] if turning else zero,
+        mesh[1],
+    )
+    table = _look(target, instrument, setting, track, at, seeing_rad)
+    shape, place = [axis.size for axis in axes], np.stack(where, axis=1)
+    return Beam(
+        *(
+            RegularGridInterpolator(axes, getattr(table, field.name).reshape(shape))(place)
+            for field in fields(Beam)
+        )
+    )
+
+
+def spot_system(target: Target, track: Track) -> LongitudeSystem:
+    """Return the longitude system in which the target's spots are fixed (the track's own without spots)."""
+    systems = {system.name: system for system in target.rotation.systems}
+    return systems[target.emission.spots[0].system] if target.emission.spots else track.system
+
+
+def longitude_for_spots_rad(target: Target, track: Track) -> Array:
+    """Return the sub-observer longitude in the system of the spots, ndarray[time]."""
+    tdb_s = tdb_from_tt(track.grid.tt_s) - track.distance_m / c
+    return in_system_rad(track.sub_observer_longitude_rad, track.system, spot_system(target, track), tdb_s)
+
+
+def _axis(value: Array, count: int) -> Array:
+    low, high = float(value.min()), float(value.max())
+    return np.linspace(low, high, count) if high > low else np.array([low, low + 1.0])
+
+
+def _look(
+    target: Target, instrument: Instrument, setting: Setting, track: Track, at: _Geometry, seeing_rad: float
+) -> Beam:
+    """Return the beam at each geometry, one by one."""
+
+    system = spot_system(target, track)
+
+    def one() -> Iterator[Beam]:
+        middle_m = 0.5 * (setting.band_m[0] + setting.band_m[1])
+        for i in range(at.airmass.size):
+            view = view_of(target.figure, float(at.latitude_rad[i]))
+            points = visible_points(
+                target.figure,
+                target.emission.spots,
+                float(at.latitude_rad[i]),
+                float(at.longitude_rad[i]),
+                system,
+            )
+            radius_rad = 0.5 * float(at.diameter_rad[i])
+            disk = Disk(
+                radius_rad,
+                radius_rad * view.outline_pole,
+                float(at.pole_rad[i]),
+                float(at.parallactic_rad[i]),
+            )
+            spread = point_spread(
+                instrument.image, instrument.telescope, middle_m, seeing_rad, float(at.airmass[i])
+            )
+            yield see_disk(points, disk, instrument.opening, instrument.operation, spread)
+
+    return join_beams(list(one()))
+
+
+def _steps(
+    track: Track, usable: NDArray[np.bool_], chosen: NDArray[np.int64], exposure: Exposure | None
+) -> Steps:
+    """Spread the moments over the steps of the grid; steps that cannot be used hold zeros."""
+    time_s = track.grid.time_s
+    matrix = np.zeros((time_s.size, 4, 4))
+    share, clear = np.zeros(time_s.size), np.ones(time_s.size)
+    if exposure is not None:
+        at = time_s[usable]
+        for i in range(4):
+            for j in range(i + 1):
+                matrix[usable, i, j] = np.interp(at, time_s[chosen], exposure.matrix[:, i, j])
+                matrix[usable, j, i] = matrix[usable, i, j]
+        share[usable] = np.interp(at, time_s[chosen], exposure.shutter_share)
+        clear[usable] = np.interp(at, time_s[chosen], exposure.line_transmission)
+    return Steps(
+        time_s,
+        track.grid.step_s,
+        usable,
+        np.asarray(track.night, dtype=np.int64),
+        matrix,
+        share,
+        track.airmass,
+        track.sub_observer_longitude_rad,
+        track.range_rate_m_s,
+        clear,
+    )
+
+
+def _warnings(
+    target: Target, setting: Setting, state: State, atmosphere: Atmosphere | None, airmass: Array, air: Air
+) -> Iterator[str]:
+    yield from validity_warnings(state.temperature_k)
+    if isinstance(atmosphere, Atmosphere) and airmass.size:
+        yield from atmosphere_warnings(atmosphere, float(airmass.max()), air.water_m)
+    bands = [setting.band_m, *([setting.off_band_m] if setting.off_band_m else [])]
+    along = state.shining_m2 * path_factor(target.figure, 0.0)
+    for low_m, high_m in bands:
+        yield from optical_depth_warnings(load_lines().within(low_m, high_m), state.temperature_k, along)
