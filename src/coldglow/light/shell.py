@@ -84,7 +84,7 @@ def view_of(figure: Figure, sub_observer_latitude_rad: float) -> View:
     sin, cos = np.sin(tilt), np.cos(tilt)
     outline = float(np.hypot(flattened * cos, sin))
     shell_outline = float(np.hypot(pole * cos, equator * sin))
-    depth = ((equator**2 - pole**2) * sin * cos / shell_outline, equator * pole / shell_outline)
+    depth = ((pole**2 - equator**2) * sin * cos / shell_outline, equator * pole / shell_outline)
     return View(flattened, equator, pole, float(tilt), outline, shell_outline, depth)
 
 
@@ -100,7 +100,7 @@ def _far_side_edge(view: View, ux: Floats, uy: Floats) -> Floats:
     return np.sqrt(np.maximum(1.0 - 1.0 / reach2, 0.0))
 
 
-def _area_per_solid_angle(view: View, ux: Floats, uy: Floats, uz: Floats) -> Floats:
+def area_per_solid_angle(view: View, ux: Floats, uy: Floats, uz: Floats) -> Floats:
     """Return dS of the shell per solid angle of the unit sphere: det(M) |M^-T u| of the affine map M."""
     a, p = view.shell_equator, view.shell_outline_pole
     shear, depth = view.depth
@@ -126,14 +126,60 @@ def uniform_points(view: View, spacing: float = SPACING) -> tuple[Floats, Floats
     share = np.concatenate([np.broadcast_to(near_share, (around, near.size)), edge * far_share], axis=1)
     radius = np.sqrt(1.0 - uz**2)
     ux, uy = radius * cos, radius * sin
-    weight = share * (2.0 * np.pi / around) * _area_per_solid_angle(view, ux, uy, uz)
+    weight = share * (2.0 * np.pi / around) * area_per_solid_angle(view, ux, uy, uz)
     return (view.shell_equator * ux).ravel(), (view.shell_outline_pole * uy).ravel(), weight.ravel()
+
+
+@dataclass(frozen=True, slots=True)
+class _SpotNodes:
+    """Directions from the planet's centre that cover a spot, and the area of the shell each stands for.
+
+    Axes: `right` (celestial west), `toward` the sub-observer meridian in the equator, `north` along the axis.
+    """
+
+    right: Floats
+    toward: Floats
+    north: Floats
+    area: Floats
+    size_rad: float
+
+
+def _spot_nodes(
+    view: View, latitude_rad: float, east_rad: float, outer_rad: float, inner_rad: float, count: int
+) -> _SpotNodes:
+    """Return points on the shell: Gauss-Legendre in the cosine of the distance, even steps around."""
+    aspect = (outer_rad - inner_rad) / (np.pi * (outer_rad + inner_rad))
+    rings = max(2, round(np.sqrt(count * aspect)))
+    around = max(8, round(count / rings))
+    node, share = _nodes(rings)
+    depth = np.cos(inner_rad) - np.cos(outer_rad)
+    cos_distance = (np.cos(inner_rad) - depth * node)[:, np.newaxis]
+    sin_distance = np.sqrt(1.0 - cos_distance**2)
+    turn = 2.0 * np.pi * np.arange(around) / around
+    sin, cos = np.sin(latitude_rad), np.cos(latitude_rad)
+    outward = cos_distance * cos - sin_distance * np.cos(turn) * sin
+    north = cos_distance * sin + sin_distance * np.cos(turn) * cos
+    sideways = sin_distance * np.sin(turn)
+    toward = outward * np.cos(east_rad) - sideways * np.sin(east_rad)
+    right = outward * np.sin(east_rad) + sideways * np.cos(east_rad)
+    a, c = view.shell_equator, view.shell_pole
+    across2 = outward**2 + sideways**2
+    radius = 1.0 / np.sqrt(across2 / a**2 + north**2 / c**2)
+    # area per solid angle of the direction: radius^2 over the cosine between radius and normal
+    area = radius**4 * np.sqrt(across2 / a**4 + north**2 / c**4)
+    area *= share[:, np.newaxis] * depth * 2.0 * np.pi / around
+    return _SpotNodes(radius * right, radius * toward, radius * north, area, (outer_rad - inner_rad) / rings)
+
+
+def spot_area(view: View, latitude_rad: float, outer_rad: float, inner_rad: float) -> float:
+    """Return the area of a spot on the shell, squared equatorial radii (planetocentric latitude)."""
+    return float(_spot_nodes(view, latitude_rad, 0.0, outer_rad, inner_rad, 1000).area.sum())
 
 
 def spot_points(
     view: View, latitude_rad: float, east_rad: float, outer_rad: float, inner_rad: float, count: int = 300
 ) -> tuple[Floats, Floats, Floats]:
-    """Return x, y and weight of a spot that holds all ions: over the whole shell the weights would be its area.
+    """Return x, y and weight of a spot that holds all ions of the shell, evenly spread over its area.
 
     Args:
         view: the view.
@@ -143,37 +189,17 @@ def spot_points(
         inner_rad: inner radius (an oval), 0 for a full spot.
         count: about how many points cover the spot.
     """
-    depth = np.cos(inner_rad) - np.cos(outer_rad)
-    aspect = (outer_rad - inner_rad) / (np.pi * (outer_rad + inner_rad))
-    rings = max(2, round(np.sqrt(count * aspect)))
-    around = max(8, round(count / rings))
-    node, share = _nodes(rings)
-    cos_distance = (np.cos(inner_rad) - depth * node)[:, np.newaxis]
-    sin_distance = np.sqrt(1.0 - cos_distance**2)
-    turn = 2.0 * np.pi * np.arange(around) / around
-    # direction from the planet's centre: pole, then towards the spot's middle, then east of it
-    sin_lat, cos_lat = np.sin(latitude_rad), np.cos(latitude_rad)
-    outward = cos_distance * cos_lat - sin_distance * np.cos(turn) * sin_lat
-    north = cos_distance * sin_lat + sin_distance * np.cos(turn) * cos_lat
-    sideways = sin_distance * np.sin(turn)
-    toward = outward * np.cos(east_rad) - sideways * np.sin(east_rad)  # sub-observer meridian, in the equator
-    right = outward * np.sin(east_rad) + sideways * np.cos(east_rad)
-    # place on the shell and its area per solid angle of the direction, r^3 / (a^2 c) * |gradient|
-    a, c = view.shell_equator, view.shell_pole
-    radius = 1.0 / np.sqrt((outward**2 + sideways**2) / a**2 + north**2 / c**2)
-    area = radius**3 * np.sqrt((outward**2 + sideways**2) / a**4 + north**2 / c**4) * radius
-    # ions are spread evenly over the spot's area; the weights sum to the area of the shell
-    weight = share[:, np.newaxis] * area
-    weight *= view.shell_area / weight.sum()
+    spot = _spot_nodes(view, latitude_rad, east_rad, outer_rad, inner_rad, count)
     sin, cos = np.sin(view.tilt_rad), np.cos(view.tilt_rad)
-    x = -radius * right
-    y = radius * (north * cos - toward * sin)
+    x = -spot.right
+    y = spot.north * cos - spot.toward * sin
+    z = spot.north * sin + spot.toward * cos
     ux, uy = x / view.shell_equator, y / view.shell_outline_pole
-    uz = (radius * (north * sin + toward * cos) - view.depth[0] * uy) / view.depth[1]
+    uz = (z - view.depth[0] * uy) / view.depth[1]
     # a point on the far side fades over its own size where the body begins to hide it
     flat = np.maximum(np.hypot(ux, uy), 1e-12)
-    size = (outer_rad - inner_rad) / rings
-    weight *= np.clip(0.5 + (uz + _far_side_edge(view, ux / flat, uy / flat)) / size, 0.0, 1.0)
+    seen = np.clip(0.5 + (uz + _far_side_edge(view, ux / flat, uy / flat)) / spot.size_rad, 0.0, 1.0)
+    weight = view.shell_area * spot.area / spot.area.sum() * seen
     return x.ravel(), y.ravel(), weight.ravel()
 
 
@@ -181,8 +207,9 @@ def east_of_meridian_rad(
     system: LongitudeSystem, longitude_rad: ArrayLike, sub_observer_longitude_rad: ArrayLike
 ) -> Floats:
     """Return how far a longitude lies from the sub-observer meridian, right-handed about the north pole."""
-    ahead = np.asarray(longitude_rad, dtype=np.float64) - sub_observer_longitude_rad
-    return ahead if system.grows == "east" else -ahead
+    sense = 1.0 if system.grows == "east" else -1.0
+    ahead: Floats = sense * np.subtract(longitude_rad, sub_observer_longitude_rad, dtype=np.float64)
+    return ahead
 
 
 def visible_points(
