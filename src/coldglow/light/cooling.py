@@ -9,12 +9,10 @@ from numpy.typing import NDArray
 
 from coldglow.describe.records import Cooling, Emission, Estimate
 from coldglow.errors import RangeError
+from coldglow.light.emission import COLDEST_K, HOTTEST_K
 from coldglow.sky.clock import DAY_S, utc_from_iso
 
 Floats = NDArray[np.float64]
-
-COLDEST_K = 150.0  # the span of the line list; below it no light is left, above it lines are missing
-HOTTEST_K = 1500.0
 
 
 def seconds_since(epoch: str, dates: str | Sequence[str]) -> Floats:
@@ -88,9 +86,10 @@ def sample_states(
         temperature_k = central_k + (start_k - emission.temperature_k.value)
     column_m2 = _column(cooling, time_s, emission.column_m2.value, _normal(cooling.column_rate_s, draws[4]))
     column_m2 = column_m2 * np.exp(_relative(emission.column_m2) * draws[5])
+    temperature_k = np.clip(temperature_k, np.minimum(COLDEST_K, central_k), np.maximum(HOTTEST_K, central_k))
     shape = (trials, time_s.size)
     return (
-        np.broadcast_to(np.clip(temperature_k, COLDEST_K, HOTTEST_K), shape).copy(),
+        np.broadcast_to(temperature_k, shape).copy(),
         np.broadcast_to(column_m2, shape).copy(),
     )
 
@@ -142,7 +141,7 @@ def _refuse_late(cooling: Cooling, time_s: Floats) -> None:
             raise RangeError(
                 f"The {cooling.law} cooling is said to hold until {cooling.valid_until}, and "
                 f"{_date(cooling, time_s.max())} is later; ask for earlier dates, or write a later "
-                "valid_until, or a law with a floor.",
+                "valid_until or a law with a floor.",
                 "cooling.valid_until",
             )
 
@@ -154,7 +153,7 @@ def _refuse_outside(cooling: Cooling, time_s: Floats, temperature_k: Floats) -> 
         return  # a constant temperature is a matter of the emission block, which says so itself
     first = int(np.argmax(wrong))
     advice = (
-        "; give floor_k where the cooling shall stop, or ask for earlier dates"
+        "; give a floor where the cooling stops, or ask for earlier dates"
         if cooling.law == "linear" and temperature_k[first] < COLDEST_K
         else ""
     )

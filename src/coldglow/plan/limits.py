@@ -12,7 +12,6 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline
 from scipy.optimize import brentq
 
 Floats = NDArray[np.float64]
@@ -76,18 +75,6 @@ def against_time(
         return tuple(find(rate, float(needed)) for needed in information / np.asarray(time_s, dtype=float))
 
 
-def tabulated(temperature_k: Floats, measure: Floats) -> Measure:
-    """Return a function of temperature through tabulated values > 0, by a spline of ln(value) in 1/T.
-
-    40 points over 150-1500 K hold an SNR to 1e-4 (measured in the tests).
-    """
-    order = np.argsort(-np.asarray(temperature_k, dtype=float))
-    spline = CubicSpline(
-        1.0 / np.asarray(temperature_k, dtype=float)[order], np.log(np.asarray(measure, dtype=float)[order])
-    )
-    return lambda value: np.asarray(np.exp(spline(1.0 / np.asarray(value, dtype=float))))
-
-
 def _first_rise(
     measure: Measure,
     needed: float,
@@ -109,5 +96,10 @@ def _first_rise(
         value = float(np.asarray(measure(np.array([back(variable)])))[0])
         return value / needed - 1.0
 
-    root = brentq(lacking, forth(nodes[first - 1]), forth(nodes[first]), xtol=1e-300, rtol=1e-14, maxiter=200)
+    before, after = forth(nodes[first - 1]), forth(nodes[first])
+    if lacking(before) >= 0.0:  # at a node, rounding may see from either side what is exactly needed
+        return Edge(float(nodes[first - 1]), "found", low, high)
+    if lacking(after) <= 0.0:
+        return Edge(float(nodes[first]), "found", low, high)
+    root = brentq(lacking, before, after, xtol=1e-300, rtol=1e-14, maxiter=200)
     return Edge(float(back(root)), "found", low, high)
