@@ -79,7 +79,6 @@ def calendar_text(events: Iterable[Event], name: str, stamp_utc: str, version: s
         "VERSION:2.0",
         f"PRODID:-//coldglow//{_text(program)}//EN",
         "CALSCALE:GREGORIAN",
-        "METHOD:PUBLISH",
         f"NAME:{_text(name)}",
     ]
     repeats: dict[str, int] = {}
