@@ -81,6 +81,7 @@ class Rotation:
     terms: tuple[PeriodicTerm, ...]
     systems: tuple[LongitudeSystem, ...]
     source: str
+    reason: str = ""  # why the first system is the default
 
 
 @dataclass(frozen=True, slots=True)

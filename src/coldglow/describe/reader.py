@@ -1,0 +1,204 @@
+"""YAML text to a tree whose leaves are all text, with the file and line of every key path.
+
+Nothing is guessed: ``NO``, ``1e5`` and ``-30:14:16`` stay as written until the schema types them. The
+file is read as a stream of YAML events into a tree of our own, so that no tag can construct anything and
+no nesting can exhaust the stack. Duplicate keys, anchors, aliases, tags, several documents, files above
+1 MB and nesting deeper than 12 are refused, all mistakes at once.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any, Union
+
+import yaml
+
+from coldglow.errors import DescriptionError, NotFoundError, Problem
+from coldglow.units import quoted
+
+Leaf = str
+Node = Union[str, list["Node"], dict[str, "Node"]]
+
+LARGEST_BYTES = 1_000_000
+DEEPEST = 12
+MOST_PROBLEMS = 100
+_LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+
+
+@dataclass(slots=True)
+class Tree:
+    """A description as written: nested dicts, lists and texts; `lines` maps key path -> (file, line)."""
+
+    file: str
+    data: dict[str, Node] = field(default_factory=dict)
+    lines: dict[str, tuple[str, int]] = field(default_factory=dict)
+
+    def locate(self, key: str) -> tuple[str, int]:
+        """Return file and line of a key path, or of the nearest enclosing one that was written."""
+        while key:
+            if key in self.lines:
+                return self.lines[key]
+            key = key.rpartition(".")[0]
+        return self.lines.get("", (self.file, 1))
+
+    def problem(self, key: str, what: str, accepted: str = "") -> Problem:
+        """Return a problem that cites where the value of that key path was written."""
+        file, line = self.locate(key)
+        return Problem(file, line, key, what, accepted)
+
+    def branch(self, key: str) -> Tree:
+        """Return the mapping below a key path as a tree of its own (paths relative to it)."""
+        node: Any = self.data
+        for part in key.split("."):
+            node = node[int(part)] if isinstance(node, list) else node[part]
+        prefix = key + "."
+        lines = {path[len(prefix) :]: at for path, at in self.lines.items() if path.startswith(prefix)}
+        lines[""] = self.locate(key)
+        return Tree(self.file, node, lines)
+
+
+def read_tree(path: Path) -> Tree:
+    """Return the tree of a file.
+
+    Raises `NotFoundError` when the file cannot be opened, `DescriptionError` with all mistakes of form.
+    """
+    try:
+        with path.open("rb") as file:
+            content = file.read(LARGEST_BYTES + 1)
+    except OSError as error:
+        raise NotFoundError(f"{path}: this file cannot be read ({error.strerror})") from None
+    return parse_tree(content, str(path))
+
+
+def parse_tree(content: bytes | str, file: str) -> Tree:
+    """Return the tree of a file's content (see `read_tree`)."""
+    if len(content) > LARGEST_BYTES:
+        raise DescriptionError([Problem(file, 1, "", "this file is larger than 1 MB", "split it")])
+    if isinstance(content, bytes):
+        try:
+            content = content.decode("utf-8-sig")
+        except UnicodeDecodeError as error:
+            line = content.count(b"\n", 0, error.start) + 1
+            what = f"byte {error.start} is not UTF-8 text"
+            raise DescriptionError([Problem(file, line, "", what, "save the file as UTF-8")]) from None
+    tree = Tree(file)
+    builder = _Builder(tree)
+    try:
+        builder.build(yaml.parse(content, Loader=_LOADER))
+    except yaml.MarkedYAMLError as error:
+        mark = error.problem_mark or error.context_mark
+        what = f"this is not YAML: {error.problem or error.context}"
+        builder.problems.append(Problem(file, mark.line + 1 if mark else 1, "", what))
+    except yaml.reader.ReaderError as error:
+        line = _line_of_character(content, error)
+        what = f"this is not YAML: the character U+{int(error.character):04X} is not allowed in it"
+        builder.problems.append(Problem(file, line, "", what))
+    if builder.problems:
+        raise DescriptionError(capped(builder.problems))
+    return tree
+
+
+def capped(problems: list[Problem]) -> list[Problem]:
+    """Return at most `MOST_PROBLEMS` problems in order of file and line, saying how many are left out."""
+    ordered = sorted(dict.fromkeys(problems), key=lambda problem: (problem.file, problem.line))
+    if len(ordered) <= MOST_PROBLEMS:
+        return ordered
+    last = ordered[MOST_PROBLEMS]
+    more = f"and {len(ordered) - MOST_PROBLEMS} more mistakes"
+    return [*ordered[:MOST_PROBLEMS], Problem(last.file, last.line, "", more)]
+
+
+def _line_of_character(content: str, error: yaml.reader.ReaderError) -> int:
+    found = content.find(chr(error.character)) if isinstance(error.character, int) else -1
+    return content.count("\n", 0, max(found, 0)) + 1
+
+
+class _Builder:
+    """Turns the stream of events into the tree; one stack entry per open mapping or list."""
+
+    def __init__(self, tree: Tree) -> None:
+        self.tree = tree
+        self.problems: list[Problem] = []
+
+    def complain(self, event: Any, key: str, what: str, accepted: str = "") -> None:
+        self.problems.append(Problem(self.tree.file, event.start_mark.line + 1, key, what, accepted))
+
+    def build(self, events: Iterator[Any]) -> None:
+        documents = 0
+        for event in events:
+            if isinstance(event, yaml.DocumentStartEvent):
+                documents += 1
+                if documents > 1:
+                    self.complain(event, "", "a second document begins here", "one description a file")
+                    return
+            elif isinstance(event, yaml.MappingStartEvent) and documents == 1:
+                self.check_mark(event, "")
+                self.tree.lines[""] = (self.tree.file, event.start_mark.line + 1)
+                if not self.fill_mapping(events, self.tree.data):
+                    return
+            elif isinstance(event, yaml.NodeEvent):
+                self.complain(event, "", "this is not a description", "`key: value` lines")
+                return
+        if not self.tree.data and not self.problems:
+            self.problems.append(Problem(self.tree.file, 1, "", "this file is empty", "`key: value` lines"))
+
+    def fill_mapping(self, events: Iterator[Any], root: dict[str, Node]) -> bool:
+        """Consume events up to the end of the root mapping; False when reading cannot go on."""
+        stack: list[tuple[Node, str]] = [(root, "")]
+        key: str | None = None  # waiting for its value, in a mapping
+        for event in events:
+            holder, path = stack[-1]
+            if isinstance(event, yaml.MappingEndEvent | yaml.SequenceEndEvent):
+                stack.pop()
+                key = None
+                if not stack:
+                    return True
+                continue
+            if isinstance(holder, dict) and key is None:
+                if not isinstance(event, yaml.ScalarEvent):
+                    self.complain(event, path, "a key must be a plain word", "`key: value`")
+                    return False
+                self.check_mark(event, path)
+                key = event.value
+                child = f"{path}.{key}" if path else key
+                if key in holder:
+                    first = self.tree.lines[child][1]
+                    self.complain(event, child, f"this key was already given in line {first}", "give it once")
+                self.tree.lines[child] = (self.tree.file, event.start_mark.line + 1)
+                continue
+            child = f"{path}.{len(holder) if key is None else key}".lstrip(".")
+            self.check_mark(event, child)
+            node: Node
+            if isinstance(event, yaml.ScalarEvent):
+                node = event.value
+            elif isinstance(event, yaml.AliasEvent):
+                node = ""
+            else:
+                node = {} if isinstance(event, yaml.MappingStartEvent) else []
+            if isinstance(holder, list):
+                self.tree.lines[child] = (self.tree.file, event.start_mark.line + 1)
+                holder.append(node)
+            elif isinstance(holder, dict) and key is not None:
+                holder[key] = node
+            key = None
+            if isinstance(node, dict | list):
+                if len(stack) == DEEPEST:
+                    self.complain(event, child, f"more than {DEEPEST} levels of nesting", "a flatter file")
+                    return False
+                stack.append((node, child))
+        return True
+
+    def check_mark(self, event: Any, key: str) -> None:
+        """Complain of anchors, aliases and tags."""
+        if isinstance(event, yaml.AliasEvent):
+            self.complain(
+                event, key, f"aliases such as {quoted('*' + event.anchor)} are not read", "write it out"
+            )
+        elif event.anchor is not None:
+            self.complain(
+                event, key, f"anchors such as {quoted('&' + event.anchor)} are not read", "remove it"
+            )
+        elif event.tag is not None:
+            self.complain(event, key, f"tags such as {quoted(event.tag)} are not read", "remove it")
