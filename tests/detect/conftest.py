@@ -78,7 +78,9 @@ def instrument(kind="slit", **changes):
 
 # radii of Uranus: Archinal et al. 2018, Celest. Mech. Dyn. Astron. 130, 22, table 4
 URANUS = Figure(25559e3, 24973e3, 2000e3, "Archinal et al. 2018")
-TURN = LongitudeSystem("test", 0.0, -2.0 * math.pi / 62064.0, "east", 62064.0, 36.0, 0.0, "17.24 h, Archinal et al. 2018, table 1")
+TURN = LongitudeSystem(
+    "test", 0.0, -2.0 * math.pi / 62064.0, "east", 62064.0, 36.0, 0.0, "Archinal et al. 2018"
+)
 DARK = Continuum((1.9e-6, 5.3e-6), (0.0, 0.0), (), (), "none")
 GREY = Continuum((1.9e-6, 5.3e-6), (1e-4, 1e-4), (), (), "invented")
 

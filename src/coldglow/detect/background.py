@@ -77,7 +77,7 @@ def _nodes(values: np.ndarray, count: int) -> np.ndarray:
 
 
 def _collect(cells: np.ndarray, pixels: Pixels) -> np.ndarray:
-    """Return ndarray[..., pixel] from ndarray[..., cell]: blurred by the slit's image, or summed per filter."""
+    """Return ndarray[..., pixel] of ndarray[..., cell]: blurred by the slit's image, or summed in filters."""
     if pixels.step == 0.0:
         summed: np.ndarray = cells.reshape(*cells.shape[:-1], pixels.low_m.size, -1).sum(axis=-1)
         return summed
@@ -104,7 +104,9 @@ def pixel_table(
     telescope = instrument.telescope
     efficiency = telescope.transmission * setting.throughput
     if pixels.step == 0.0:
-        edges = [np.geomspace(a, b, _FILTER_CELLS + 1) for a, b in zip(pixels.low_m, pixels.high_m, strict=True)]
+        edges = [
+            np.geomspace(a, b, _FILTER_CELLS + 1) for a, b in zip(pixels.low_m, pixels.high_m, strict=True)
+        ]
     else:
         edges = [np.append(pixels.low_m, pixels.high_m[-1])]
     centre_m = np.concatenate([0.5 * (e[1:] + e[:-1]) for e in edges])

@@ -13,6 +13,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, fields
+from itertools import pairwise
 
 import numpy as np
 from scipy.special import erf
@@ -145,6 +146,7 @@ def extraction_aperture(
     Raises:
         RangeError: nods within the opening that cannot hold the disk at both positions, or background
             rows asked for that the opening does not have.
+
     """
     angle_rad = slit_angle(opening, disk)
     across, along = _half_extents(disk, angle_rad)
@@ -186,7 +188,9 @@ def _box_integral(distance: np.ndarray, half: float, sigma: float) -> np.ndarray
         value: np.ndarray = t * erf(t) + np.exp(-t * t) / math.sqrt(math.pi)
         return value
 
-    return 0.5 * root * (primitive((distance + half) / root) - primitive((distance - half) / root))
+    return np.asarray(
+        0.5 * root * (primitive((distance + half) / root) - primitive((distance - half) / root))
+    )
 
 
 def aperture_share(
@@ -224,7 +228,7 @@ def disk_in_aperture(disk: Disk, aperture: ExtractionAperture, spread: PointSpre
     edges = [aperture.offset_rad + side * 0.5 * aperture.width_rad for side in (-1.0, 1.0)]
     cuts = [-0.5 * math.pi, *(math.asin(min(max(e / reach, -1.0), 1.0)) for e in edges), 0.5 * math.pi]
     total = 0.0
-    for low, high in zip(cuts[:-1], cuts[1:], strict=True):
+    for low, high in pairwise(cuts):
         if high <= low:
             continue
         angle = 0.5 * (low + high) + 0.5 * (high - low) * _NODES
@@ -252,6 +256,7 @@ def see_disk(
 
     Raises:
         RangeError: see `extraction_aperture`.
+
     """
     aperture = extraction_aperture(opening, operation, disk, spread)
     radius_rad = disk.equatorial_radius_rad

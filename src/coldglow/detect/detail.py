@@ -7,7 +7,15 @@ from dataclasses import dataclass
 import numpy as np
 
 from coldglow.describe.records import Continuum, Instrument, Setting
-from coldglow.detect.exposure import Moments, continuum_prior, count, line_rates, set_up, variance_parts
+from coldglow.detect.exposure import (
+    NOISE_SOURCES,
+    Moments,
+    continuum_prior,
+    count,
+    line_rates,
+    set_up,
+    variance_shares,
+)
 from coldglow.detect.information import fisher
 from coldglow.detect.integration import Integrations
 from coldglow.detect.pixels import line_windows, profile_sigma
@@ -21,7 +29,7 @@ class Detail:
 
     Pixels (ndarray[pixel], electron/s in the whole aperture, and `variance` of the nodded difference):
     `wavelength_m`, `line_e_s`, `continuum_e_s`, `sky_e_s`, `telescope_e_s`, `efficiency` (transmission of
-    the air times electrons per photon). One number each: `dark_e_s`, `readout_e2_s` in the aperture per pixel.
+    the air times electrons per photon). One number for all: `dark_e_s`, `readout_e2_s` per spectral pixel.
 
     Lines (ndarray[line], those that were kept): `line_signal_e_s`, `line_transmission`, `line_information`
     (1/sigma² of ln of the line's flux per second, all else known; its root times the root of the time is
@@ -91,21 +99,23 @@ def expose_one(
     windows = line_windows(bench.pixels, bench.lines.wavelength_m, velocity, sigma, every_pixel=True)
     counts = count(bench, moment, rates, windows)
     time_share = bench.pixels.time_share
-    weight = time_share * np.square(counts.derivatives[0] / counts.variance)
-    parts = np.einsum("smk,mk->s", variance_parts(bench, counts), weight)
+    continuum_e, sky_e, telescope_e, dark_e, readout_e2 = (
+        counts.load[0, bench.source == source] @ counts.rows[bench.source == source]
+        for source in range(1, len(NOISE_SOURCES))
+    )
     signal = bench.nod.signal * rates[0]
     information = np.square(signal) * (windows.share.power(2) @ (time_share / counts.variance[0]))
     measured = information * bench.wanted
     return Detail(
         bench.pixels.centre_m,
         counts.lines[0],
-        counts.continuum[0],
-        counts.sky[0],
-        counts.telescope[0],
+        continuum_e,
+        sky_e,
+        telescope_e,
         bench.table.efficiency_of(moment.airmass, moment.water_m, bench.pixels.width_m)[0],
         counts.variance[0],
-        float(counts.dark[0]),
-        float(counts.readout[0]),
+        float(dark_e[0]),
+        float(readout_e2[0]),
         bench.lines,
         bench.wanted > 0.0,
         bench.slope,
@@ -115,6 +125,6 @@ def expose_one(
         temperature_shares(measured, bench.slope),
         fisher(counts.derivatives, counts.variance, time_share)[0],
         prior,
-        parts / max(float(parts.sum()), float(np.finfo(float).tiny)),
+        variance_shares(bench, counts)[0],
         counts.plan,
     )

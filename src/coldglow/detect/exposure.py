@@ -11,6 +11,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass, fields
 
 import numpy as np
+from scipy.ndimage import uniform_filter1d
 
 from coldglow.describe.records import Continuum, Instrument, Setting
 from coldglow.detect.background import PixelTable, collecting_area_m2, pixel_table
@@ -24,14 +25,15 @@ from coldglow.detect.integration import (
 )
 from coldglow.detect.pixels import LineWindows, Pixels, line_windows, make_pixels, profile_sigma
 from coldglow.errors import RangeError
-from coldglow.light.atmosphere import Atmosphere, line_transmission
+from coldglow.light.atmosphere import FWHM_PER_SIGMA, Atmosphere, line_transmission
 from coldglow.light.emission import log_temperature_slope, photon_radiance_s_m2_sr, thermal_sigma_m_s
 from coldglow.light.lines import LineList
 
 NOISE_SOURCES = ("lines", "planet continuum", "sky", "telescope", "dark", "read-out")
-LINES_KEPT = 0.999  # share of the sum of signal over background noise; the rest of the lines is left out
+LINES_KEPT = 0.999  # share of the information on N and on T; the faintest lines are left out
 VELOCITY_STEP = 0.25  # of a pixel: moments closer in velocity than this share the places of their lines
 WIDTH_STEP = 0.05  # of ln(width): the same for the width of the lines
+SMOOTHED = 2e-4  # in ln(wavelength), +-30 km/s: what the Earth's motion does to a line in a season
 _IMAGER_STEP_M_S = 1000.0
 
 
@@ -83,20 +85,19 @@ class Exposure:
 
 @dataclass(frozen=True, slots=True)
 class Counts:
-    """Rates of some moments on some pixels, electron/s in the whole aperture: ndarray[moment, pixel].
+    """Rates of some moments on some pixels, in the whole aperture and per second of open shutter.
 
-    `variance` is that of the difference that the nod pattern forms, per second of open shutter, and
-    `derivatives` ndarray[parameter, moment, pixel] belong to its signal.
+    `lines` ndarray[moment, pixel] in electron/s. All else is smooth and is kept as a product, `load`
+    ndarray[moment, load] times `rows` ndarray[load, pixel], each load belonging to one noise source.
+    `derivatives` ndarray[parameter, moment, pixel] and `variance` ndarray[moment, pixel] are those of the
+    difference that the nod pattern forms.
     """
 
     index: np.ndarray
     lines: np.ndarray
-    continuum: np.ndarray
-    sky: np.ndarray
-    telescope: np.ndarray
-    dark: np.ndarray
-    readout: np.ndarray
-    derivatives: np.ndarray
+    load: np.ndarray
+    rows: np.ndarray
+    derivatives: tuple[np.ndarray, ...]
     variance: np.ndarray
     plan: Integrations
 
@@ -106,6 +107,8 @@ class Bench:
     """All that stays the same from moment to moment: pixels, table, lines kept and what they emit.
 
     `radiance` ndarray[line] is per unit column (s-1 sr-1); `wanted` ndarray[line] marks those measured.
+    `rows` ndarray[load, pixel] are the table's rates and ones, `source` ndarray[load] the place in
+    NOISE_SOURCES that each belongs to, and `noise` ndarray[source] the variance per electron.
     """
 
     instrument: Instrument
@@ -120,6 +123,9 @@ class Bench:
     column_m2: float
     thermal_m_s: float
     nod: NodNoise
+    rows: np.ndarray
+    source: np.ndarray
+    noise: np.ndarray
 
 
 def goal_mask(lines: LineList, goal_lines: tuple[str, ...]) -> np.ndarray:
@@ -127,6 +133,7 @@ def goal_mask(lines: LineList, goal_lines: tuple[str, ...]) -> np.ndarray:
 
     Raises:
         NotFoundError: a name that is no line of the setting.
+
     """
     if not goal_lines:
         return np.ones(len(lines), dtype=bool)
@@ -159,7 +166,8 @@ def set_up(
         float(np.median(moments.sun_distance_m)),
     )
     inside = np.zeros(len(lines), dtype=bool)
-    for low, high in {(pixels.low_m[0], pixels.high_m[-1])} if pixels.step else zip(pixels.low_m, pixels.high_m):
+    whole = [(pixels.low_m[0], pixels.high_m[-1])]
+    for low, high in whole if pixels.step else zip(pixels.low_m, pixels.high_m, strict=True):
         inside |= (lines.wavelength_m >= low) & (lines.wavelength_m <= high)
     band = lines.take(inside)
     if not len(band):
@@ -170,8 +178,11 @@ def set_up(
         )
     wanted = goal_mask(band, goal_lines)
     radiance = photon_radiance_s_m2_sr(band, temperature_k, 1.0)
-    kept = _lines_that_count(band, radiance, pixels, table) | (wanted if goal_lines else False)
+    slope = log_temperature_slope(band, temperature_k)
+    kept = _lines_that_count(band, radiance, slope, pixels, table) | (wanted if goal_lines else False)
     band = band.take(kept)
+    nod, factor = nod_noise(instrument.operation), photon_variance_factor(instrument.detector)
+    nodes, ones = len(table.sky), np.ones((2, pixels.low_m.size))
     return Bench(
         instrument,
         setting,
@@ -180,32 +191,48 @@ def set_up(
         atmosphere,
         band,
         radiance[kept],
-        log_temperature_slope(band, temperature_k),
+        slope[kept],
         wanted[kept].astype(float),
         column_m2,
         float(thermal_sigma_m_s(temperature_k)),
-        nod_noise(instrument.operation),
+        nod,
+        np.concatenate([table.continuum, table.sky, table.telescope[None, :], ones]),
+        np.array([1] * nodes + [2] * nodes + [3, 4, 5]),
+        np.array([nod.source * factor] * 2 + [nod.background * factor] * 3 + [nod.background]),
     )
 
 
 def _lines_that_count(
-    lines: LineList, radiance: np.ndarray, pixels: Pixels, table: PixelTable
+    lines: LineList, radiance: np.ndarray, slope: np.ndarray, pixels: Pixels, table: PixelTable
 ) -> np.ndarray:
-    """Return ndarray[line]: the brightest against the noise of their background, LINES_KEPT of the sum."""
+    """Return ndarray[line]: the lines without which less than 1 - LINES_KEPT of the information is lost.
+
+    In a resolution element e lines add up to M_e = sum of m_l, m_l = signal over background noise; the
+    information is the sum of M_e², and a faint line contributes 2 M_e m_l to it. The same is asked of the
+    information on T, where a line counts with its slope. The air is taken at its clearest, smoothed, so
+    that no line is lost that another velocity would uncover.
+    """
     if pixels.step == 0.0:
         return np.ones(len(lines), dtype=bool)
     background = table.sky.min(axis=0) + table.telescope
-    at_line = np.interp(lines.wavelength_m, pixels.centre_m, background)
-    merit = radiance / np.sqrt(np.maximum(at_line, at_line.max() * 1e-12))
-    order = np.argsort(-merit)
-    total = np.cumsum(merit[order])
+    clear = table.unit_continuum.max(axis=0) / pixels.width_m
+    clear = uniform_filter1d(clear, max(int(SMOOTHED / pixels.step), 1))
+    place = np.log(lines.wavelength_m / pixels.low_m[0]) / pixels.step
+    pixel = np.clip(place.astype(int), 0, pixels.low_m.size - 1)
+    element = (place * pixels.step / (pixels.instrument_sigma * FWHM_PER_SIGMA)).astype(int)
+    merit = radiance * clear[pixel] / np.sqrt(np.maximum(background[pixel], background.max() * 1e-12))
+    mean_slope = float(np.square(merit) @ slope) / float(np.sum(np.square(merit)))
     kept = np.zeros(len(lines), dtype=bool)
-    kept[order[: int(np.searchsorted(total, LINES_KEPT * total[-1])) + 1]] = True
+    for weighted in (merit, merit * np.abs(slope - mean_slope)):
+        gain = weighted * np.bincount(element, weighted)[element]
+        order = np.argsort(-gain)
+        total = np.cumsum(gain[order])
+        kept[order[: int(np.searchsorted(total, total[-1] * (1.0 - 0.5 * (1.0 - LINES_KEPT)))) + 1]] = True
     return kept
 
 
 def line_rates(bench: Bench, moments: Moments) -> tuple[np.ndarray, np.ndarray]:
-    """Return ndarray[moment, line]: electron/s of each line in the aperture, and its transmission by the air."""
+    """Return electron/s of each line in the aperture and its transmission, both ndarray[moment, line]."""
     width_m_s = np.hypot(bench.thermal_m_s, moments.beam.velocity_spread_m_s)
     sigma_m_s = np.hypot(float(np.median(width_m_s)), bench.lines.position_sigma_m_s())
     if bench.atmosphere is None:
@@ -233,65 +260,52 @@ def count(bench: Bench, moments: Moments, rates: np.ndarray, windows: LineWindow
         moments: those that share the windows.
         rates: ndarray[moment, line] from `line_rates`.
         windows: where the lines fall.
+
     """
     detector, beam, table = bench.instrument.detector, moments.beam, bench.table
-    index = windows.index
-    etendue = (collecting_area_m2(bench.instrument.telescope) * beam.solid_angle_sr)[:, None]
+    etendue = collecting_area_m2(bench.instrument.telescope) * beam.solid_angle_sr
     node = table.weights(moments.airmass, moments.water_m)
-    wanted = rates * bench.wanted
-    lines = rates @ windows.share
-    continuum = etendue * beam.disk_fill[:, None] * (node @ table.continuum[:, index])
-    sky = etendue * (node @ table.sky[:, index])
-    telescope = etendue * table.telescope[index]
     pixels = beam.pixels_spatial
-    dark = pixels * detector.dark_e_s
+    lines = rates @ windows.share
     # the planet's light falls on the pixels that the disk covers, the background on all of them
     covered = pixels * np.clip(beam.disk_fill, 1.0 / pixels, 1.0)
-    planet = lines.max(axis=1, initial=0.0) + etendue[:, 0] * beam.disk_fill * (node @ table.peak_continuum)
-    peak = etendue[:, 0] * (node @ table.peak_warm) / pixels + planet / covered + detector.dark_e_s
+    planet = lines.max(axis=1, initial=0.0) + etendue * beam.disk_fill * (node @ table.peak_continuum)
+    peak = etendue * (node @ table.peak_warm) / pixels + planet / covered + detector.dark_e_s
     plan = choose_integration(peak, detector, bench.instrument.operation)
+    dark = pixels * detector.dark_e_s
     readout = pixels * read_variance_e2(detector) / plan.integration_s
-    factor, nod = photon_variance_factor(detector), bench.nod
-    empty = nod.source * factor * continuum + nod.background * (
-        factor * (sky + telescope + dark[:, None]) + readout[:, None]
+    seen = etendue[:, None] * node
+    load = np.concatenate(
+        [beam.disk_fill[:, None] * seen, seen, etendue[:, None], dark[:, None], readout[:, None]], axis=1
     )
-    derivatives = nod.signal * np.stack(
-        [
-            wanted @ windows.share,
-            (wanted * bench.slope) @ windows.share,
-            CONTINUUM_UNIT * etendue * (node @ table.unit_continuum[:, index]),
-            wanted @ windows.slope,
-        ]
+    rows = bench.rows.take(windows.index, axis=1)
+    variance = (load * bench.noise[bench.source]) @ rows
+    variance += bench.noise[0] * lines
+    signal = bench.nod.signal
+    wanted = signal * rates * bench.wanted
+    derivatives = (
+        wanted @ windows.share,
+        (wanted * bench.slope) @ windows.share,
+        (signal * CONTINUUM_UNIT * seen) @ table.unit_continuum.take(windows.index, axis=1),
+        wanted @ windows.slope,
     )
-    return Counts(
-        index,
-        lines,
-        continuum,
-        sky,
-        telescope,
-        dark,
-        readout,
-        derivatives,
-        empty + nod.source * factor * lines,
-        plan,
-    )
+    return Counts(windows.index, lines, load, rows, derivatives, variance, plan)
 
 
-def variance_parts(bench: Bench, counts: Counts) -> np.ndarray:
-    """Return ndarray[source, moment, pixel]: the variance rate by source, in the order of NOISE_SOURCES."""
-    factor = photon_variance_factor(bench.instrument.detector)
-    source, background = bench.nod.source * factor, bench.nod.background * factor
-    ones = np.ones_like(counts.sky)
-    return np.stack(
-        [
-            source * counts.lines,
-            source * counts.continuum,
-            background * counts.sky,
-            background * counts.telescope,
-            background * counts.dark[:, None] * ones,
-            bench.nod.background * counts.readout[:, None] * ones,
-        ]
-    )
+def variance_shares(bench: Bench, counts: Counts) -> np.ndarray:
+    """Return ndarray[moment, source]: who makes the variance of the matched filter over the wanted lines.
+
+    The filter weighs pixels with signal over variance, so each source counts with the square of that.
+    """
+    weight = bench.pixels.time_share[counts.index] * np.square(counts.derivatives[0] / counts.variance)
+    each = np.empty((len(weight), len(NOISE_SOURCES)))
+    each[:, 0] = np.einsum("mk,mk->m", weight, counts.lines)
+    smooth = (weight @ counts.rows.T) * counts.load
+    for source in range(1, len(NOISE_SOURCES)):
+        each[:, source] = smooth[:, bench.source == source].sum(axis=1)
+    each *= bench.noise
+    total = each.sum(axis=1, keepdims=True)
+    return np.where(total > 0.0, each / np.where(total > 0.0, total, 1.0), 0.0)
 
 
 def _groups(bench: Bench, moments: Moments) -> Iterator[tuple[np.ndarray, float, float]]:
@@ -311,6 +325,7 @@ def continuum_prior(bench: Bench, moments: Moments) -> np.ndarray:
 
     Raises:
         RangeError: an imager with neither off-band filter nor prior cannot tell lines from continuum.
+
     """
     setting, prior = bench.setting, np.zeros((4, 4))
     if math.isfinite(setting.continuum_prior):
@@ -355,6 +370,7 @@ def expose_moments(
         RangeError: no line in the setting, or an imager without any hold on the continuum.
         SaturationError: the shortest integration fills the well.
         NotFoundError: a goal line that the setting does not hold.
+
     """
     bench = set_up(
         moments, lines, temperature_k, column_m2, continuum, atmosphere, instrument, setting, goal_lines
@@ -376,9 +392,7 @@ def expose_moments(
         outside = level_sum - level[:, counts.index].sum(axis=1)
         etendue = collecting_area_m2(instrument.telescope) * part.beam.solid_angle_sr
         matrix[members, 2, 2] += etendue * (bench.table.weights(part.airmass, part.water_m) @ outside)
-        weight = time_share * np.square(counts.derivatives[0] / counts.variance)
-        each = np.einsum("smk,mk->ms", variance_parts(bench, counts), weight)
-        shares[members] = each / np.maximum(each.sum(axis=1, keepdims=True), np.finfo(float).tiny)
+        shares[members] = variance_shares(bench, counts)
         for whole, field in zip(plan, fields(Integrations), strict=True):
             whole[members] = getattr(counts.plan, field.name)
     light = bench.radiance * bench.wanted

@@ -14,6 +14,7 @@ Source: Tegmark, Taylor & Heavens 1997, ApJ 480, 22, equation 15, first-order te
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -21,7 +22,7 @@ import numpy as np
 from coldglow.describe.records import Operation
 
 PARAMETERS = ("ln_column", "temperature", "continuum", "wavelength_zero")
-CONTINUUM_UNIT = 1.0e20  # photon s-1 m-2 sr-1 m-1; sunlight at Uranus times a geometric albedo of 0.001 at 4 um
+CONTINUUM_UNIT = 1.0e20  # photon s-1 m-2 sr-1 m-1; about sunlight at Uranus on an albedo of 0.001
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,18 +53,19 @@ def nod_noise(operation: Operation) -> NodNoise:
     return NodNoise(1.0, 1.0, 1.0 if math.isinf(rows) else 1.0 + 1.0 / rows)
 
 
-def fisher(derivatives: np.ndarray, variance: np.ndarray, time_share: np.ndarray) -> np.ndarray:
+def fisher(derivatives: Sequence[np.ndarray], variance: np.ndarray, time_share: np.ndarray) -> np.ndarray:
     """Return ndarray[moment, parameter, parameter] per second of open shutter.
 
     Args:
-        derivatives: ndarray[parameter, moment, pixel] of the signal rate.
+        derivatives: one ndarray[moment, pixel] of the signal rate per parameter.
         variance: ndarray[moment, pixel], variance rate.
         time_share: ndarray[pixel], share of the open-shutter time that the pixel collects.
+
     """
-    whitened = derivatives * np.sqrt(time_share / variance)
-    count, moments = whitened.shape[:2]
-    matrix = np.empty((moments, count, count))
-    for i in range(count):
-        for j in range(i, count):
-            matrix[:, i, j] = matrix[:, j, i] = np.einsum("mk,mk->m", whitened[i], whitened[j])
+    inverse = time_share / variance
+    matrix = np.empty((len(variance), len(derivatives), len(derivatives)))
+    for i, first in enumerate(derivatives):
+        weighted = first * inverse
+        for j in range(i, len(derivatives)):
+            matrix[:, i, j] = matrix[:, j, i] = np.einsum("mk,mk->m", weighted, derivatives[j])
     return matrix

@@ -55,6 +55,7 @@ def choose_integration(peak_e_s: np.ndarray, detector: Detector, operation: Oper
 
     Raises:
         SaturationError: where even the shortest integration fills the usable well.
+
     """
     peak_e_s = np.asarray(peak_e_s, dtype=float)
     usable_e = detector.full_well_e * detector.usable_fraction

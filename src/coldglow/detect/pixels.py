@@ -35,12 +35,12 @@ class Pixels:
     @property
     def centre_m(self) -> np.ndarray:
         """Middle of each pixel."""
-        return 0.5 * (self.low_m + self.high_m)
+        return np.asarray(0.5 * (self.low_m + self.high_m))
 
     @property
     def width_m(self) -> np.ndarray:
         """Width of each pixel."""
-        return self.high_m - self.low_m
+        return np.asarray(self.high_m - self.low_m)
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,13 +112,14 @@ def line_windows(
         velocity_m_s: of the source against the telescope.
         sigma: rms width of the profile in ln(wavelength).
         every_pixel: return all pixels of the setting, also those that no line reaches.
+
     """
     centre = np.log(wavelength_m) + math.log1p(velocity_m_s / LIGHT_M_S)
     count = pixels.low_m.size
     if pixels.step == 0.0:
         columns = np.broadcast_to(np.arange(count), (centre.size, count))
     else:
-        reach = int(math.ceil(REACH_SIGMA * sigma / pixels.step))
+        reach = math.ceil(REACH_SIGMA * sigma / pixels.step)
         middle = np.floor((centre - math.log(pixels.low_m[0])) / pixels.step).astype(int)
         columns = middle[:, None] + np.arange(-reach, reach + 1)
     rows = np.broadcast_to(np.arange(centre.size)[:, None], columns.shape)

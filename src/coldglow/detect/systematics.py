@@ -67,6 +67,7 @@ def systematic_errors(
             at the two ends of the lines used, linear in wavelength between; the floors move all lines alike.
         einstein_a_error: relative error of the Einstein coefficients, independent from line to line.
         visits: independent visits, which average the floor of one visit.
+
     """
     used = information > 0.0
     weight, g = information[used], slope[used]
