@@ -79,7 +79,7 @@ def add_glow(parser: argparse.ArgumentParser) -> None:
     """Arguments of `glow`."""
     target_word(parser)
     parser.add_argument("--temperature", metavar="T", help="temperature (bare number: K)")
-    parser.add_argument("--column", metavar="N", help="vertical column (bare number: m-2)")
+    parser.add_argument("--column", metavar="N", help="column along the line of sight (bare number: m-2)")
     parser.add_argument("--band", nargs=2, metavar=("FROM", "TO"), help="wavelengths (bare numbers: um)")
 
 
@@ -87,7 +87,7 @@ def run_glow(words: argparse.Namespace) -> Result:
     """Run `glow`."""
     from coldglow.answers import glow
 
-    return glow(words.word, temperature=words.temperature, column=words.column, band=words.band)
+    return glow(words.word, temperature=words.temperature, column_density=words.column, band=words.band)
 
 
 def add_sky(parser: argparse.ArgumentParser) -> None:

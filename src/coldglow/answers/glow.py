@@ -1,0 +1,104 @@
+"""`glow`: how bright is it, line by line?"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from coldglow.answers.inputs import NamePath, Quantity, as_target, in_si, place_errors
+from coldglow.describe.records import Target
+from coldglow.light.emission import (
+    line_radiance_w_m2_sr,
+    optical_depth_warnings,
+    partition_function,
+    photon_radiance_s_m2_sr,
+    total_radiance_w_m2_sr,
+    validity_warnings,
+)
+from coldglow.light.lines import lines_in, load_lines
+from coldglow.light.shell import line_of_sight_column_m2
+from coldglow.report import words
+from coldglow.report.results import Entry, Result, column, table
+
+PRINTED = 20
+
+
+def glow(
+    target: NamePath | Target,
+    temperature: Quantity | None = None,
+    column_density: Quantity | None = None,
+    band: Sequence[Quantity] | None = None,
+) -> Result:
+    """Return the radiance of every line of a band.
+
+    Args:
+        target: name, path or record.
+        temperature: of the ions; default: the target's.
+        column_density: *along the line of sight*; default: the target's, mean over the visible disk.
+        band: shortest and longest vacuum wavelength; default: the whole list, 1.9-5.5 micron.
+
+    Returns:
+        A result with table ``lines`` (all lines of the band, in order of wavelength) and the header
+        ``temperature``, ``column``, ``partition_function``, ``total_radiance`` (all lines of the list),
+        ``band_radiance``.
+
+    Raises:
+        RangeError: a band without lines, or a temperature or column that is not positive.
+
+    """
+    record = as_target(target)
+    emission = record.emission
+    kelvin = (
+        emission.temperature_k.value
+        if temperature is None
+        else in_si(temperature, "temperature", "temperature")
+    )
+    if column_density is None:
+        shining = emission.column_m2.value * emission.lte_fraction.value
+        along_m2 = float(line_of_sight_column_m2(record.figure, shining))
+        kind = "along the line of sight, mean over the visible disk"
+    else:
+        along_m2, kind = in_si(column_density, "column", "column"), "along the line of sight, as asked"
+    low_m, high_m = (in_si(edge, "wavelength", "band") for edge in band) if band else (1.9e-6, 5.5e-6)
+    with place_errors(record):
+        lines = lines_in(min(low_m, high_m), max(low_m, high_m))
+        radiance = line_radiance_w_m2_sr(lines, kelvin, along_m2)
+        photons = photon_radiance_s_m2_sr(lines, kelvin, along_m2)
+        total = float(total_radiance_w_m2_sr(load_lines(), kelvin, along_m2))
+    share = radiance / total if total > 0.0 else np.zeros_like(radiance)
+    bright = np.sort(np.argsort(-radiance, kind="stable")[:PRINTED])
+    strongest = int(np.argmax(radiance))
+    name = f"{lines.label[strongest]} at {1e6 * lines.wavelength_m[strongest]:.4f} µm".strip()
+    return Result(
+        "glow",
+        {
+            "lines": table(
+                column("wavelength", 1e6 * lines.wavelength_m, "um", decimals=5, description="vacuum, rest"),
+                column("wavenumber", 1e-2 * lines.wavenumber_m1, "cm-1", decimals=3),
+                column("band", lines.band),
+                column("label", lines.label),
+                column("upper_energy", 1e-2 * lines.upper_energy_m1, "cm-1", decimals=1),
+                column("einstein_a", lines.einstein_a_s, "s-1"),
+                column("weight", lines.weight.astype(int), description="g_ns (2J'+1) of the upper level"),
+                column("radiance", radiance, "W m-2 sr-1"),
+                column("photon_radiance", photons, "s-1 m-2 sr-1"),
+                column("share", share, description="of the radiance of all lines of the list", digits=3),
+                caption=f"The {min(PRINTED, len(lines))} brightest of {len(lines)} lines",
+                rows=bright,
+            )
+        },
+        {
+            "target": Entry(record.name),
+            "temperature": Entry(kelvin, "K"),
+            "column": Entry(along_m2, "m-2", text=f"{words.quantity(along_m2, 'm-2', 4)} ({kind})"),
+            "partition_function": Entry(float(partition_function(kelvin)), digits=6),
+            "total_radiance": Entry(total, "W m-2 sr-1", label="total radiance, all lines of 1.9-5.5 µm"),
+            "band_radiance": Entry(float(radiance.sum()), "W m-2 sr-1", label="radiance of this band"),
+        },
+        [
+            f"The brightest of {len(lines)} lines is {name}; this band holds "
+            f"{words.percent(float(share.sum()))} of the light of all lines."
+        ],
+        [*validity_warnings(kelvin), *optical_depth_warnings(lines, kelvin, along_m2)],
+    )

@@ -1,0 +1,96 @@
+"""What the answers accept: names, paths or records; quantities as text, numbers in SI, or astropy's.
+
+`place_errors` is the border at which an error that knows only a key path learns its file and line.
+"""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from contextlib import contextmanager
+from typing import Any
+
+import numpy as np
+
+from coldglow.describe.load import load_instrument, load_request, load_target
+from coldglow.describe.records import Instrument, Limits, Origin, Request, Target
+from coldglow.errors import NotFoundError, Problem, RangeError, UnitError
+from coldglow.units import KINDS, parse_quantity
+
+NamePath = str | os.PathLike[str]
+Quantity = str | float | Any  # text with a unit, a float in SI, or an astropy Quantity
+
+# a bare place on the Earth: up, and the Sun below nautical twilight
+BARE_LIMITS = Limits(
+    airmass_max=np.inf,
+    altitude_min_rad=0.0,
+    altitude_max_rad=np.pi / 2,
+    sun_altitude_max_rad=np.radians(-12.0),
+    daytime=False,
+    sun_separation_min_rad=0.0,
+    moon_separation_min_rad=0.0,
+    elongation_min_rad=0.0,
+    elongation_max_rad=np.pi,
+    longest_visit_s=np.inf,
+)
+
+
+def as_target(target: NamePath | Target) -> Target:
+    """Return a target from its record, name or path."""
+    return target if isinstance(target, Target) else load_target(target)
+
+
+def as_instrument(instrument: NamePath | Instrument) -> Instrument:
+    """Return an instrument from its record, name or path."""
+    return instrument if isinstance(instrument, Instrument) else load_instrument(instrument)
+
+
+def as_request(request: NamePath | Request) -> Request:
+    """Return a request from its record or path."""
+    return request if isinstance(request, Request) else load_request(request)
+
+
+def in_si(value: Quantity, kind: str, name: str, bare_unit: str | None = None) -> float:
+    """Return a quantity in SI. Text without a unit means `bare_unit`; a float is in SI already.
+
+    Raises:
+        UnitError: the text is not such a quantity; the sentence begins with `name`.
+
+    """
+    if isinstance(value, str):
+        try:
+            return parse_quantity(value, kind, bare_unit or KINDS[kind].shown)
+        except UnitError as error:
+            raise UnitError(f"{name}: {error}") from None
+    to_value = getattr(value, "to_value", None)
+    return float(value if to_value is None else to_value(KINDS[kind].si))
+
+
+@contextmanager
+def place_errors(*described: Target | Instrument | Request) -> Iterator[None]:
+    """Put file and line in front of an error whose key path stands in one of these descriptions."""
+    try:
+        yield
+    except (RangeError, NotFoundError) as error:
+        key = getattr(error, "key", "")
+        for record in described:
+            where = _locate(record.origin, key) if key else None
+            if where:
+                error.args = (str(Problem(*where, key, str(error))),)
+                break
+        raise
+
+
+def _locate(origin: Origin, key: str) -> tuple[str, int] | None:
+    """Return file and line of a key path or of what encloses it; None where the description has neither."""
+    parts = key.split(".")
+    while parts:
+        if ".".join(parts) in origin.lines:
+            return origin.lines[".".join(parts)]
+        parts.pop()
+    return None
+
+
+def described(request: Request) -> tuple[Request | Target | Instrument, ...]:
+    """Return the request and all that it names, for `place_errors`."""
+    return request, request.target, *(use.instrument for use in request.uses)
