@@ -58,6 +58,12 @@ def number(value: float, digits: int = 3, infinite: str = "∞") -> str:
     return text.replace("-", "−", 1) if text.startswith("-") else text
 
 
+def short(value: float, digits: int = 3) -> str:
+    """Return `number` without trailing zeros, for round values that somebody chose: ``5``, ``0.8``."""
+    text = number(value, digits)
+    return text.rstrip("0").rstrip(".") if "." in text and "×" not in text else text
+
+
 def unit(name: str) -> str:
     """Return a unit as people write it: ``W m-2 sr-1`` becomes ``W m⁻² sr⁻¹``, ``um`` becomes ``µm``."""
     parts = []

@@ -1,0 +1,1 @@
+"""Figures: one function per figure, arrays in display units in, a matplotlib Figure out."""
