@@ -1,9 +1,9 @@
 """Pack the table of the Earth's atmosphere into ``atmosphere.npz``.
 
-Usage: ``python make_atmosphere.py TABLE.npz [atmosphere.npz]``. The table holds the zenith optical depth of the
-dry gas and of each millimetre of precipitable water above two heights, on a grid even in the logarithm of
-the vacuum wavelength; ``atmosphere.md`` says how it was derived and ``NOTICE.md`` goes with it. Its half-precision
-numbers are kept as they are, the two heights stacked.
+Usage: ``python make_atmosphere.py TABLE.npz [atmosphere.npz]``. The table holds the zenith optical depth
+of the dry gas and of each millimetre of precipitable water above two heights, on a grid even in the
+logarithm of the vacuum wavelength; ``atmosphere.md`` says how it was derived and ``NOTICE.md`` goes with it.
+Its half-precision numbers are kept as they are, the two heights stacked.
 """
 
 from __future__ import annotations

@@ -1,1 +1,1 @@
-"""Photons that arrive: line radiance, the glowing shell, Earth's atmosphere; nothing here knows an instrument."""
+"""Photons that arrive: line radiance, glowing shell, Earth's atmosphere; nothing here knows an instrument."""

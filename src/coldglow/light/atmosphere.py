@@ -1,8 +1,8 @@
-"""The Earth's atmosphere: transmission at any wavelength, over a shifted line, over a pixel; limits of the table.
+"""The Earth's atmosphere: transmission at any wavelength, over a shifted line, over a pixel.
 
-T = exp(-X (tau_dry + w tau_water)) with airmass X and precipitable water w. Telluric lines stay at rest; the
-planet's line moves over them. Transmission is averaged, never optical depth. ``data/atmosphere.md`` says how the
-table was derived and how good it is.
+T = exp(-X (tau_dry + w tau_water)) with airmass X and precipitable water w. Telluric lines stay at rest;
+the planet's line moves over them. Transmission is averaged, never optical depth. ``data/atmosphere.md``
+says how the table was derived and how good it is.
 """
 
 from __future__ import annotations
@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from functools import lru_cache
 from importlib.resources import files
+from pathlib import Path
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -18,7 +19,7 @@ from scipy.interpolate import BarycentricInterpolator, BSpline, make_interp_spli
 from scipy.ndimage import gaussian_filter1d
 from scipy.special import ndtr
 
-from coldglow.errors import RangeError
+from coldglow.errors import NotFoundError, RangeError
 from coldglow.light.table import OPAQUE_TAU, read_table
 
 Floats = NDArray[np.float64]
@@ -54,7 +55,8 @@ class Atmosphere:
     @property
     def wavelength_m(self) -> Floats:
         """Return the grid."""
-        return self.first_wavelength_m * np.exp(self.log_step * np.arange(self.tau_dry.size))
+        grid: Floats = self.first_wavelength_m * np.exp(self.log_step * np.arange(self.tau_dry.size))
+        return grid
 
     @property
     def span_m(self) -> tuple[float, float]:
@@ -67,14 +69,16 @@ class Atmosphere:
 
         Raises:
             RangeError: another water than the table's own is asked of a table that cannot be scaled.
+
         """
         if self.tau_water_per_m is not None:
             return self.tau_dry[part] + water_m * self.tau_water_per_m[part]
         if self.fixed_water_m is None or abs(water_m - self.fixed_water_m) > 1e-3 * self.fixed_water_m:
             held = "an unstated amount" if self.fixed_water_m is None else f"{1e3 * self.fixed_water_m:g} mm"
             raise RangeError(
-                f"{1e3 * water_m:g} mm of water asked, but the transmission table has one column, made for {held}, "
-                "and cannot be scaled; give a table with tau_dry and tau_h2o_per_mm, or ask for its own water",
+                f"{1e3 * water_m:g} mm of water asked, but the transmission table has one column, made for "
+                f"{held}, and cannot be scaled; give a table with tau_dry and tau_h2o_per_mm, or ask for its "
+                "own water",
                 "sky.water",
             )
         return self.tau_dry[part]
@@ -84,6 +88,7 @@ class Atmosphere:
 
         Raises:
             RangeError: a wavelength outside the table.
+
         """
         wavelength = np.asarray(wavelength_m, dtype=np.float64)
         place: Floats = np.log(wavelength / self.first_wavelength_m) / self.log_step
@@ -91,7 +96,8 @@ class Atmosphere:
             first, last = self.span_m
             bad = wavelength.flat[int(np.argmax(np.abs(place - 0.5 * self.tau_dry.size)))]
             raise RangeError(
-                f"no transmission at {1e6 * bad:.4f} um; the table covers {1e6 * first:.3f} to {1e6 * last:.3f} um",
+                f"no transmission at {1e6 * bad:.4f} um; the table covers {1e6 * first:.3f} to "
+                f"{1e6 * last:.3f} um",
                 "band",
             )
         return place
@@ -110,7 +116,7 @@ class Atmosphere:
     def smoothed(
         self, shortest_m: float, longest_m: float, airmass: float, water_m: float, resolving_power: float
     ) -> tuple[Floats, Floats]:
-        """Return the grid wavelengths of a band and T smoothed to a resolving power (Gaussian in ln lambda)."""
+        """Return the grid of a band and T smoothed to a resolving power (Gaussian in ln lambda)."""
         sigma = 1.0 / (resolving_power * FWHM_PER_SIGMA * self.log_step)
         low, high = self.position(np.array([shortest_m, longest_m]))
         margin = int(5.0 * sigma) + 1
@@ -141,7 +147,6 @@ class Atmosphere:
         return means.reshape(*airmasses.shape, -1)
 
 
-@lru_cache(maxsize=8)
 def load_atmosphere(height_m: float, path: str = "") -> Atmosphere:
     """Return the atmosphere above a site, from the packaged table or from the user's own (read once).
 
@@ -151,10 +156,18 @@ def load_atmosphere(height_m: float, path: str = "") -> Atmosphere:
     Raises:
         RangeError: a height whose pressure is outside 550-800 hPa (about 2.0-4.9 km), or a wrong table.
         NotFoundError: no such table.
+
     """
-    return _own(path, height_m) if path else _packaged(height_m)
+    if not path:
+        return _packaged(height_m)
+    try:
+        changed_ns = Path(path).stat().st_mtime_ns
+    except OSError as error:
+        raise NotFoundError(f"the transmission table {path!r} cannot be read: {error.strerror}") from None
+    return _own(path, height_m, changed_ns)
 
 
+@lru_cache(maxsize=4)
 def _packaged(height_m: float) -> Atmosphere:
     with files("coldglow.data").joinpath("atmosphere.npz").open("rb") as file, np.load(file) as packed:
         table = {name: packed[name].astype(np.float64) for name in packed.files}
@@ -167,8 +180,9 @@ def _packaged(height_m: float) -> Atmosphere:
             low + slope * (np.log(p) - log_pressure[0]) for p in (HIGHEST_PRESSURE_PA, LOWEST_PRESSURE_PA)
         ]
         raise RangeError(
-            f"the packaged atmosphere does not reach a height of {height_m:.0f} m (about {pressure / 100.0:.0f} hPa); "
-            f"it serves {span[0]:.0f} to {span[1]:.0f} m: give a transmission table of your own as `atmosphere`",
+            f"the packaged atmosphere does not reach a height of {height_m:.0f} m "
+            f"(about {pressure / 100.0:.0f} hPa); it serves {span[0]:.0f} to {span[1]:.0f} m: "
+            "give a transmission table of your own as `atmosphere`",
             "site.height",
         )
     notes = []
@@ -177,45 +191,60 @@ def _packaged(height_m: float) -> Atmosphere:
             f"The atmosphere at {height_m:.0f} m is extrapolated from {low:.0f} and {high:.0f} m; "
             "add a few per cent to the error of the transmission."
         )
-    depths = [_at_height(table[name], share) for name in ("tau_dry", "tau_water_per_mm")]
-    depths[1] *= 1000.0
-    for depth in depths:
-        depth.flags.writeable = False
     return Atmosphere(
-        float(table["first_wavelength_m"]), float(table["log_step"]), *depths, None, height_m, tuple(notes)
+        first_wavelength_m=float(table["first_wavelength_m"]),
+        log_step=float(table["log_step"]),
+        tau_dry=_frozen(_at_height(table["tau_dry"], share)),
+        tau_water_per_m=_frozen(1000.0 * _at_height(table["tau_water_per_mm"], share)),
+        fixed_water_m=None,
+        height_m=height_m,
+        notes=tuple(notes),
     )
+
+
+def _frozen(array: Floats) -> Floats:
+    array.flags.writeable = False
+    return array
 
 
 def _at_height(depth: Floats, share: float) -> Floats:
     """Return optical depth between (or a little beyond) two heights, geometric mean weighted by `share`."""
     if share in (0.0, 1.0):
-        return depth[int(share)].copy()
+        chosen: Floats = depth[int(share)].copy()
+        return chosen
     tiny = 1e-9  # where the half-precision table holds 0
     log_low, log_high = np.log(np.maximum(depth, tiny))
-    return np.minimum(np.exp(log_low + share * (log_high - log_low)), OPAQUE_TAU)
+    between: Floats = np.minimum(np.exp(log_low + share * (log_high - log_low)), OPAQUE_TAU)
+    return between
 
 
-def _own(path: str, height_m: float) -> Atmosphere:
+@lru_cache(maxsize=4)
+def _own(path: str, height_m: float, changed_ns: int) -> Atmosphere:
+    """Return the user's table; `changed_ns` makes an edited file a new one."""
     table = read_table(path)
     log_wavelength = np.log(table.wavelength_m)
     step = max(float(np.diff(log_wavelength).min()), FINEST_LOG_STEP)
     grid = np.arange(log_wavelength[0], log_wavelength[-1] + 0.5 * step, step)
-    depths = [
-        None if depth is None else np.interp(grid, log_wavelength, depth)
-        for depth in (table.tau_dry, table.tau_water_per_m)
-    ]
+    water = table.tau_water_per_m
     notes = [
         f"The Earth's transmission is the user's own table, {path}; its errors are its maker's to state."
     ]
     coarsest_km_s = 1e-3 * c * float(np.diff(log_wavelength).max())
     if coarsest_km_s > 5.0:
         notes.append(
-            f"Its samples lie up to {coarsest_km_s:.0f} km/s apart: a band average that cannot place telluric lines."
+            f"Its samples lie up to {coarsest_km_s:.0f} km/s apart: "
+            "a band average that cannot place telluric lines."
         )
     if table.height_m is not None and abs(table.height_m - height_m) > 300.0:
         notes.append(f"It was made for {table.height_m:.0f} m, the site lies at {height_m:.0f} m.")
     return Atmosphere(
-        float(table.wavelength_m[0]), step, depths[0], depths[1], table.water_m, height_m, tuple(notes)
+        first_wavelength_m=float(table.wavelength_m[0]),
+        log_step=step,
+        tau_dry=_frozen(np.interp(grid, log_wavelength, table.tau_dry)),
+        tau_water_per_m=None if water is None else _frozen(np.interp(grid, log_wavelength, water)),
+        fixed_water_m=table.water_m,
+        height_m=height_m,
+        notes=tuple(notes),
     )
 
 
@@ -244,6 +273,7 @@ def line_transmission(
         range_rate_m_s: scalar or ndarray[time], positive receding.
         airmass: scalar or ndarray[time].
         water_m: scalar or ndarray[time], precipitable water at the zenith.
+
     """
     rest = np.atleast_1d(np.asarray(wavelength_m, dtype=np.float64))
     sigma = np.broadcast_to(np.asarray(sigma_m_s, dtype=np.float64), rest.shape)
@@ -284,7 +314,7 @@ def _velocity_nodes(rate_m_s: Floats, sigma_m_s: float) -> Floats:
 
 
 def _nodes_and_weights(value: Floats, count: int) -> tuple[Floats, Floats]:
-    """Return nodes and ndarray[time, node] of Lagrange weights: exact at few distinct values, else Chebyshev."""
+    """Return nodes and Lagrange weights ndarray[time, node]; few distinct values are nodes themselves."""
     distinct, which = np.unique(value, return_inverse=True)
     if distinct.size <= count:
         return distinct, np.eye(distinct.size)[which]
@@ -308,7 +338,8 @@ def _average_line(
     # beyond the ends of the table its last samples go on
     edge[0], edge[-1] = -np.inf if first == 0 else edge[0], np.inf if part.stop == last + 1 else edge[-1]
     share = np.diff(ndtr((edge - (place + shift)[:, np.newaxis]) / max(width, 1e-3)), axis=1)
-    return share @ sample
+    average: Floats = share @ sample
+    return average
 
 
 def transmission_error(

@@ -30,7 +30,9 @@ AIRGLOW_BAND_M = (1.95e-6, 2.30e-6)  # OH bands end here (Ashley et al. 1996, PA
 def planck_w_m2_m_sr(wavelength_m: ArrayLike, temperature_k: ArrayLike) -> Floats:
     """Return the spectral radiance of a black body, W m-2 m-1 sr-1 (arguments broadcast)."""
     wavelength = np.asarray(wavelength_m, dtype=np.float64)
-    return 2.0 * h * c**2 / wavelength**5 / np.expm1(h * c / (wavelength * k * np.asarray(temperature_k)))
+    x = h * c / (wavelength * k * np.asarray(temperature_k, dtype=np.float64))
+    radiance: Floats = 2.0 * h * c**2 / wavelength**5 / np.expm1(x)
+    return radiance
 
 
 def planck_photon_s_m2_m_sr(wavelength_m: ArrayLike, temperature_k: ArrayLike) -> Floats:
@@ -40,7 +42,8 @@ def planck_photon_s_m2_m_sr(wavelength_m: ArrayLike, temperature_k: ArrayLike) -
 
 def to_photons(wavelength_m: ArrayLike, radiance_w: ArrayLike) -> Floats:
     """Return any radiance in watts as photons per second: divided by h c / lambda."""
-    return np.asarray(radiance_w) * np.asarray(wavelength_m, dtype=np.float64) / (h * c)
+    photons: Floats = np.asarray(radiance_w, dtype=np.float64) * np.asarray(wavelength_m) / (h * c)
+    return photons
 
 
 def solar_irradiance_w_m2_m(wavelength_m: ArrayLike, sun_distance_m: ArrayLike = au) -> Floats:
@@ -49,14 +52,16 @@ def solar_irradiance_w_m2_m(wavelength_m: ArrayLike, sun_distance_m: ArrayLike =
     Planck's law at the Sun's brightness temperature, within 5 % at 1.9-5.5 um; the Sun's own lines (carbon
     monoxide near 2.3-2.5 and 4.4-5 um above all) are left out.
     """
-    temperature = np.interp(wavelength_m, SUN_WAVELENGTH_M, SUN_TEMPERATURE_K)
+    temperature = np.interp(np.asarray(wavelength_m), SUN_WAVELENGTH_M, SUN_TEMPERATURE_K)
     solid_angle = np.pi * (SUN_RADIUS_M / np.asarray(sun_distance_m, dtype=np.float64)) ** 2
-    return planck_w_m2_m_sr(wavelength_m, temperature) * solid_angle
+    irradiance: Floats = planck_w_m2_m_sr(wavelength_m, temperature) * solid_angle
+    return irradiance
 
 
 def albedo(continuum: Continuum, wavelength_m: ArrayLike) -> Floats:
     """Return the geometric albedo, linear between the table's wavelengths and constant outside them."""
-    return np.interp(wavelength_m, continuum.albedo_wavelength_m, continuum.albedo)
+    value: Floats = np.interp(np.asarray(wavelength_m), continuum.albedo_wavelength_m, continuum.albedo)
+    return value
 
 
 def reflected_radiance_w_m2_m_sr(
@@ -64,17 +69,21 @@ def reflected_radiance_w_m2_m_sr(
 ) -> Floats:
     """Return the mean radiance of the sunlit disk near full phase: irradiance * albedo / pi.
 
-    The giant planets beyond Jupiter stay within 6.5 deg of full phase, Jupiter within 12 deg: no phase function.
+    No phase function: Jupiter stays within 12 deg of full phase, the planets beyond within 6.5 deg.
     """
     irradiance = solar_irradiance_w_m2_m(wavelength_m, sun_distance_m)
-    return irradiance * albedo(continuum, wavelength_m) / np.pi
+    radiance: Floats = irradiance * albedo(continuum, wavelength_m) / np.pi
+    return radiance
 
 
 def thermal_radiance_w_m2_m_sr(continuum: Continuum, wavelength_m: ArrayLike) -> Floats:
     """Return the planet's own thermal radiance as described (linear in the table), 0 where there is none."""
     if not continuum.thermal_wavelength_m:
         return np.zeros(np.shape(wavelength_m))
-    return np.interp(wavelength_m, continuum.thermal_wavelength_m, continuum.thermal_radiance_w_m2_m_sr)
+    radiance: Floats = np.interp(
+        np.asarray(wavelength_m), continuum.thermal_wavelength_m, continuum.thermal_radiance_w_m2_m_sr
+    )
+    return radiance
 
 
 def planet_photon_s_m2_m_sr(
@@ -86,7 +95,7 @@ def planet_photon_s_m2_m_sr(
 
 
 def zodiacal_photon_s_m2_m_sr(wavelength_m: ArrayLike, scale: float = 1.0) -> Floats:
-    """Return zodiacal light seen from space, s-1 m-2 m-1 sr-1; `scale` 1 is the low level, 1-5 by latitude."""
+    """Return zodiacal light seen from space, s-1 m-2 m-1 sr-1; `scale` 1 (low level) to 5 (ecliptic)."""
     return scale * sum(
         (share * planck_photon_s_m2_m_sr(wavelength_m, temperature) for share, temperature in ZODIACAL),
         start=np.zeros(np.shape(wavelength_m)),
@@ -102,9 +111,9 @@ def sky_photon_s_m2_m_sr(
     """Return the radiance of the sky above the telescope, s-1 m-2 m-1 sr-1: (1 - T) B(T_sky) + airglow.
 
     `transmission` [..., wavelength] as seen by a pixel (the mean over it). The airglow is the mean of the OH
-    bands, spread evenly over 1.95-2.30 um: single OH lines are up to a hundred times brighter and are not placed.
-    Within saturated lines the air nearer the ground (some 10 K warmer) radiates: there the sky is too faint here
-    by about half, where no planetary light arrives anyway.
+    bands, spread evenly over 1.95-2.30 um: single OH lines are up to a hundred times brighter and are not
+    placed. Within saturated lines the air nearer the ground (some 10 K warmer) radiates: there the sky is too
+    faint here by about half, where no planetary light arrives anyway.
     """
     wavelength = np.asarray(wavelength_m, dtype=np.float64)
     thermal = (1.0 - np.asarray(transmission)) * planck_photon_s_m2_m_sr(wavelength, sky_temperature_k)

@@ -70,6 +70,7 @@ def disk_image(
         half_width: of the picture, equatorial radii.
         blur_fwhm: Gaussian blur afterwards, equatorial radii; 0 for none.
         oversample: rows and columns computed per pixel (spots have sharp edges).
+
     """
     view = view_of(figure, sub_observer_latitude_rad)
     fine = np.linspace(-half_width, half_width, pixels * oversample + 1)
@@ -92,9 +93,7 @@ def disk_image(
     scale = view.shell_equator * view.shell_outline_pole
     for side, depth in ((uz, everything), (-uz, everything - hidden)):
         path = depth * area_per_solid_angle(view, ux, uy, side) / scale
-        column += path * _ions(
-            view, figure, spots, x, y, side, sub_observer_longitude_rad, system
-        )
+        column += path * _ions(view, figure, spots, x, y, side, sub_observer_longitude_rad, system)
     column = column.reshape(pixels, oversample, pixels, oversample).mean(axis=(1, 3))
     edges = fine[::oversample]
     if blur_fwhm > 0.0:

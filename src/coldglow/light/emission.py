@@ -10,11 +10,10 @@ from numpy.typing import ArrayLike, NDArray
 from scipy.constants import atomic_mass, c, electron_mass, h, k
 
 from coldglow.errors import RangeError
-from coldglow.light.lines import LineList, load_levels
+from coldglow.light.lines import C2_M_K, LineList, load_levels
 
 Floats = NDArray[np.float64]
 
-C2_M_K = h * c / k  # second radiation constant
 MASS_KG = 3 * 1.00782503 * atomic_mass - electron_mass  # three hydrogen atoms less one electron
 COLDEST_K, HOTTEST_K = 150.0, 1500.0
 TOTAL_UNCERTAIN_K = 800.0
@@ -46,7 +45,8 @@ def emission_rate_s(lines: LineList, temperature_k: ArrayLike) -> Floats:
     """Return photons per second from one molecule in each line, [..., line], into all directions."""
     temperature = _checked(temperature_k)
     population = lines.weight * np.exp(-C2_M_K * lines.upper_energy_m1 / temperature[..., np.newaxis])
-    return lines.einstein_a_s * population / _sums(temperature)[0][..., np.newaxis]
+    rate: Floats = lines.einstein_a_s * population / _sums(temperature)[0][..., np.newaxis]
+    return rate
 
 
 def photon_radiance_s_m2_sr(
@@ -59,7 +59,8 @@ def photon_radiance_s_m2_sr(
     column). Temperature, column and fraction broadcast against each other.
     """
     column = np.asarray(column_m2, dtype=np.float64) * np.asarray(lte_fraction, dtype=np.float64)
-    return column[..., np.newaxis] * emission_rate_s(lines, temperature_k) / (4.0 * np.pi)
+    radiance: Floats = column[..., np.newaxis] * emission_rate_s(lines, temperature_k) / (4.0 * np.pi)
+    return radiance
 
 
 def line_radiance_w_m2_sr(
@@ -73,7 +74,7 @@ def line_radiance_w_m2_sr(
     Source: Boltzmann's law and the definition of the Einstein coefficient, e.g. Drossart et al. 1989,
     Nature 340, 539 (from memory), for H3+ in Jupiter.
     """
-    energy_j = h * c * lines.wavenumber_m1
+    energy_j: Floats = h * c * lines.wavenumber_m1
     return energy_j * photon_radiance_s_m2_sr(lines, temperature_k, column_m2, lte_fraction)
 
 
@@ -81,19 +82,22 @@ def total_radiance_w_m2_sr(
     lines: LineList, temperature_k: ArrayLike, column_m2: ArrayLike, lte_fraction: ArrayLike = 1.0
 ) -> Floats:
     """Return the sum over the given lines (a band of the list, or all of it), [...]."""
-    return line_radiance_w_m2_sr(lines, temperature_k, column_m2, lte_fraction).sum(axis=-1)
+    total: Floats = line_radiance_w_m2_sr(lines, temperature_k, column_m2, lte_fraction).sum(axis=-1)
+    return total
 
 
 def log_temperature_slope(lines: LineList, temperature_k: ArrayLike) -> Floats:
     """Return d(ln I)/dT of each line at constant column, 1/K, [..., line]: c2 (E' - <E>) / T^2."""
     temperature = _checked(temperature_k)
     excess_m1 = lines.upper_energy_m1 - _sums(temperature)[1][..., np.newaxis]
-    return C2_M_K * excess_m1 / temperature[..., np.newaxis] ** 2
+    slope: Floats = C2_M_K * excess_m1 / temperature[..., np.newaxis] ** 2
+    return slope
 
 
 def thermal_sigma_m_s(temperature_k: ArrayLike) -> Floats:
     """Return the standard deviation of the thermal velocity along one direction, sqrt(kT/m), [...]."""
-    return np.sqrt(k * _checked(temperature_k) / MASS_KG)
+    sigma: Floats = np.sqrt(k * _checked(temperature_k) / MASS_KG)
+    return sigma
 
 
 def optical_depth(
@@ -116,7 +120,8 @@ def optical_depth(
         lines.einstein_a_s * lines.weight * lines.wavelength_m**3 / (8.0 * np.pi * np.sqrt(2.0 * np.pi))
     )
     column = np.asarray(column_m2, dtype=np.float64)[..., np.newaxis]
-    return column * strength * lower * induced / sigma
+    depth: Floats = column * strength * lower * induced / sigma
+    return depth
 
 
 def optical_depth_warnings(lines: LineList, temperature_k: float, column_m2: float) -> list[str]:
@@ -127,9 +132,9 @@ def optical_depth_warnings(lines: LineList, temperature_k: float, column_m2: flo
     thickest = int(np.argmax(depth))
     name = f"{lines.label[thickest]} at {1e6 * lines.wavelength_m[thickest]:.4f} um".strip()
     return [
-        f"{int((depth > OPTICAL_DEPTH_LIMIT).sum())} lines are not optically thin: the depth at the centre of "
-        f"{name} is {depth[thickest]:.2g}, above {OPTICAL_DEPTH_LIMIT:g}; such lines are fainter than stated here "
-        "and the column is underestimated from them."
+        f"{int((depth > OPTICAL_DEPTH_LIMIT).sum())} of the lines are not optically thin (limit "
+        f"{OPTICAL_DEPTH_LIMIT:g}): the depth at the centre of {name} is {depth[thickest]:.2g}. "
+        "Such lines are fainter than stated here."
     ]
 
 
@@ -138,21 +143,21 @@ def validity_warnings(temperature_k: float) -> list[str]:
 
     Source: the completeness and accuracy measured for the list, ``data/h3p.md``.
     """
-    notes = []
+    at, notes = f"At {temperature_k:g} K", []
     if temperature_k < COLDEST_K:
         notes.append(
-            f"At {temperature_k:g} K, below {COLDEST_K:g} K, the lines were not selected for this temperature "
-            "(faint cold lines may be missing) and the glow is so weak that departures from equilibrium decide it."
+            f"{at}, below {COLDEST_K:g} K, lines may be missing, because the list was selected for warmer gas; "
+            "and departures from equilibrium decide so weak a glow."
         )
     if temperature_k > TOTAL_UNCERTAIN_K:
         notes.append(
-            f"At {temperature_k:g} K the total over all lines disagrees with a published fit (lower by 6 % at 800 K, "
-            "12 % at 1000 K, 34 % at 1500 K, unexplained): do not use the total as a reference value above "
-            f"{TOTAL_UNCERTAIN_K:g} K. Positions and ratios of the labelled lines are not touched by this."
+            f"{at} the total over all lines disagrees with a published fit (lower by 6 % at 800 K, 12 % at "
+            "1000 K, 34 % at 1500 K, unexplained): do not use the total as a reference value above "
+            f"{TOTAL_UNCERTAIN_K:g} K."
         )
     if temperature_k > HOTTEST_K:
         notes.append(
-            f"At {temperature_k:g} K, above {HOTTEST_K:g} K, levels above 11 000 cm-1 matter and are missing: already "
-            "at 1500 K the emission is 2-3 % too low and the partition function 0.2 % too low, more above."
+            f"{at}, above {HOTTEST_K:g} K, levels above 11 000 cm-1 matter and are missing: already at 1500 K "
+            "the emission is 2-3 % and the partition function 0.2 % too low, more above."
         )
     return notes

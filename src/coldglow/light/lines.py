@@ -10,6 +10,7 @@ from importlib.resources import files
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import c, h, k
 
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.units import parse_quantity
@@ -17,6 +18,7 @@ from coldglow.units import parse_quantity
 Floats = NDArray[np.float64]
 Index = NDArray[np.intp]
 
+C2_M_K = h * c / k  # second radiation constant
 HIDDEN_BY_TELLURIC = "AB"  # position classes good enough to say that a telluric line hides this one
 POSITION_ERROR_M1 = {"A": 0.5, "B": 5.0, "C": 30.0, "D": 100.0}  # 0.005, 0.05, 0.3, 1 cm-1
 EINSTEIN_A_ERROR = 0.03  # relative, strong fundamental lines with J <= 8; 0.05-0.2 for others
@@ -48,21 +50,16 @@ class LineList:
     def take(self, chosen: Index | NDArray[np.bool_]) -> LineList:
         """Return the lines of an index array or mask, in its order."""
         index = np.flatnonzero(chosen) if chosen.dtype == bool else chosen
-        names = ([field[i] for i in index] for field in (self.band, self.label, self.quality))
+        names = ([field[i] for i in index.tolist()] for field in (self.band, self.label, self.quality))
         return LineList(
-            *(
-                array[index]
-                for array in (
-                    self.wavelength_m,
-                    self.wavenumber_m1,
-                    self.upper_energy_m1,
-                    self.lower_energy_m1,
-                    self.upper_j,
-                    self.lower_j,
-                    self.weight,
-                    self.einstein_a_s,
-                )
-            ),
+            self.wavelength_m[index],
+            self.wavenumber_m1[index],
+            self.upper_energy_m1[index],
+            self.lower_energy_m1[index],
+            self.upper_j[index],
+            self.lower_j[index],
+            self.weight[index],
+            self.einstein_a_s[index],
             *map(tuple, names),
         )
 
@@ -80,6 +77,7 @@ class LineList:
 
         Raises:
             NotFoundError: there is no such line among these; the sentence names the nearest ones.
+
         """
         if not isinstance(wanted, str):
             return self._nearest(float(wanted))
@@ -99,18 +97,18 @@ class LineList:
 
     def _glow(self, index: int) -> float:
         """Return the photon emission of a line, up to a common factor, at 600 K."""
-        boltzmann = np.exp(-0.01438776877 * self.upper_energy_m1[index] / 600.0)
+        boltzmann = np.exp(-C2_M_K * self.upper_energy_m1[index] / 600.0)
         return float(self.einstein_a_s[index] * self.weight[index] * boltzmann)
 
     def _nearest(self, wavelength_m: float) -> int:
         close = np.flatnonzero(np.abs(self.wavelength_m - wavelength_m) <= 0.5e-9)
         if close.size:
-            return int(max(close, key=self._glow))
+            return max(close.tolist(), key=self._glow)
         near = sorted(range(len(self)), key=lambda i: abs(self.wavelength_m[i] - wavelength_m))[:3]
         hint = ", ".join(f"{1e6 * self.wavelength_m[i]:.5f} um {self.label[i]}".strip() for i in near)
         raise NotFoundError(
-            f"no line within 0.0005 um of {1e6 * wavelength_m:.5f} um (vacuum) among these {len(self)} lines; "
-            f"the nearest are {hint or 'none'}"
+            f"no line within 0.0005 um of {1e6 * wavelength_m:.5f} um (vacuum) among these {len(self)} "
+            f"lines; the nearest are {hint or 'none'}"
         )
 
     def hides(self) -> NDArray[np.bool_]:
@@ -124,7 +122,8 @@ class LineList:
         their transmission is averaged over this error instead.
         """
         error_m1 = np.array([0.0 if q in HIDDEN_BY_TELLURIC else POSITION_ERROR_M1[q] for q in self.quality])
-        return 299792458.0 * error_m1 / self.wavenumber_m1
+        sigma: Floats = c * error_m1 / self.wavenumber_m1
+        return sigma
 
 
 @dataclass(frozen=True, slots=True)
@@ -163,7 +162,7 @@ def load_levels() -> Levels:
 def load_lines() -> LineList:
     """Return the packaged list of 10 143 lines, 1.9-5.5 micron (read once)."""
     packed, energy_m1, weight = _packed(), load_levels().energy_m1, load_levels().weight
-    order = np.argsort(-packed["line_wavenumber_mcm1"], kind="stable")
+    order = np.argsort(packed["line_wavenumber_mcm1"], kind="stable")[::-1]
     upper, lower = packed["line_upper"][order], packed["line_lower"][order]
     wavenumber_m1 = _frozen(packed["line_wavenumber_mcm1"][order], 0.1)
     bands = [name.decode() for name in packed["bands"].tolist()]
@@ -188,11 +187,13 @@ def lines_in(shortest_m: float, longest_m: float, key: str = "") -> LineList:
 
     Raises:
         RangeError: the band holds no line of the list.
+
     """
     lines = load_lines().within(shortest_m, longest_m)
     if not len(lines):
         raise RangeError(
-            f"no H3+ line between {1e6 * shortest_m:g} and {1e6 * longest_m:g} um; the list covers 1.9 to 5.5 um",
+            f"no H3+ line between {1e6 * shortest_m:g} and {1e6 * longest_m:g} um; "
+            "the list covers 1.9 to 5.5 um",
             key,
         )
     return lines

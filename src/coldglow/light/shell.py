@@ -5,9 +5,10 @@ observer who sees it. So the integral runs over the *surface* of the shell inste
 where the column along the line of sight has a singularity at the limb that this never meets. Seen are the
 whole near side and that part of the far side whose line of sight misses the opaque body.
 
-Body and shell are spheroids with the same axis, the shell higher by h along both. In the frame of the observer
-(x to the planet's celestial east, y along the projected north pole, z towards the observer) the shell is an affine
-image of the unit sphere whose own outline is the circle z = 0, so nodes in (z, angle) of that sphere follow the limb.
+Body and shell are spheroids with the same axis, the shell higher by h along both half-axes. In the frame of
+the observer (x to the planet's celestial east, y along the projected north pole, z towards the observer) the
+shell is an affine image of the unit sphere whose own outline is the circle z = 0, so nodes in (z, angle) of
+that sphere follow the limb.
 
 Senses: x grows towards position angle P + 90 deg, y towards position angle P, with P the position angle of
 the north pole; east and north offsets on the sky are x cos P + y sin P and y cos P - x sin P.
@@ -188,6 +189,7 @@ def spot_points(
         outer_rad: radius of the spot, seen from the planet's centre.
         inner_rad: inner radius (an oval), 0 for a full spot.
         count: about how many points cover the spot.
+
     """
     spot = _spot_nodes(view, latitude_rad, east_rad, outer_rad, inner_rad, count)
     sin, cos = np.sin(view.tilt_rad), np.cos(view.tilt_rad)
@@ -232,6 +234,7 @@ def visible_points(
 
     Raises:
         RangeError: a spot is given in another longitude system.
+
     """
     view = view_of(figure, sub_observer_latitude_rad)
     x, y, weight = uniform_points(view, spacing)

@@ -39,6 +39,7 @@ def read_table(path: str) -> Table:
     Raises:
         NotFoundError: the file cannot be opened.
         RangeError: columns or header keys are missing, or numbers make no sense.
+
     """
     try:
         lines = Path(path).read_text(encoding="utf-8").splitlines()
@@ -77,7 +78,8 @@ def read_table(path: str) -> Table:
         return Table(wavelength_m, dry, 1000.0 * water, None, height_m)
     if "transmission" not in column:
         raise RangeError(
-            f"{path}: needs the columns tau_dry and tau_h2o_per_mm, or transmission; it has {', '.join(names)}",
+            f"{path}: needs the columns tau_dry and tau_h2o_per_mm, or transmission; "
+            f"it has {', '.join(names)}",
             KEY,
         )
     transmission, airmass = column["transmission"], _header_number(header, "airmass", path)
