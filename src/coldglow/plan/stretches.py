@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from typing import TypeAlias
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from coldglow.plan.goal import marginalise, with_floor
 
@@ -122,15 +122,21 @@ def _comparable(value: Array) -> Array:
 
 
 def table(
-    steps: Steps, first: Index, end: Index, overhead_s: float = 0.0, visit_floor: float = 0.0
+    steps: Steps,
+    first: Index,
+    end: Index,
+    overhead_s: float = 0.0,
+    visit_floor: float = 0.0,
+    prior: ArrayLike = 0.0,
 ) -> Stretches:
     """Evaluate stretches given by their indices; `overhead_s` (acquisition, standards) is lost first.
 
-    SNR is that of one visit, 1/sqrt(1/I + f_visit²), the nuisances marginalised.
+    SNR is that of one visit, 1/sqrt(1/I + f_visit²), the nuisances marginalised; `prior` (ndarray[4, 4]) is
+    what every visit knows of them beforehand.
     """
     first, end = np.asarray(first, dtype=np.int64), np.asarray(end, dtype=np.int64)
     lost = overhead_s / steps.step_s
-    matrix = marginalise(_Sums(steps, steps.matrix).window(first, end, lost))
+    matrix = marginalise(_Sums(steps, steps.matrix).window(first, end, lost) + prior)
     snr = np.sqrt(with_floor(matrix[:, 0, 0], visit_floor))
     weight = steps.matrix[:, 0, 0]
     columns = np.stack((weight, weight * steps.range_rate_m_s, weight * steps.line_transmission), axis=1)
@@ -170,6 +176,7 @@ def best_windows(
     overhead_s: float = 0.0,
     visit_floor: float = 0.0,
     longest_s: float = np.inf,
+    prior: ArrayLike = 0.0,
 ) -> Stretches:
     """Best window of a wanted length in every night that has one, earliest of equal ones.
 
@@ -179,11 +186,12 @@ def best_windows(
     size = max(int(np.ceil(length_s / steps.step_s - 1e-9)), 1)
     places = np.maximum(end - first - size + 1, 0)
     start = np.repeat(first, places) + np.arange(places.sum()) - np.repeat(np.cumsum(places) - places, places)
-    matrix = marginalise(_Sums(steps, steps.matrix).window(start, start + size, overhead_s / steps.step_s))
+    lost = overhead_s / steps.step_s
+    matrix = marginalise(_Sums(steps, steps.matrix).window(start, start + size, lost) + prior)
     order = np.lexsort((start, -_comparable(matrix[:, 0, 0]), steps.night[start]))
     _, best = np.unique(steps.night[start[order]], return_index=True)
     chosen = start[order[best]]
-    return table(steps, chosen, chosen + size, overhead_s, visit_floor)
+    return table(steps, chosen, chosen + size, overhead_s, visit_floor, prior)
 
 
 def halves(steps: Steps, first: Index, end: Index) -> tuple[Index, Index]:
