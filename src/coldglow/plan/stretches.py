@@ -136,7 +136,7 @@ def table(
     """
     first, end = np.asarray(first, dtype=np.int64), np.asarray(end, dtype=np.int64)
     lost = overhead_s / steps.step_s
-    matrix = marginalise(_Sums(steps, steps.matrix).window(first, end, lost) + prior)
+    matrix = marginalise(_Sums(steps, steps.matrix).window(first, end, lost) + np.asarray(prior))
     snr = np.sqrt(with_floor(matrix[:, 0, 0], visit_floor))
     weight = steps.matrix[:, 0, 0]
     columns = np.stack((weight, weight * steps.range_rate_m_s, weight * steps.line_transmission), axis=1)
@@ -187,7 +187,7 @@ def best_windows(
     places = np.maximum(end - first - size + 1, 0)
     start = np.repeat(first, places) + np.arange(places.sum()) - np.repeat(np.cumsum(places) - places, places)
     lost = overhead_s / steps.step_s
-    matrix = marginalise(_Sums(steps, steps.matrix).window(start, start + size, lost) + prior)
+    matrix = marginalise(_Sums(steps, steps.matrix).window(start, start + size, lost) + np.asarray(prior))
     order = np.lexsort((start, -_comparable(matrix[:, 0, 0]), steps.night[start]))
     _, best = np.unique(steps.night[start[order]], return_index=True)
     chosen = start[order[best]]
