@@ -146,8 +146,8 @@ def validity_warnings(temperature_k: float) -> list[str]:
     at, notes = f"At {temperature_k:g} K", []
     if temperature_k < COLDEST_K:
         notes.append(
-            f"{at}, below {COLDEST_K:g} K, lines may be missing, because the list was selected for warmer gas; "
-            "and departures from equilibrium decide so weak a glow."
+            f"{at}, below {COLDEST_K:g} K, lines may be missing, because the list was selected for warmer "
+            "gas; and departures from equilibrium decide so weak a glow."
         )
     if temperature_k > TOTAL_UNCERTAIN_K:
         notes.append(
@@ -157,7 +157,7 @@ def validity_warnings(temperature_k: float) -> list[str]:
         )
     if temperature_k > HOTTEST_K:
         notes.append(
-            f"{at}, above {HOTTEST_K:g} K, levels above 11 000 cm-1 matter and are missing: already at 1500 K "
-            "the emission is 2-3 % and the partition function 0.2 % too low, more above."
+            f"{at}, above {HOTTEST_K:g} K, levels above 11 000 cm-1 matter and are missing: already at "
+            "1500 K the emission is 2-3 % and the partition function 0.2 % too low, more above."
         )
     return notes
