@@ -1,6 +1,8 @@
 """One function per command: what the user asked in, a `Result` out."""
 
+from coldglow.answers.expose import expose
 from coldglow.answers.glow import glow
+from coldglow.answers.hours import hours
 from coldglow.answers.sky import sky
 
-__all__ = ["glow", "sky"]
+__all__ = ["expose", "glow", "hours", "sky"]

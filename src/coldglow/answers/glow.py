@@ -85,7 +85,7 @@ def glow(
                 column("photon_radiance", photons, "s-1 m-2 sr-1"),
                 column("share", share, description="of the radiance of all lines of the list", digits=3),
                 caption=f"The {min(PRINTED, len(lines))} brightest of {len(lines)} lines",
-                rows=bright,
+                rows=bright.tolist(),
             )
         },
         {

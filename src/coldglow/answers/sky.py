@@ -149,17 +149,17 @@ def _place_words(place: Site | Orbit) -> str:
 
 def _columns(track: Track, in_space: bool) -> list[Column]:
     """Return the columns in display units; those that mean nothing in space are kept for files only."""
-    ground = {"shown": not in_space}
+    ground = not in_space
 
-    def angle(name: str, value: np.ndarray, decimals: int = 2, **more: bool) -> Column:
-        return column(name, np.degrees(value), "deg", decimals=decimals, **more)
+    def angle(name: str, value: np.ndarray, decimals: int = 2, shown: bool = True) -> Column:
+        return column(name, np.degrees(value), "deg", decimals=decimals, shown=shown)
 
     return [
         column("time", iso_from_tt(track.grid.tt_s), description="UTC"),
         column("observable", track.observable),
-        column("airmass", track.airmass, decimals=3, **ground),
-        angle("altitude", track.altitude_rad, **ground),
-        angle("azimuth", track.azimuth_rad, **ground),
+        column("airmass", track.airmass, decimals=3, shown=ground),
+        angle("altitude", track.altitude_rad, shown=ground),
+        angle("azimuth", track.azimuth_rad, shown=ground),
         angle("sub_observer_longitude", track.sub_observer_longitude_rad),
         angle("sub_observer_latitude", track.sub_observer_latitude_rad),
         angle("sub_solar_longitude", track.sub_solar_longitude_rad, shown=False),
@@ -177,7 +177,7 @@ def _columns(track: Track, in_space: bool) -> list[Column]:
         column("ra_rate", track.ra_rate_rad_s * ARCSEC_PER_RAD * 3600.0, "arcsec h-1", decimals=3),
         column("dec_rate", track.dec_rate_rad_s * ARCSEC_PER_RAD * 3600.0, "arcsec h-1", decimals=3),
         angle("parallactic_angle", track.parallactic_angle_rad, 1, shown=False),
-        angle("sun_altitude", track.sun_altitude_rad, **ground),
+        angle("sun_altitude", track.sun_altitude_rad, shown=ground),
         angle("solar_elongation", track.solar_elongation_rad),
         angle("moon_separation", track.moon_separation_rad),
     ]

@@ -1,0 +1,73 @@
+"""Scenarios of a request, one for each use of an instrument, and what several answers ask of them."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coldglow.answers.inputs import described, place_errors
+from coldglow.describe.records import Orbit, Request, Use
+from coldglow.errors import NotFoundError
+from coldglow.plan.goal import marginalise
+from coldglow.plan.stretches import Stretches, runs, table
+from coldglow.report import words
+from coldglow.scenario import Air, Scenario, State, scenario, watch
+
+ARCSEC_PER_RAD = 206264.80624709636
+
+
+def scenes(request: Request, state: State | None = None, air: Air | None = None) -> tuple[Scenario, ...]:
+    """Return the scenario of every use of the request over its dates."""
+    with place_errors(*described(request)):
+        return tuple(scenario(request, use, watch(request, use), state, air) for use in request.uses)
+
+
+def choose_use(request: Request, instrument: str = "") -> Use:
+    """Return the use of the instrument of that name, the first use for none.
+
+    Raises:
+        NotFoundError: the request names no such instrument.
+
+    """
+    if not instrument:
+        return request.uses[0]
+    for use in request.uses:
+        if use.instrument.name == instrument:
+            return use
+    listed = words.listing([use.instrument.name for use in request.uses])
+    raise NotFoundError(f"the request names no instrument `{instrument}`; it names {listed}")
+
+
+def visits(scene: Scenario) -> Stretches:
+    """Return every stretch of the scenario as one visit, overheads charged, in order of time."""
+    operation, limits = scene.use.instrument.operation, scene.use.instrument.limits
+    steps = scene.steps
+    first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night, limits.longest_visit_s)
+    return table(steps, first, end, scene.overhead_s, operation.visit_floor, scene.prior)
+
+
+def information_rate(scene: Scenario) -> NDArray[np.float64]:
+    """Return 1/sigma² of ln N per second of open shutter, ndarray[time], each step marginalised by itself."""
+    rate: NDArray[np.float64] = marginalise(scene.steps.matrix)[:, 0, 0]
+    return rate
+
+
+def conditions_words(use: Use, air: Air) -> str:
+    """Return the night assumed, in words."""
+    if isinstance(use.instrument.place, Orbit):
+        return "in space, no air"
+    seeing = words.quantity(air.seeing_rad * ARCSEC_PER_RAD, "arcsec", 2)
+    return f"seeing {seeing} at 0.5 µm, {words.quantity(1e3 * air.water_m, 'mm', 2)} of water"
+
+
+def unseen_words(scene: Scenario) -> str:
+    """Return why nothing can be observed, as a sentence."""
+    if scene.track.observable.any():
+        return (
+            f"{scene.target.name} can be observed from {scene.use.instrument.name}, but on none of the "
+            "nights that the request may use."
+        )
+    return (
+        f"{scene.target.name} can never be observed from {scene.use.instrument.name} on these dates: "
+        f"{scene.track.why_not}."
+    )
