@@ -24,9 +24,7 @@ FACTS = StretchFacts(
     standards_before=("HR 1038 (2 xi Tau)",),
     standards_after=("HR 1251 (38 nu Tau)",),
 )
-EVENT = Event(
-    "2027-11-25T05:30:00", "2027-11-25T07:00:00", "Uranus", describe_stretch(FACTS), "25 S, 68 W"
-)
+EVENT = Event("2027-11-25T05:30:00", "2027-11-25T07:00:00", "Uranus", describe_stretch(FACTS), "25 S, 68 W")
 
 
 def parsed(text):

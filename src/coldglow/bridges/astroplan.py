@@ -58,7 +58,7 @@ def constraint_mask(track: Track, constraints: Any) -> NDArray[np.bool_]:
     astrometric place at each time: one target, coordinates and times of equal length. Scores (of a
     constraint that is not boolean) allow where they are above zero. Combine it with ``track.observable``.
 
-    Raises: RangeError in space, and for a constraint that does not answer with one value per time.
+    Raises: RangeError in space.
     """
     if isinstance(track.place, Orbit):
         raise RangeError("astroplan's constraints are for sites on the Earth; this instrument is in space.")
@@ -71,12 +71,7 @@ def constraint_mask(track: Track, constraints: Any) -> NDArray[np.bool_]:
         times = Time(list(iso_from_tt(track.grid.tt_s, "ms")), format="isot", scale="utc")
         allowed = np.ones(times.size, dtype=bool)
         for constraint in listed:
-            answer = np.asarray(constraint(where, target, times=times, grid_times_targets=False))
-            if answer.shape != allowed.shape:
-                raise RangeError(
-                    f"{type(constraint).__name__} answered with shape {answer.shape} for {times.size} times."
-                )
-            allowed &= answer > 0
+            allowed &= np.asarray(constraint(where, target, times=times, grid_times_targets=False)) > 0
     return allowed
 
 

@@ -47,16 +47,14 @@ def fetch(
     *,
     timeout_s: float = 30.0,
     tries: int = 3,
-    server: str = "",
     pause: Callable[[float], None] = time.sleep,
 ) -> QTable:
     """Ask the JPL service for an observer table; store it with ``write(path, format="ascii.ecsv")``.
 
     Columns: time (ISO UTC), ra_icrs, dec_icrs (astrometric), ra_rate (times cos dec), dec_rate, distance,
     range_rate, sun_distance; the metadata hold the query, the place and the date of the service's answer.
-    `body` is a planet's name or anything that the service understands; `server` another address than the
-    service's usual one; `pause` waits between the tries (2, 4, ... s). Four days are added at either end,
-    so that the times asked for lie well inside the table.
+    `body` is a planet's name or anything that the service understands; `pause` waits between the tries (2, 4,
+    ... s). Four days are added at either end, so that the times asked for lie well inside the table.
 
     Raises: ServiceError when the service cannot be reached within `tries` attempts of at most `timeout_s`
     each, or does not answer with a table; RangeError for a question that is too long or empty.
@@ -75,7 +73,7 @@ def fetch(
     }
     for attempt in range(1, tries + 1):
         try:
-            answer, address, date = _ask(query, timeout_s, server)
+            answer, address, date = _ask(query, timeout_s)
         except OSError as error:  # every network error of requests is one
             if attempt == tries:
                 raise ServiceError(
@@ -93,12 +91,12 @@ def fetch(
     raise ServiceError(f"The JPL service was to be asked {tries} times.")
 
 
-def _ask(query: dict[str, Any], timeout_s: float, server: str) -> tuple[Any, str, str]:
+def _ask(query: dict[str, Any], timeout_s: float) -> tuple[Any, str, str]:
     """Return the service's table, the address that was asked, and the ISO date of the answer."""
-    from astroquery.jplhorizons import Horizons, conf  # slow to import, and needed for this command alone
-
-    with conf.set_temp("horizons_server", server or conf.horizons_server), warnings.catch_warnings():
+    with warnings.catch_warnings():
         warnings.simplefilter("ignore")
+        from astroquery.jplhorizons import Horizons  # slow to import, and needed for this command alone
+
         service = Horizons(**query)
         service.TIMEOUT = timeout_s
         table = service.ephemerides(quantities=_QUANTITIES, extra_precision=True, cache=False)
