@@ -53,7 +53,7 @@ def test_constant_law_changes_nothing():
 
 
 def test_published_straight_line_of_uranus():
-    # 8 K per year: Melin et al. 2011, ApJ 729, 134, abstract; ten Julian years are ten rates
+    # 715 K in 1992, falling 8 K per year: ApJ 729, 134 (2011), abstract; ten Julian years are ten rates
     kelvin, _ = state_at(emission(715.0), dataclasses.replace(LINEAR, epoch="1992-01-01"), "2002-01-01")
     assert kelvin[0] == pytest.approx(715.0 - 80.0, abs=0.03)
 
@@ -148,6 +148,12 @@ def test_exponential_spread_by_error_propagation():
     share = np.exp(-1.0)  # dT/dT0 = share, dT/dfloor = 1 - share, dT/dln(tau) = 300 share t/tau
     expected = np.sqrt((5 * share) ** 2 + (10 * (1 - share)) ** 2 + (300 * share * 0.05) ** 2)
     assert kelvin.std() == pytest.approx(expected, rel=0.03)
+
+
+def test_the_share_in_equilibrium_is_uncertain_together_with_the_column():
+    doubtful = dataclasses.replace(emission(column_error=3e14), lte_fraction=Estimate(0.5, 0.2))
+    _, column = sample_states(doubtful, CONSTANT, "2021-01-01", 20_000, np.random.default_rng(9))
+    assert np.log(column).std() == pytest.approx(np.hypot(0.3, 0.4), rel=4 / np.sqrt(2 * 20_000))
 
 
 def test_trials_stay_within_the_line_list():

@@ -64,6 +64,7 @@ def sample_states(
     One trial is one planet: a temperature, a column and a law drawn from their uncertainties and then
     followed through all dates. T, rate, column rate and floor are normal; the column and the time scale,
     which cannot be negative, log-normal with the stated value as median and sigma(ln) = uncertainty / value.
+    What is uncertain about the LTE fraction cannot be told from the column and is drawn with it.
     The uncertainty of a table is that of the emission block, common to all its dates. A trial that leaves
     150-1500 K is held at that edge: at 150 K no light is left, so "not detectable" stays what it is.
     The night-to-night scatter is not in here: it averages over nights, the uncertainty does not.
@@ -72,7 +73,9 @@ def sample_states(
     """
     central_k, _ = state_at(emission, cooling, dates)
     time_s = seconds_since(cooling.epoch, dates)
-    draws = rng.standard_normal((6, trials, 1))  # all six always: setting one uncertainty to 0 keeps the rest
+    draws = rng.standard_normal(
+        (7, trials, 1)
+    )  # all seven always: setting one uncertainty to 0 keeps the rest
     start_k = _normal(emission.temperature_k, draws[0])
     temperature_k = _temperature(
         cooling,
@@ -85,7 +88,8 @@ def sample_states(
     if cooling.law == "table":
         temperature_k = central_k + (start_k - emission.temperature_k.value)
     column_m2 = _column(cooling, time_s, emission.column_m2.value, _normal(cooling.column_rate_s, draws[4]))
-    column_m2 = column_m2 * np.exp(_relative(emission.column_m2) * draws[5])
+    doubt = _relative(emission.column_m2) * draws[5] + _relative(emission.lte_fraction) * draws[6]
+    column_m2 = column_m2 * np.exp(doubt)
     temperature_k = np.clip(temperature_k, np.minimum(COLDEST_K, central_k), np.maximum(HOTTEST_K, central_k))
     shape = (trials, time_s.size)
     return (

@@ -39,12 +39,13 @@ class InformationGrid:
 class Rules:
     """What counts as detected, and what can be spent.
 
-    1/SNR^2 of n equal nights = (1/I + visit_floor^2)/n + common_floor^2. `budget_nights` are whole nights;
-    `clear_nights` is the probability of 0, 1, ... budget clear nights among them, None = all are clear.
+    1/SNR^2 of n equal nights = (1/I + visit_floor^2)/n + common_floor^2. `budget_nights` are whole nights,
+    inf without a budget; `clear_nights` is the probability of 0, 1, ... budget clear nights among them,
+    None = all are clear.
     """
 
     snr: float
-    budget_nights: int
+    budget_nights: float
     visit_floor: float = 0.0
     common_floor: float = 0.0
     clear_nights: Floats | None = None
