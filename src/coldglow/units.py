@@ -210,18 +210,22 @@ def from_si(value: float, unit: str) -> float:
     return float(Decimal(repr(float(value) / parsed.ratio)).scaleb(-parsed.decade))
 
 
-def write_quantity(value: float, kind: str, unit: str | None = None) -> str:
-    """Return a quantity with its unit such that `parse_quantity` gives back the very same float.
+def write_quantity(value: float, kind: str, *, times: float = 1.0, per: float = 1.0) -> str:
+    """Return a quantity with its unit such that reading it gives back the very same float.
 
-    The unit is the kind's usual one; where the last digit would be lost in it, the SI unit is used.
+    The value is what a record keeps: `parse_quantity(text, kind) * times / per`. The kind's usual unit is
+    used; where the last digit would be lost in it, the SI unit.
     """
-    shown = KINDS[kind].shown if unit is None else unit
-    guess = from_si(value, shown)
-    for number in (guess, math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)):
-        text = f"{_plain(number)} {shown}".strip()
-        if parse_quantity(text, kind) == value:
-            return text
-    return f"{_plain(value)} {KINDS[kind].si}".strip()
+    si = value * per / times
+    units = (KINDS[kind].shown, KINDS[kind].si)
+    for unit in units:
+        guess = from_si(si, unit)
+        up, down = math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)
+        for number in (guess, up, down, math.nextafter(up, math.inf), math.nextafter(down, -math.inf)):
+            text = f"{_plain(number)} {unit}".strip()
+            if parse_quantity(text, kind) * times / per == value:
+                return text
+    return f"{_plain(si)} {units[1]}".strip()
 
 
 def show_quantity(value: float, kind: str, digits: int = 6) -> str:

@@ -23,6 +23,7 @@ class Refused(ValueError):
     """A value that cannot be used: what is wrong, what is accepted, and where (relative key path)."""
 
     def __init__(self, what: str, accepted: str = "", key: str = "") -> None:
+        """Keep the parts of the sentence as attributes."""
         self.what, self.accepted, self.key = what, accepted, key
         super().__init__(what)
 
@@ -31,6 +32,7 @@ class Refusals(ValueError):
     """Several mistakes in one block."""
 
     def __init__(self, all_of_them: list[Refused]) -> None:
+        """Keep the mistakes as an attribute."""
         self.all = all_of_them
         super().__init__("; ".join(one.what for one in all_of_them))
 

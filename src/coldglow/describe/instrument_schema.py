@@ -22,7 +22,7 @@ from coldglow.describe.records import (
     Sky,
     Telescope,
 )
-from coldglow.units import show_quantity
+from coldglow.units import parse_quantity, show_quantity
 
 _WAVELENGTH = Annotated[float, quantity("wavelength", "1.9 um", "5.5 um")]
 _WATER = Annotated[float, quantity("water", "0 mm", "50 mm")]
@@ -81,11 +81,17 @@ class LimitsBlock(Block):
 
     airmass_max: Annotated[float, quantity("number", "1", "40", none=math.inf)] = 2.0
     altitude_min: Annotated[float, quantity("angle", "-5 deg", "89 deg")] = 0.0
-    altitude_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = math.radians(88)
-    sun_altitude_max: Annotated[float, quantity("angle", "-90 deg", "90 deg")] = math.radians(-12)
+    altitude_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = parse_quantity("88 deg", "angle")
+    sun_altitude_max: Annotated[float, quantity("angle", "-90 deg", "90 deg")] = parse_quantity(
+        "-12 deg", "angle"
+    )
     daytime: fields.Flag = False
-    sun_separation_min: Annotated[float, quantity("angle", "0 deg", "180 deg")] = math.radians(30)
-    moon_separation_min: Annotated[float, quantity("angle", "0 deg", "180 deg")] = math.radians(10)
+    sun_separation_min: Annotated[float, quantity("angle", "0 deg", "180 deg")] = parse_quantity(
+        "30 deg", "angle"
+    )
+    moon_separation_min: Annotated[float, quantity("angle", "0 deg", "180 deg")] = parse_quantity(
+        "10 deg", "angle"
+    )
     elongation_min: Annotated[float, quantity("angle", "0 deg", "180 deg")] = 0.0
     elongation_max: Annotated[float, quantity("angle", "0 deg", "180 deg")] = math.pi
     longest_visit: Annotated[float, quantity("hours", "0.1 h", "10000 h", none=math.inf)] = math.inf
@@ -100,7 +106,7 @@ class LimitsBlock(Block):
         if self.elongation_min >= self.elongation_max:
             what = "the smallest elongation is not below the largest"
             yield Refused(what, f"below {show_quantity(self.elongation_max, 'angle')}", "elongation_min")
-        if self.daytime and self.sun_separation_min < math.radians(5):
+        if self.daytime and self.sun_separation_min < parse_quantity("5 deg", "angle"):
             yield Refused(
                 "work by day this close to the Sun can destroy a telescope",
                 "a `sun_separation_min` of 5 deg or more, and the observatory's own rules",

@@ -138,7 +138,8 @@ def _request(tree: Tree, file: Path) -> Request:
             problems += mistakes
             uses.append(Use(instrument, setting, schema.instruments[index].cost))
     _raise_if(problems)
-    assert schema is not None and target is not None
+    assert schema is not None
+    assert target is not None
     return schema.record(target, tuple(uses), _origin(tree))
 
 

@@ -3,7 +3,7 @@
 Nothing is guessed: ``NO``, ``1e5`` and ``-30:14:16`` stay as written until the schema types them. The
 file is read as a stream of YAML events into a tree of our own, so that no tag can construct anything and
 no nesting can exhaust the stack. Duplicate keys, anchors, aliases, tags, several documents, files above
-1 MB and nesting deeper than 12 are refused, all mistakes at once.
+1 MB, nesting deeper than 12 and keys longer than 100 characters are refused, all mistakes at once.
 """
 
 from __future__ import annotations
@@ -11,18 +11,18 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any, Union
+from typing import Any, TypeAlias
 
 import yaml
 
 from coldglow.errors import DescriptionError, NotFoundError, Problem
 from coldglow.units import quoted
 
-Leaf = str
-Node = Union[str, list["Node"], dict[str, "Node"]]
+Node: TypeAlias = "str | list[Node] | dict[str, Node]"
 
 LARGEST_BYTES = 1_000_000
 DEEPEST = 12
+LONGEST_KEY = 100
 MOST_PROBLEMS = 100
 _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
 
@@ -72,27 +72,26 @@ def read_tree(path: Path) -> Tree:
     return parse_tree(content, str(path))
 
 
-def parse_tree(content: bytes | str, file: str) -> Tree:
+def parse_tree(content: bytes, file: str) -> Tree:
     """Return the tree of a file's content (see `read_tree`)."""
     if len(content) > LARGEST_BYTES:
         raise DescriptionError([Problem(file, 1, "", "this file is larger than 1 MB", "split it")])
-    if isinstance(content, bytes):
-        try:
-            content = content.decode("utf-8-sig")
-        except UnicodeDecodeError as error:
-            line = content.count(b"\n", 0, error.start) + 1
-            what = f"byte {error.start} is not UTF-8 text"
-            raise DescriptionError([Problem(file, line, "", what, "save the file as UTF-8")]) from None
+    try:
+        text = content.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = content.count(b"\n", 0, error.start) + 1
+        what = f"byte {error.start} is not UTF-8 text"
+        raise DescriptionError([Problem(file, line, "", what, "save the file as UTF-8")]) from None
     tree = Tree(file)
     builder = _Builder(tree)
     try:
-        builder.build(yaml.parse(content, Loader=_LOADER))
+        builder.build(yaml.parse(text, Loader=_LOADER))
     except yaml.MarkedYAMLError as error:
         mark = error.problem_mark or error.context_mark
         what = f"this is not YAML: {error.problem or error.context}"
         builder.problems.append(Problem(file, mark.line + 1 if mark else 1, "", what))
     except yaml.reader.ReaderError as error:
-        line = _line_of_character(content, error)
+        line = _line_of_character(text, error)
         what = f"this is not YAML: the character U+{int(error.character):04X} is not allowed in it"
         builder.problems.append(Problem(file, line, "", what))
     if builder.problems:
@@ -110,9 +109,9 @@ def capped(problems: list[Problem]) -> list[Problem]:
     return [*ordered[:MOST_PROBLEMS], Problem(last.file, last.line, "", more)]
 
 
-def _line_of_character(content: str, error: yaml.reader.ReaderError) -> int:
-    found = content.find(chr(error.character)) if isinstance(error.character, int) else -1
-    return content.count("\n", 0, max(found, 0)) + 1
+def _line_of_character(text: str, error: yaml.reader.ReaderError) -> int:
+    found = text.find(chr(error.character)) if isinstance(error.character, int) else -1
+    return text.count("\n", 0, max(found, 0)) + 1
 
 
 class _Builder:
@@ -123,9 +122,10 @@ class _Builder:
         self.problems: list[Problem] = []
 
     def complain(self, event: Any, key: str, what: str, accepted: str = "") -> None:
-        self.problems.append(Problem(self.tree.file, event.start_mark.line + 1, key, what, accepted))
+        self.problems.append(Problem(self.tree.file, _line(event), key, what, accepted))
 
     def build(self, events: Iterator[Any]) -> None:
+        """Consume all events, up to a mistake after which reading cannot go on."""
         documents = 0
         for event in events:
             if isinstance(event, yaml.DocumentStartEvent):
@@ -133,9 +133,9 @@ class _Builder:
                 if documents > 1:
                     self.complain(event, "", "a second document begins here", "one description a file")
                     return
-            elif isinstance(event, yaml.MappingStartEvent) and documents == 1:
+            elif isinstance(event, yaml.MappingStartEvent):
                 self.check_mark(event, "")
-                self.tree.lines[""] = (self.tree.file, event.start_mark.line + 1)
+                self.tree.lines[""] = (self.tree.file, _line(event))
                 if not self.fill_mapping(events, self.tree.data):
                     return
             elif isinstance(event, yaml.NodeEvent):
@@ -146,59 +146,74 @@ class _Builder:
 
     def fill_mapping(self, events: Iterator[Any], root: dict[str, Node]) -> bool:
         """Consume events up to the end of the root mapping; False when reading cannot go on."""
-        stack: list[tuple[Node, str]] = [(root, "")]
+        stack: list[tuple[dict[str, Node] | list[Node], str]] = [(root, "")]
         key: str | None = None  # waiting for its value, in a mapping
         for event in events:
             holder, path = stack[-1]
             if isinstance(event, yaml.MappingEndEvent | yaml.SequenceEndEvent):
                 stack.pop()
-                key = None
                 if not stack:
                     return True
-                continue
-            if isinstance(holder, dict) and key is None:
-                if not isinstance(event, yaml.ScalarEvent):
-                    self.complain(event, path, "a key must be a plain word", "`key: value`")
+            elif isinstance(holder, dict) and key is None:
+                key = self.take_key(event, holder, path)
+                if key is None:
                     return False
-                self.check_mark(event, path)
-                key = event.value
-                child = f"{path}.{key}" if path else key
-                if key in holder:
-                    first = self.tree.lines[child][1]
-                    self.complain(event, child, f"this key was already given in line {first}", "give it once")
-                self.tree.lines[child] = (self.tree.file, event.start_mark.line + 1)
-                continue
-            child = f"{path}.{len(holder) if key is None else key}".lstrip(".")
-            self.check_mark(event, child)
-            node: Node
-            if isinstance(event, yaml.ScalarEvent):
-                node = event.value
-            elif isinstance(event, yaml.AliasEvent):
-                node = ""
             else:
-                node = {} if isinstance(event, yaml.MappingStartEvent) else []
-            if isinstance(holder, list):
-                self.tree.lines[child] = (self.tree.file, event.start_mark.line + 1)
-                holder.append(node)
-            elif isinstance(holder, dict) and key is not None:
-                holder[key] = node
-            key = None
-            if isinstance(node, dict | list):
-                if len(stack) == DEEPEST:
-                    self.complain(event, child, f"more than {DEEPEST} levels of nesting", "a flatter file")
-                    return False
-                stack.append((node, child))
+                child = _join(path, str(len(holder)) if key is None else key)
+                self.check_mark(event, child)
+                node = _node_of(event)
+                if isinstance(holder, list):
+                    self.tree.lines[child] = (self.tree.file, _line(event))
+                    holder.append(node)
+                elif key is not None:
+                    holder[key] = node
+                key = None
+                if isinstance(node, dict | list):
+                    if len(stack) == DEEPEST:
+                        self.complain(
+                            event, child, f"more than {DEEPEST} levels of nesting", "a flatter file"
+                        )
+                        return False
+                    stack.append((node, child))
         return True
+
+    def take_key(self, event: Any, holder: dict[str, Node], path: str) -> str | None:
+        """Return the key of the next entry; None when it is none and reading cannot go on."""
+        if not isinstance(event, yaml.ScalarEvent) or len(event.value) > LONGEST_KEY:
+            self.complain(event, path, "this is not a plain key", "a word, then a colon")
+            return None
+        self.check_mark(event, path)
+        child = _join(path, event.value)
+        if event.value in holder:
+            first = self.tree.lines[child][1]
+            self.complain(event, child, f"this key was already given in line {first}", "give it once")
+        self.tree.lines[child] = (self.tree.file, _line(event))
+        return str(event.value)
 
     def check_mark(self, event: Any, key: str) -> None:
         """Complain of anchors, aliases and tags."""
         if isinstance(event, yaml.AliasEvent):
-            self.complain(
-                event, key, f"aliases such as {quoted('*' + event.anchor)} are not read", "write it out"
-            )
+            what = f"aliases such as {quoted(f'*{event.anchor}')} are not read"
+            self.complain(event, key, what, "write it out")
         elif event.anchor is not None:
-            self.complain(
-                event, key, f"anchors such as {quoted('&' + event.anchor)} are not read", "remove it"
-            )
+            what = f"anchors such as {quoted(f'&{event.anchor}')} are not read"
+            self.complain(event, key, what, "remove it")
         elif event.tag is not None:
             self.complain(event, key, f"tags such as {quoted(event.tag)} are not read", "remove it")
+
+
+def _node_of(event: Any) -> Node:
+    """Return the text of a scalar, an empty text for an alias, a new mapping or list otherwise."""
+    if isinstance(event, yaml.ScalarEvent):
+        return str(event.value)
+    if isinstance(event, yaml.AliasEvent):
+        return ""
+    return {} if isinstance(event, yaml.MappingStartEvent) else []
+
+
+def _line(event: Any) -> int:
+    return int(event.start_mark.line) + 1
+
+
+def _join(path: str, part: str) -> str:
+    return f"{path}.{part}" if path else part

@@ -6,7 +6,6 @@ Target and instruments are resolved by the loader, which hands the finished reco
 from __future__ import annotations
 
 import datetime
-import math
 from collections.abc import Iterator
 from typing import Annotated, Any, Literal
 
@@ -27,6 +26,7 @@ from coldglow.describe.records import (
     Use,
     Weather,
 )
+from coldglow.units import parse_quantity
 
 _PROBABILITY = Annotated[float, quantity("fraction", "0.001", "0.999999")]
 _SNR = Annotated[float | None, quantity("number", "0.1", "1e6")]
@@ -89,7 +89,7 @@ class CoverageBlock(Block):
     temperature_error: _KELVIN = None
     time: Annotated[float | None, quantity("time", "1 min", "1000 h")] = None
     latitude: Annotated[float | None, quantity("angle", "-90 deg", "90 deg")] = None
-    angle_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = math.radians(60)
+    angle_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = parse_quantity("60 deg", "angle")
     lit: Annotated[Literal["any", "day", "night"], fields.Word] = "any"
     spot: fields.Name | None = None
     candidates: Annotated[Literal["night", "half-night", "stretch"], fields.Word] = "night"

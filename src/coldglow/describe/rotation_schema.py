@@ -127,10 +127,12 @@ class RotationBlock(Block):
         if block.anchored_to is not None:
             anchor = self.systems[block.anchored_to]
             anchor_rate = anchor.signed_rate()
-            assert anchor_rate is not None and anchor.prime_meridian is not None  # the rules saw to it
+            assert anchor_rate is not None  # the rules saw to both
+            assert anchor.prime_meridian is not None
             rate = anchor_rate if rate is None else rate
             meridian = (anchor.prime_meridian + (anchor_rate - rate) * tie_s) % (2 * math.pi)
-        assert rate is not None and meridian is not None
+        assert rate is not None  # the rules saw to both
+        assert meridian is not None
         return LongitudeSystem(
             name=name,
             prime_meridian_rad=meridian,
@@ -144,6 +146,7 @@ class RotationBlock(Block):
 
 
 def no_system(name: str, systems: dict[str, SystemBlock], key: str) -> Refused:
+    """Return the refusal of a longitude system that the rotation block does not have."""
     return Refused(f"there is no longitude system `{name}`", f"one of {', '.join(systems)}", key)
 
 

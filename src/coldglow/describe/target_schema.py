@@ -146,7 +146,8 @@ class ContinuumBlock(Block):
             table = getattr(self, key)
             for index in range(1, len(table)):
                 if table[index][0] <= table[index - 1][0]:
-                    what = f"the wavelength {show_quantity(table[index][0], 'wavelength')} is not above the one before"
+                    wavelength = show_quantity(table[index][0], "wavelength")
+                    what = f"the wavelength {wavelength} is not above the one before"
                     yield Refused(what, "rows in order of wavelength", f"{key}.{index}")
 
     def record(self) -> Continuum:
