@@ -96,7 +96,7 @@ def longitude_rate(steps: Steps) -> Array:
     return np.where(near, forward, backward)
 
 
-class _Sums:
+class RunningSums:
     """Running integrals over observable time, to read off any window at once."""
 
     def __init__(self, steps: Steps, value: Array) -> None:
@@ -136,11 +136,11 @@ def table(
     """
     first, end = np.asarray(first, dtype=np.int64), np.asarray(end, dtype=np.int64)
     lost = overhead_s / steps.step_s
-    matrix = marginalise(_Sums(steps, steps.matrix).window(first, end, lost) + np.asarray(prior))
+    matrix = marginalise(RunningSums(steps, steps.matrix).window(first, end, lost) + np.asarray(prior))
     snr = np.sqrt(with_floor(matrix[:, 0, 0], visit_floor))
     weight = steps.matrix[:, 0, 0]
     columns = np.stack((weight, weight * steps.range_rate_m_s, weight * steps.line_transmission), axis=1)
-    total = _Sums(steps, columns).window(first, end, lost)
+    total = RunningSums(steps, columns).window(first, end, lost)
     some = total[:, 0] > 0.0
     mean = np.where(some[:, None], total / np.where(some, total[:, 0], 1.0)[:, None], np.nan)
     edge = np.ravel(np.column_stack((first, end)))
@@ -187,7 +187,9 @@ def best_windows(
     places = np.maximum(end - first - size + 1, 0)
     start = np.repeat(first, places) + np.arange(places.sum()) - np.repeat(np.cumsum(places) - places, places)
     lost = overhead_s / steps.step_s
-    matrix = marginalise(_Sums(steps, steps.matrix).window(start, start + size, lost) + np.asarray(prior))
+    matrix = marginalise(
+        RunningSums(steps, steps.matrix).window(start, start + size, lost) + np.asarray(prior)
+    )
     order = np.lexsort((start, -_comparable(matrix[:, 0, 0]), steps.night[start]))
     _, best = np.unique(steps.night[start[order]], return_index=True)
     chosen = start[order[best]]

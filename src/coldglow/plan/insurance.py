@@ -1,0 +1,150 @@
+"""Which set of nights has the best chance, and which nights to add as insurance against weather."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from itertools import combinations
+from math import comb
+from typing import TypeAlias
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coldglow.plan.demand import Demand
+from coldglow.plan.multicover import Candidates, Rules, allowed, obeys
+from coldglow.plan.nights import REACHED, Weather, drawn, success
+
+Array: TypeAlias = NDArray[np.float64]
+Index: TypeAlias = NDArray[np.int64]
+
+BRUTE_SETS = 3000  # up to so many sets all are compared, beyond that the heuristic
+SCORE_TRIALS = 1000  # histories in which sets are compared; the chosen one is judged in fresh ones
+CHOOSING, JUDGING = 1, 2  # streams of random numbers
+
+
+@dataclass(frozen=True, slots=True)
+class RobustSet:
+    """A requested set; `added` are the candidates beyond the base, in the order in which they help most."""
+
+    chosen: Index  # in order of time
+    added: Index
+    cost: float
+    probability: float
+    probability_error: float
+    method: str  # "all sets compared" or "greedy with exchanges"
+
+
+class _Histories:
+    """Common weather for all sets that are compared, so that their difference is not noise."""
+
+    def __init__(
+        self, candidates: Candidates, gain: Array, demand: Demand, rules: Rules, weather: Weather
+    ) -> None:
+        few = Weather(
+            weather.clear_fraction, weather.correlation, min(weather.trials, SCORE_TRIALS), weather.seed
+        )
+        self.candidates, self.gain, self.demand, self.rules = candidates, gain, demand, rules
+        self.weight, self.chance, _ = drawn(candidates.night, few, CHOOSING)
+
+    def total(self, chosen: Index) -> Array:
+        return np.tensordot(self.weight[:, chosen], self.gain[chosen], axes=1)
+
+    def score(self, total: Array) -> float:
+        """Probability of success, plus a hundredth of the mean covered share that decides between equals."""
+        share = np.minimum(self.demand.share(total), 1.0)
+        return float(self.chance @ (np.all(share >= REACHED, axis=1) + 0.01 * share.mean(axis=1)))
+
+    def fits(self, chosen: Index) -> bool:
+        mask = np.zeros(self.gain.shape[0])
+        mask[chosen] = 1.0
+        return obeys(self.candidates, self.rules, mask)
+
+    def best_addition(self, chosen: Index, pool: Index) -> tuple[int, float] | None:
+        """Candidate of the pool that raises the score most per cost, and the score with it."""
+        total = self.total(chosen)
+        before, best = self.score(total), None
+        for each in pool:
+            if not self.fits(np.append(chosen, each)):
+                continue
+            after = self.score(total + np.multiply.outer(self.weight[:, each], self.gain[each]))
+            rise = (after - before) / max(float(self.candidates.cost[each]), 1e-9)
+            if rise > 1e-12 and (best is None or rise > best[2] * (1.0 + 1e-9)):
+                best = int(each), after, rise
+        return None if best is None else best[:2]
+
+
+def robust_set(
+    candidates: Candidates,
+    gain: Array,
+    demand: Demand,
+    rules: Rules,
+    weather: Weather,
+    base: Index | None = None,
+) -> RobustSet:
+    """Set within the rules (a limit on cost among them) with the highest probability of reaching all goals.
+
+    Where the sets are few all are compared. Otherwise candidates are added to the base (the proven cover)
+    one at a time, the largest rise per cost first, and then each one added is exchanged for any other that
+    does better, until no exchange does: a heuristic that may miss the best set. Sets are compared in
+    common histories; the probability returned comes from fresh ones, because the winner of a comparison
+    looks too good in the histories that chose it.
+
+    Args:
+        candidates: what can be asked for.
+        gain: ndarray[candidate, bin] or ndarray[candidate, bin, 2, 2].
+        demand: goal per bin.
+        rules: limits; `cost_max` must be finite.
+        weather: chain, trials and seed.
+        base: candidates that are in the set anyway.
+
+    """
+    if not np.isfinite(rules.cost_max):
+        raise ValueError("a robust set needs a limit on its cost")
+    kept = np.zeros(0, dtype=np.int64) if base is None else np.asarray(base, dtype=np.int64)
+    histories = _Histories(candidates, gain, demand, rules, weather)
+    free = np.setdiff1d(np.flatnonzero(allowed(candidates, rules)), kept)
+    order = np.argsort(candidates.start_s[free], kind="stable")
+    free = free[order]
+    left = rules.cost_max - candidates.cost[kept].sum()
+    largest = min(
+        int(np.searchsorted(np.cumsum(np.sort(candidates.cost[free])), left + 1e-9, "right")), free.size
+    )
+    if sum(comb(free.size, size) for size in range(largest + 1)) <= BRUTE_SETS:
+        added, method = _all_sets(histories, kept, free, largest), "all sets compared"
+    else:
+        added, method = _grow(histories, kept, free), "greedy with exchanges"
+    chosen = np.append(kept, added)
+    chosen = chosen[np.lexsort((candidates.place[chosen], candidates.start_s[chosen]))]
+    probability, error = 0.0, 0.0
+    if chosen.size:
+        probability, error = success(gain[chosen], demand, candidates.night[chosen], weather, JUDGING)
+    return RobustSet(chosen, added, float(candidates.cost[chosen].sum()), probability, error, method)
+
+
+def _all_sets(histories: _Histories, kept: Index, free: Index, largest: int) -> Index:
+    best, best_score = np.zeros(0, dtype=np.int64), -1.0
+    for size in range(largest + 1):
+        for some in combinations(free.tolist(), size):
+            added = np.array(some, dtype=np.int64)
+            chosen = np.append(kept, added)
+            if histories.fits(chosen):
+                score = histories.score(histories.total(chosen))
+                if score > best_score + 1e-12:
+                    best, best_score = added, score
+    return best
+
+
+def _grow(histories: _Histories, kept: Index, free: Index) -> Index:
+    added = np.zeros(0, dtype=np.int64)
+    while (found := histories.best_addition(np.append(kept, added), np.setdiff1d(free, added))) is not None:
+        added = np.append(added, found[0])
+    improved = True
+    while improved:
+        improved = False
+        for i in range(added.size):
+            rest = np.delete(added, i)
+            now = histories.score(histories.total(np.append(kept, added)))
+            found = histories.best_addition(np.append(kept, rest), np.setdiff1d(free, added))
+            if found is not None and found[1] > now + 1e-9:
+                added, improved = np.insert(rest, i, found[0]), True
+    return added
