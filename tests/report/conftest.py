@@ -21,6 +21,8 @@ from coldglow.report.figures import (
     spectrum,
     state,
 )
+from coldglow.report.record import Assumption, Picture, Report, Section
+from coldglow.report.results import Entry, column, table
 
 
 def snr_against_time() -> Figure:
@@ -192,3 +194,48 @@ FIGURES: dict[str, Callable[[], Figure]] = {
 @pytest.fixture(scope="session")
 def figures() -> dict[str, Callable[[], Figure]]:
     return FIGURES
+
+
+def invented_report(title: str = "Uranus with echelle-4m, August 2027 to January 2028") -> Report:
+    """A report of invented numbers with every figure in it."""
+    count = 184
+    hours = table(
+        column("night", [(date(2027, 8, 1) + timedelta(days=i)).isoformat() for i in range(count)]),
+        column("duration", np.linspace(1, 5, count), "h", decimals=2, description="length of the stretch"),
+        column("range_rate", np.linspace(-30, 30, count), "km s-1", decimals=2),
+        column("photon_rate", np.geomspace(1e-5, 1e9, count), "s-1 m-2"),
+        column("time_to_goal", np.where(np.arange(count) % 3, 2.5, np.inf), "h", infinite="never"),
+        column("note", ["<b>&" if i == 0 else "" for i in range(count)]),
+        caption="Best stretches of the season",
+    )
+    pictures = [
+        Picture(
+            name, draw(), f"Text that stands for the {name} figure.", f"What to see in the {name} figure."
+        )
+        for name, draw in FIGURES.items()
+    ]
+    return Report(
+        title=title,
+        verdict="Feasible: ask for 9 nights",
+        feasible=True,
+        answer=[
+            "One night of 4 h 20 min reaches SNR 5 in the lines of the setting; the sky limits it.",
+            "Nine nights give 92 % of success with the weather of the site.",
+        ],
+        figures_of_merit={
+            "time_to_goal": Entry(3.3, "h", random_error=0.4, systematic_error=0.3),
+            "temperature": Entry(480.0, "K", random_error=12.0, systematic_error=9.0),
+            "setting": Entry("lband"),
+        },
+        sections=[
+            Section("How long", ["The goal needs 3 h 20 min."], pictures[:1]),
+            Section("When", ["The best nights are in November."], pictures[1:3], {"hours": hours}),
+            Section("The rest", [], pictures[3:]),
+        ],
+        inputs={"Target": "uranus", "Instrument": "echelle-4m"},
+        assumptions=[Assumption("seeing", "0.8″ at 0.5 µm", "median of the site, instrument file line 12")],
+        sources=["Archinal et al. 2018, Celest. Mech. Dyn. Astron. 130, 22"],
+        cautions=["The observatory's own rules come first."],
+        versions={"coldglow": "0.1.0"},
+        seed=1,
+    )

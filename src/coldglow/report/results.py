@@ -7,7 +7,7 @@ are stored in `files`; `Result` offers both as methods.
 from __future__ import annotations
 
 import sys
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
@@ -51,8 +51,8 @@ class Column:
             values = np.asarray([str(value) for value in values])
         object.__setattr__(self, "values", values)
 
-    def text(self, row: int) -> str:
-        """Return one value as printed in a terminal."""
+    def text(self, row: int, write: Callable[[float, int, str], str] = words.plain) -> str:
+        """Return one value as printed; `write` words a float (`words.plain` for terminals)."""
         value = self.values[row]
         kind = self.values.dtype.kind
         if kind == "U":
@@ -62,8 +62,9 @@ class Column:
         if kind in "iu":
             return str(int(value))
         if self.decimals is not None and np.isfinite(value):
-            return f"{round(float(value), self.decimals) + 0.0:.{self.decimals}f}"
-        return words.plain(float(value), self.digits, self.infinite)
+            text = f"{round(float(value), self.decimals) + 0.0:.{self.decimals}f}"
+            return text if write is words.plain else words.true_minus(text)
+        return write(float(value), self.digits, self.infinite)
 
     @property
     def numeric(self) -> bool:

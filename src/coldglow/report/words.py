@@ -54,8 +54,18 @@ def number(value: float, digits: int = 3, infinite: str = "∞") -> str:
     text = plain(value, digits, infinite)
     if "e" in text and text != infinite:
         mantissa, exponent = text.split("e")
-        text = f"{mantissa}×10{exponent.translate(_RAISED)}"
-    return text.replace("-", "−", 1) if text.startswith("-") else text
+        text = f"{mantissa}×10{raised(int(exponent))}"
+    return true_minus(text)
+
+
+def true_minus(text: str) -> str:
+    """Return the text of a number with a true minus sign in front instead of a hyphen."""
+    return "−" + text[1:] if text.startswith("-") else text
+
+
+def raised(power: int) -> str:
+    """Return an exponent in raised digits."""
+    return str(power).translate(_RAISED)
 
 
 def short(value: float, digits: int = 3) -> str:
@@ -103,7 +113,7 @@ def with_error(value: float, error: float, unit_name: str = "") -> str:
     text, spread, power = rounded_pair(value, error)
     joined = f"{text} ± {spread}".replace("-", "−")
     if power:
-        joined = f"({joined})×10{str(power).translate(_RAISED)}"
+        joined = f"({joined})×10{raised(power)}"
     elif unit(unit_name) in ("°", "″", "%"):
         joined = f"({joined})"
     return join_unit(joined, unit_name)

@@ -16,9 +16,13 @@ from typing import Any, ParamSpec
 import matplotlib
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.axis import Axis
 from matplotlib.colors import LinearSegmentedColormap
 from matplotlib.figure import Figure
+from matplotlib.ticker import NullFormatter
 from numpy.typing import NDArray
+
+from coldglow.report import words
 
 INK, SOFT, FAINT, PAPER = "#1e2a36", "#5c6875", "#d3d9df", "#fcfbf8"
 BLUE, AMBER, BRICK, TEAL, PLUM, STONE = "#1d5596", "#dd9a1f", "#b8442f", "#4f9d96", "#74478f", "#97a1ab"
@@ -52,7 +56,6 @@ _STYLE: dict[str, Any] = {
     "axes.titlepad": 7.0,
     "axes.labelsize": 9.0,
     "axes.unicode_minus": True,
-    "axes.formatter.use_mathtext": True,
     "grid.color": FAINT,
     "grid.linewidth": 0.6,
     "xtick.color": SOFT,
@@ -140,6 +143,17 @@ def name_axes(axes: Axes, across: str, up: str) -> None:
     axes.set_title(up)
     axes.grid(axis="y")
     axes.set_axisbelow(True)
+
+
+def powers_of_ten(axis: Axis) -> None:
+    """Write the decades of a logarithmic axis as powers (or plainly near 1), in the font of the figure."""
+    axis.set_major_formatter(lambda value, _: _power(value))
+    axis.set_minor_formatter(NullFormatter())
+
+
+def _power(value: float) -> str:
+    exponent = round(np.log10(value))
+    return words.short(value) if abs(exponent) < 3 else f"10{words.raised(exponent)}"
 
 
 def luminance(colour: str) -> float:

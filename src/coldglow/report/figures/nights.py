@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -35,14 +36,15 @@ def chosen_nights(
 ) -> Figure:
     """Draw altitude and central longitude of the chosen nights against the hour; chosen parts are thick.
 
-    Up to nine nights are named, more are told apart by colour only, early dark to late light.
+    Few nights are named; more than nine are told apart by colour only, from early to late.
     """
     figure, ((high,), (turn,)) = look.panels(
         5.2, rows=(1, 1), gap_in=(0.45, 0), margins_in=(0.5, 1.45, 0.35, 0.5), sharex=True
     )
-    shades = look.GLOW(np.linspace(0.08, 0.78, max(len(curves), 2)))
+    few = len(curves) <= len(look.SERIES)
+    shades: Sequence[Any] = look.SERIES if few else list(look.GLOW(np.linspace(0.3, 0.9, len(curves))))
     for curve, shade, rank in zip(curves, shades, range(len(curves)), strict=False):
-        dash = look.DASHES[rank % len(look.DASHES)] if len(curves) <= len(look.DASHES) else "-"
+        dash = look.DASHES[rank] if few else "-"
         _draw(high, curve, curve.altitude_deg, shade, dash)
         _draw(turn, curve, _unbroken(curve.longitude_deg), shade, dash)
     if altitude_min_deg > 0:
@@ -74,7 +76,7 @@ def chosen_nights(
     return figure
 
 
-def _draw(axes: Axes, curve: NightCurve, values: NDArray[np.float64], shade: object, dash: object) -> None:
+def _draw(axes: Axes, curve: NightCurve, values: NDArray[np.float64], shade: Any, dash: Any) -> None:
     axes.plot(curve.hour_utc, values, color=shade, linewidth=0.8, linestyle=dash)
     thick = np.where(curve.chosen, values, np.nan)
     axes.plot(curve.hour_utc, thick, color=shade, linewidth=3, linestyle=dash, label=words.day(curve.night))
@@ -87,7 +89,7 @@ def _unbroken(longitude_deg: NDArray[np.float64]) -> NDArray[np.float64]:
     return broken
 
 
-def _date_scale(figure: Figure, curves: Sequence[NightCurve], shades: NDArray[np.float64]) -> None:
+def _date_scale(figure: Figure, curves: Sequence[NightCurve], shades: Sequence[Any]) -> None:
     cax = figure.add_axes((0.8, 0.12, 0.02, 0.26))
     norm = BoundaryNorm(np.arange(len(curves) + 1), len(curves))
     bar = figure.colorbar(ScalarMappable(norm, ListedColormap(shades)), cax=cax)

@@ -8,7 +8,7 @@ from datetime import date
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.patches import Rectangle
+from matplotlib.patches import Polygon
 from numpy.typing import NDArray
 
 from coldglow.report import words
@@ -53,10 +53,8 @@ def season_chart(
     for edge in (dark_start_h, dark_end_h):
         if edge is not None:
             main.plot(index, edge, color=look.INK, linewidth=1, linestyle=look.DASHES[2])
-    for night, first, last in chosen:
-        main.add_patch(
-            Rectangle((night - 0.5, first), 1, last - first, fill=False, edgecolor=look.BRICK, linewidth=1.3)
-        )
+    for outline in _outlines(chosen):
+        main.add_patch(Polygon(outline, fill=False, edgecolor=look.BRICK, linewidth=1.3))
     main.set_xlim(-0.5, len(nights) - 0.5)
     main.set_ylim(top, bottom)
     _date_ticks(main, nights)
@@ -67,6 +65,21 @@ def season_chart(
     scale.tick_params(length=0)
     scale.set_title(rate_name, loc="right")
     return figure
+
+
+def _outlines(chosen: Sequence[tuple[int, float, float]]) -> list[list[tuple[float, float]]]:
+    """Return one outline for each run of successive nights whose stretches overlap, as corners."""
+    runs: list[list[tuple[int, float, float]]] = []
+    for night, first, last in sorted(chosen):
+        if runs and runs[-1][-1][0] == night - 1 and runs[-1][-1][1] < last and first < runs[-1][-1][2]:
+            runs[-1].append((night, first, last))
+        else:
+            runs.append([(night, first, last)])
+    return [
+        [(night + side, first) for night, first, _ in run for side in (-0.5, 0.5)]
+        + [(night + side, last) for night, _, last in reversed(run) for side in (0.5, -0.5)]
+        for run in runs
+    ]
 
 
 def _date_ticks(axes: Axes, nights: Sequence[str]) -> None:

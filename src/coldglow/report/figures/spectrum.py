@@ -61,6 +61,7 @@ def spectrum(
         main.fill_between(x, low, high, color=colour, linewidth=0, alpha=0.6)
         main.plot(x, high, color=colour, linestyle=dash, linewidth=1, label=name)
     main.set_yscale("log")
+    look.powers_of_ten(main.yaxis)
     largest = max(float(np.nanmax(part)) for part in (signal, continuum, background))
     faintest = min(0.03 * float(np.nanmax(signal)), 0.3 * float(np.nanmedian(continuum)) or np.inf)
     floor = max(1e-5 * largest, faintest)

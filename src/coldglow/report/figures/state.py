@@ -56,6 +56,7 @@ def nights_map(
         extend="max",
     )
     main.set_yscale("log")
+    look.powers_of_ten(main.yaxis)
     _draw_levels(main, temperature_k, column_m2, filled, high, budget_nights)
     main.set_xlim(float(temperature_k[0]), float(temperature_k[-1]))
     main.set_ylim(float(column_m2[0]), float(column_m2[-1]))
