@@ -3,6 +3,7 @@
 from coldglow.answers.expose import expose
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
+from coldglow.answers.nights import nights
 from coldglow.answers.sky import sky
 
-__all__ = ["expose", "glow", "hours", "sky"]
+__all__ = ["expose", "glow", "hours", "nights", "sky"]

@@ -77,6 +77,7 @@ def place_errors(*described: Target | Instrument | Request) -> Iterator[None]:
             where = _locate(record.origin, key) if key else None
             if where:
                 error.args = (str(Problem(*where, key, str(error))),)
+                error.key = ""  # type: ignore[union-attr]  # said once
                 break
         raise
 
