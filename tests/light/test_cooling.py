@@ -3,7 +3,7 @@ import re
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from coldglow.describe.records import Cooling, Emission, Estimate
@@ -170,6 +170,7 @@ def test_one_uncertainty_does_not_reshuffle_the_others():
     np.testing.assert_array_equal(both, one)
 
 
+@settings(deadline=None)
 @given(st.floats(200, 1400), st.floats(-3, 3), st.integers(1, 20))
 def test_a_date_alone_is_the_date_in_a_list(kelvin, rate_k_yr, years):
     law = dataclasses.replace(LINEAR, rate_k_s=Estimate(rate_k_yr / YEAR_S), floor_k=Estimate(180.0))

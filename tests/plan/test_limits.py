@@ -1,6 +1,6 @@
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from coldglow.plan.goal import demanded_information, without_floor
@@ -24,6 +24,7 @@ def snr_of_column(background):
     return lambda column: 1e-13 * column / np.sqrt(1e-13 * column + background)
 
 
+@settings(deadline=None)
 @given(st.floats(100, 1e6), st.floats(1, 50))
 def test_the_coldest_temperature_put_back_gives_the_goal(time_s, goal):
     measure = snr_of_temperature(time_s)
@@ -36,6 +37,7 @@ def test_the_coldest_temperature_put_back_gives_the_goal(time_s, goal):
         assert (edge.kind == "below") == (measure(np.array([150.0]))[0] >= goal)
 
 
+@settings(deadline=None)
 @given(st.floats(0.0, 1e6), st.floats(1, 50))
 def test_the_smallest_column_put_back_gives_the_goal(background, goal):
     measure = snr_of_column(background)

@@ -1,6 +1,6 @@
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from coldglow.plan.standards import nearest_standards, separation_rad
@@ -55,6 +55,7 @@ def test_every_moment_has_its_own_star():
     assert found.star[:, 0].tolist() == [0, 1]
 
 
+@settings(deadline=None)
 @given(st.floats(-89, 89), st.floats(0, 360), st.floats(-89, 89), st.floats(0, 360))
 def test_separation_is_the_angle_between_unit_vectors(alt_a, az_a, alt_b, az_b):
     def unit(alt, az):

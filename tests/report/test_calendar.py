@@ -2,7 +2,7 @@ from datetime import UTC, datetime
 
 import pytest
 import time_machine
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from icalendar import Calendar
 
@@ -69,6 +69,7 @@ def test_lines_are_folded_as_the_standard_asks():
     assert event["DESCRIPTION"] == long.description[0]
 
 
+@settings(deadline=None)
 @given(st.text(st.characters(exclude_categories=("Cs",), exclude_characters="\r"), min_size=1))
 def test_any_text_comes_back(text):
     expected = "".join(c for c in text if c in "\n\t" or (ord(c) >= 32 and ord(c) != 127))

@@ -64,6 +64,8 @@ class Spread:
 class Outlook:
     """What becomes of the target: every array is ndarray[year].
 
+    `probability_detectable` is that of the budget's clear nights reaching the expected SNR of the rules,
+    over all trials, and `probability_error` the error of that mean by the number of trials.
     `dropout_year` is the first year that needs more than the budget, inf where that is none of the years
     asked about; `dropout_probability` the share of the trials in which it is one of them.
     """
