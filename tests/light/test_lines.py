@@ -10,6 +10,7 @@ import pytest
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.light.lines import lines_in, load_levels, load_lines
 
+
 @pytest.fixture(scope="module", name="lines")
 def _lines():
     return load_lines()
@@ -95,7 +96,9 @@ def test_reading_takes_little_time():
 def test_a_label_is_found_in_its_usual_spellings(lines):
     index = lines.find("Q(1,0)")
     assert lines.band[index] == "v2-ground"
-    assert index == lines.find("Q(1;0)") == lines.find("v2-ground Q(1,0)") == lines.find(" v2-ground  Q(1;0) ")
+    assert (
+        index == lines.find("Q(1;0)") == lines.find("v2-ground Q(1,0)") == lines.find(" v2-ground  Q(1;0) ")
+    )
 
 
 def test_a_wavelength_means_the_brightest_line_near_it(lines):
