@@ -1,9 +1,10 @@
 """One function per command: what the user asked in, a `Result` out."""
 
+from coldglow.answers.descriptions import check, draft, show
 from coldglow.answers.expose import expose
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
 from coldglow.answers.nights import nights
 from coldglow.answers.sky import sky
 
-__all__ = ["expose", "glow", "hours", "nights", "sky"]
+__all__ = ["check", "draft", "expose", "glow", "hours", "nights", "show", "sky"]

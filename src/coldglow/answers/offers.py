@@ -100,7 +100,7 @@ def _of_scene(request: Request, scene: Scenario, unit: str) -> Offers:
     matrix, information = np.zeros((used.size, 2, 2)), np.zeros(used.size)
     np.add.at(matrix, member, rows.matrix)
     np.add.at(information, member, with_floor(rows.matrix[:, 0, 0], operation.visit_floor))
-    seconds = np.bincount(member, weights=rows.duration_s, minlength=used.size)
+    seconds = np.bincount(member, rows.duration_s, used.size).astype(np.float64)
     origin = track.grid.tt_s[0] - steps.time_s[0]
     begin, stop = np.full(used.size, np.inf), np.full(used.size, -np.inf)
     np.minimum.at(begin, member, rows.start_s)
