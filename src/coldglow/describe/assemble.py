@@ -72,10 +72,13 @@ def merge_bases(tree: Tree, kind: DescriptionKind, path: Path, inside: bool = Fa
 
 def check_kind(tree: Tree, kind: DescriptionKind) -> None:
     """Raise `DescriptionError` when the format line names another kind."""
-    found = kind_of(tree)
+    found, article = (
+        kind_of(tree),
+        {"target": "a target", "instrument": "an instrument", "request": "a request"},
+    )
     if found != kind:
         raise DescriptionError(
-            [tree.problem("format", f"this file describes a {found}", f"a description of a {kind} here")]
+            [tree.problem("format", f"this file describes {article[found]}", f"{article[kind]} here")]
         )
 
 

@@ -83,7 +83,7 @@ def draft(target: str, instrument: str, first: str = "2027-09-01", last: str = "
     settings = [setting.name for setting in machine.settings]
     spots = [spot.name for spot in planet.emission.spots]
     ground = isinstance(machine.place, Site)
-    return _TEXT.format(
+    text = _TEXT.format(
         target_name=planet.name,
         instrument_name=machine.name,
         name=_scalar(f"{planet.name} with {machine.name}"),
@@ -102,6 +102,7 @@ def draft(target: str, instrument: str, first: str = "2027-09-01", last: str = "
         first_year=first[:4],
         last_year=int(first[:4]) + 20,
     )
+    return re.sub(r"^(?! *#)(.*\S) {2,}# ", lambda line: f"{line[1]:<35} # ", text, flags=re.MULTILINE)
 
 
 def _scalar(text: str) -> str:

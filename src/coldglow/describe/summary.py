@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 from coldglow.describe.column import line_of_sight_column
-from coldglow.describe.records import Estimate, Instrument, Request, Setting, Site, Target
+from coldglow.describe.records import Cooling, Estimate, Instrument, Request, Setting, Site, Target
 from coldglow.units import KINDS, from_si, show_quantity
 
 Rows = list[tuple[str, str]]
@@ -31,7 +31,7 @@ def _estimate(found: Estimate, kind: str) -> str:
 
 
 def _target(target: Target) -> Rows:
-    figure, emission, cooling = target.figure, target.emission, target.cooling
+    figure, emission = target.figure, target.emission
     rows = [("target", target.name), ("body in the ephemeris", target.body)]
     for index, system in enumerate(target.rotation.systems):
         period = f"{system.period_s / 3600:.6f} h"
@@ -56,27 +56,27 @@ def _target(target: Target) -> Rows:
     )
     rows.append(("given as", emission.given_as))
     for spot in emission.spots:
+        where = f"latitude {show_quantity(spot.latitude_rad, 'angle')}"
+        where += f", longitude {show_quantity(spot.longitude_rad, 'angle')} ({spot.system})"
         shape = "oval" if spot.inner_radius_rad else "spot"
-        rows.append(
-            (
-                shape,
-                f"{spot.name}: {spot.share:.3g} of all ions at latitude {show_quantity(spot.latitude_rad, 'angle')}, "
-                f"longitude {show_quantity(spot.longitude_rad, 'angle')} ({spot.system})",
-            )
-        )
+        rows.append((shape, f"{spot.name}: {spot.share:.3g} of all ions at {where}"))
     albedo = target.continuum.albedo
     rows.append(("geometric albedo", f"{min(albedo):.3g} to {max(albedo):.3g}"))
-    law = cooling.law
-    if law == "linear":
-        law += f", {_estimate(cooling.rate_k_s, 'temperature rate')} from {cooling.epoch}"
-    elif law == "exponential" and cooling.time_scale_s is not None:
-        law += f", time scale {_estimate(cooling.time_scale_s, 'years')} from {cooling.epoch}"
-    if cooling.floor_k is not None:
-        law += f", floor {_estimate(cooling.floor_k, 'temperature')}"
-    if cooling.valid_until is not None:
-        law += f", valid until {cooling.valid_until}"
-    rows.append(("cooling", law))
+    rows.append(("cooling", _cooling(target.cooling)))
     return rows
+
+
+def _cooling(cooling: Cooling) -> str:
+    parts: list[str] = [cooling.law]
+    if cooling.law == "linear":
+        parts.append(f"{_estimate(cooling.rate_k_s, 'temperature rate')} from {cooling.epoch}")
+    if cooling.time_scale_s is not None:
+        parts.append(f"time scale {_estimate(cooling.time_scale_s, 'years')} from {cooling.epoch}")
+    if cooling.floor_k is not None:
+        parts.append(f"floor {_estimate(cooling.floor_k, 'temperature')}")
+    if cooling.valid_until is not None:
+        parts.append(f"valid until {cooling.valid_until}")
+    return ", ".join(parts)
 
 
 def _place(instrument: Instrument) -> str:
@@ -108,8 +108,8 @@ def _instrument(instrument: Instrument) -> Rows:
     rows.append(
         (
             "telescope",
-            f"{telescope.aperture_m:g} m at {telescope.temperature_k:g} K, emissivity {telescope.emissivity:g}, "
-            f"transmission {telescope.transmission:g}",
+            f"{telescope.aperture_m:g} m at {telescope.temperature_k:g} K, "
+            f"emissivity {telescope.emissivity:g}, transmission {telescope.transmission:g}",
         )
     )
     size = " x ".join(
