@@ -40,6 +40,7 @@ def templates() -> Environment:
         keep_trailing_newline=True,
     )
     environment.filters["words"] = words.sentence_case
+    environment.filters["day"] = words.day
     environment.filters["tie"] = lambda value: str(value).replace("± ", "±\u00a0")
     return environment
 

@@ -2,11 +2,17 @@
 
 from __future__ import annotations
 
+import unicodedata
 from collections.abc import Callable, Sequence
 
 from coldglow.report import words
 from coldglow.report.results import Column
 
+_GREEK = {
+    "α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ε": "epsilon", "θ": "theta",
+    "κ": "kappa", "λ": "lambda", "ν": "nu", "π": "pi", "ρ": "rho", "σ": "sigma", "τ": "tau",
+    "φ": "phi", "χ": "chi", "ω": "omega", "Δ": "Delta", "Ω": "Omega",
+}  # fmt: skip
 _SPECIAL = {
     "\\": r"\textbackslash{}",
     "{": r"\{",
@@ -31,22 +37,28 @@ _SPECIAL = {
     "″": r"$''$",
     "′": r"$'$",
     "µ": r"$\mu$",
-    "λ": r"$\lambda$",
-    "σ": r"$\sigma$",
+    **{letter: f"$\\{name}$" for letter, name in _GREEK.items()},
     "·": r"$\cdot$",
     "⁺": r"$^{+}$",
-    "₃": r"$_{3}$",
+    **{digit: f"$_{{{value}}}$" for value, digit in enumerate("₀₁₂₃₄₅₆₇₈₉")},
+    "…": r"\ldots{}",
+    "’": "'",
+    "‘": "`",
+    "“": "``",
+    "”": "''",
+    "—": "---",
     "\u00a0": "~",
     "\u2009": r"\,",
 }
+_LETTERS = "ßæœøÆŒØŁłÐðÞþ"  # beside the accented ones
 _RAISED = dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-", strict=True))
 
 
 def escape(text: str) -> str:
     r"""Return a text that TeX prints as it stands; a run of raised digits becomes one exponent.
 
-    Characters outside ASCII that have no entry here are left as they are (a UTF-8 TeX knows the accented
-    Latin letters). A line break becomes a space.
+    Latin letters with accents stay (a UTF-8 TeX knows them); other characters that have no entry here are
+    reduced to their plain form, or become a question mark. A line break becomes a space.
     """
     pieces: list[str] = []
     raised = ""
@@ -57,10 +69,20 @@ def escape(text: str) -> str:
         if raised:
             pieces.append(f"$^{{{raised}}}$")
             raised = ""
-        pieces.append(_SPECIAL.get(character, character))
+        pieces.append(_SPECIAL.get(character) or _plain(character))
     if raised:
         pieces.append(f"$^{{{raised}}}$")
     return "".join(pieces)
+
+
+def _plain(character: str) -> str:
+    """Return a character that a UTF-8 TeX knows: itself, its plain form, or a question mark."""
+    plain = unicodedata.normalize("NFKD", character).encode("ascii", "ignore").decode()
+    if " " <= character <= "~" or character in _LETTERS or (plain.isalpha() and character < "\u0180"):
+        return character
+    if not character.isprintable():
+        return ""
+    return "".join(_SPECIAL.get(part, part) for part in plain) or "?"
 
 
 def number(text: str) -> str:

@@ -119,6 +119,26 @@ def with_error(value: float, error: float, unit_name: str = "") -> str:
     return join_unit(joined, unit_name)
 
 
+def with_errors(value: float, random: float, systematic: float, unit_name: str = "") -> str:
+    """Return ``480 ± 12 (random) ± 9 (systematic) K``, all to the place that the larger error allows."""
+    larger = max(random, systematic)
+    if not math.isfinite(larger) or larger == 0 or not math.isfinite(value):
+        return with_error(value, larger, unit_name)
+    text, _, power = rounded_pair(value, larger)
+    scale = 10.0**power
+    decimals = decimals_for(larger / scale, error_digits(larger))
+    spreads = [
+        f"{round(error / scale, decimals) + 0.0:.{max(decimals, 0)}f}"
+        if round(error / scale, decimals)
+        else "0"
+        for error in (random, systematic)
+    ]
+    joined = f"{true_minus(text)} ± {spreads[0]} (random) ± {spreads[1]} (systematic)"
+    if power:
+        return join_unit(f"({joined})×10{raised(power)}", unit_name)
+    return join_unit(f"({joined})" if unit(unit_name) in ("°", "″", "%") else joined, unit_name)
+
+
 def rounded_pair(value: float, error: float) -> tuple[str, str, int]:
     """Return value and error rounded to the same place, and the power of ten taken out of both."""
     largest = max(abs(value), abs(error))
