@@ -55,7 +55,7 @@ conditions:
   # seeing: 0.7 arcsec              # or a stated value instead
 
 weather:
-  clear: {clear}                    # share of clear nights
+  clear_fraction: {clear}                    # share of clear nights
   correlation: {correlation}        # from one night to the next
   probability: 90 %                 # that the whole request succeeds
   scatter: no                       # natural scatter of the planet and the conditions too

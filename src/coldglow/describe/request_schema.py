@@ -118,7 +118,7 @@ class ConditionsBlock(Block):
 class WeatherBlock(Block):
     """Clear and lost nights."""
 
-    clear: Annotated[float, quantity("fraction", "0", "1")] = 0.7
+    clear_fraction: Annotated[float, quantity("fraction", "0", "1")] = 0.7
     correlation: Annotated[float, quantity("number", "0", "0.99")] = 0.0
     probability: _PROBABILITY = 0.9
     scatter: fields.Flag = False
@@ -233,7 +233,7 @@ class RequestSchema(Block):
             ),
             conditions=Conditions(self.conditions.name, self.conditions.seeing, self.conditions.water),
             weather=Weather(
-                clear_fraction=weather.clear,
+                clear_fraction=weather.clear_fraction,
                 correlation=weather.correlation,
                 probability=weather.probability,
                 scatter=weather.scatter,

@@ -108,7 +108,7 @@ def _request(request: Request) -> dict[str, Any]:
         "coverage": _coverage(request.coverage),
         "conditions": conditions,
         "weather": {
-            "clear": write_quantity(weather.clear_fraction, "fraction"),
+            "clear_fraction": write_quantity(weather.clear_fraction, "fraction"),
             "correlation": write_quantity(weather.correlation, "number"),
             "probability": write_quantity(weather.probability, "fraction"),
             "scatter": _flag(weather.scatter),
