@@ -1,10 +1,10 @@
 """Where a body stands in the sky of an observer: light time, deflection, aberration, the turning Earth.
 
 Everything slow (bodies, precession and nutation) is computed exactly at nodes on a fixed lattice, one a
-day, and interpolated by cubic Hermite polynomials; everything fast (the Earth's rotation with the
-observer on it) exactly at each instant. The lattice is fixed in time and the interpolation local, so a
-piece of a grid gives the same numbers as the whole. Measured interpolation error: 40 m in distance,
-3e-3 m/s in rate, 0.001 arcsec in the frame (``tests/sky/test_place.py``).
+day (for the Moon every three hours), and interpolated by cubic Hermite polynomials; everything fast (the
+Earth's rotation with the observer on it) exactly at each instant. The lattice is fixed in time and the
+interpolation local, so a piece of a grid gives the same numbers as the whole. Measured interpolation error:
+80 m in distance, 4e-3 m/s in rate, 0.002 arcsec in the frame (``tests/sky/test_place.py``).
 
 Left out: polar motion (0.5 arcsec in altitude), refraction, light deflection by planets.
 """
@@ -25,7 +25,7 @@ L2_DISTANCE_M = 0.01 * AU_M
 _EARTH_TURN_RAD_S = 2 * np.pi * 1.00273781191135448 / DAY_S  # ERFA era00: turns per UT1 day
 _J2000_JD = 2451545.0
 _NODE_S = DAY_S
-_MOON_NODE_S = 3600.0
+_MOON_NODE_S = 3 * 3600.0  # 1 m in the Moon's place
 _MARGIN_S = 3 * DAY_S + 6 * 3600.0  # nodes beyond the instants, and the light time to Neptune
 _AROUND = 2  # nodes on either side that the derivative at a node needs
 
@@ -181,9 +181,6 @@ def observe(place: Site | Orbit, tt_s: Floats, ephemeris: Ephemeris) -> Observer
 def see(observer: Observer, body: str) -> Sight:
     """Return what the observer sees of a body.
 
-    The light time is that to the Earth's centre; an observer on the ground gets the light up to 0.02 s
-    earlier or later (1e-4 arcsec), one in space up to 5 s (65 km, 0.02 arcsec).
-
     Raises:
         NotFoundError: the ephemeris has no such body.
         DateError: an instant outside the ephemeris.
@@ -198,8 +195,19 @@ def see(observer: Observer, body: str) -> Sight:
     geocentric, geocentric_rate, heliocentric, heliocentric_rate = _with_light_time(
         observer.ephemeris, body, nodes
     )
-    astrometric = nodes.value(geocentric, geocentric_rate) - observer.offset_m
-    rate = nodes.rate(geocentric, geocentric_rate) - observer.offset_rate_m_s
+    from_earth, from_earth_rate = (
+        nodes.value(geocentric, geocentric_rate),
+        nodes.rate(geocentric, geocentric_rate),
+    )
+    astrometric, rate = from_earth - observer.offset_m, from_earth_rate - observer.offset_rate_m_s
+    # the light to the observer left at another moment than that to the Earth's centre: the body moved
+    body_velocity = from_earth_rate + observer.velocity_m_s - observer.offset_rate_m_s
+    longer_m = length(astrometric) - length(from_earth)
+    longer_rate_m_s = dot(astrometric, rate) / length(astrometric) - dot(
+        from_earth, from_earth_rate
+    ) / length(from_earth)
+    astrometric -= body_velocity * (longer_m / LIGHT_M_S)[:, None]
+    rate -= body_velocity * (longer_rate_m_s / LIGHT_M_S)[:, None]
     from_sun = nodes.value(heliocentric, heliocentric_rate)
 
     direction = astrometric / length(astrometric)[:, None]
