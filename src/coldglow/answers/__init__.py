@@ -5,6 +5,7 @@ from coldglow.answers.expose import expose
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
 from coldglow.answers.nights import nights
+from coldglow.answers.plan import plan
 from coldglow.answers.sky import sky
 
-__all__ = ["check", "draft", "expose", "glow", "hours", "nights", "show", "sky"]
+__all__ = ["check", "draft", "expose", "glow", "hours", "nights", "plan", "show", "sky"]

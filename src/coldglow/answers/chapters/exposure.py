@@ -1,0 +1,176 @@
+"""Chapter: one moment in full. The spectrum, the SNR against time, what the opening sees of the disk."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from coldglow.answers.expose import Look
+from coldglow.detect.beam import Disk, point_spread, slit_angle
+from coldglow.light.shell import view_of
+from coldglow.plan.goal import correlation, marginalise
+from coldglow.report import words
+from coldglow.report.figures.disk import DiskView, OpeningView, SpotView, beam_on_disk
+from coldglow.report.figures.exposure import snr_against_time
+from coldglow.report.figures.spectrum import spectrum
+from coldglow.report.figures.state import error_ellipse
+from coldglow.report.record import Picture, Section
+from coldglow.report.results import Result
+from coldglow.scenario import air_over, longitude_for_spots_rad, spot_system
+
+ARCSEC_PER_RAD = 206264.80624709636
+
+
+def exposure_chapter(seen: Look, result: Result, tag: str = "") -> Section:
+    """Return the chapter of one instrument; `tag` ends the names of its files."""
+    name = f"{seen.use.instrument.name}, {seen.use.setting.name}"
+    pictures = [_spectrum(seen, result, tag), _against_time(seen, result, tag), _disk(seen, tag)]
+    ellipse = _ellipse(seen, result, tag)
+    tables = {
+        f"exposure-time{tag}": result.table("time"),
+        f"exposure-lines{tag}": result.table("lines"),
+        f"exposure-noise{tag}": result.table("noise"),
+        f"systematic-errors{tag}": result.table("systematics"),
+        f"spectrum{tag}": result.table("spectrum"),
+    }
+    return Section(
+        f"How long to integrate: {name}",
+        [*result.sentences, f"The moment is {result.header['moment']}; {result.header['conditions']}."],
+        [*pictures, *ellipse],
+        tables,
+    )
+
+
+def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
+    table, lines = result.table("spectrum"), result.table("lines")
+    wavelength = table["wavelength"]
+    atmosphere = air_over(seen.use.instrument)
+    where, clear = np.empty(0), np.empty(0)
+    if atmosphere is not None:
+        where = np.linspace(wavelength.min(), wavelength.max(), 4000)
+        clear = atmosphere.transmission(
+            1e-6 * where, float(seen.moment.airmass[0]), float(seen.moment.water_m[0])
+        )
+    shift = 1.0 + float(seen.track.range_rate_m_s[0]) / 299792458.0
+    wanted = lines["wanted"]
+    strongest = int(np.argmax(np.where(wanted, lines["snr_one_hour"], 0.0)))
+    figure = spectrum(
+        wavelength,
+        table["line"],
+        table["continuum"],
+        table["sky"] + table["telescope"],
+        where,
+        clear,
+        lines["wavelength"] * shift,
+        [str(label) for label in lines["label"]],
+        lines["snr_one_hour"],
+        "electrons per second and pixel of the aperture",
+    )
+    best = f"{lines['label'][strongest]} at {lines['wavelength'][strongest]:.4f} µm"
+    return Picture(
+        f"spectrum{tag}",
+        figure,
+        f"Forecast spectrum between {wavelength.min():.3f} and {wavelength.max():.3f} micron with the "
+        f"transmission of the air; the line that counts most is {best}.",
+        f"The H₃⁺ lines as the detector sees them, with the background under them and the transmission of "
+        f"the air above; the lines stand where the planet's motion puts them. {best} counts most.",
+    )
+
+
+def _against_time(seen: Look, result: Result, tag: str) -> Picture:
+    table, noise = result.table("time"), result.table("noise")
+    shares = {str(s): float(v) for s, v in zip(noise["source"], noise["variance_share"], strict=True)}
+    goal = seen.request.goal.snr
+    need = result.header.get("time_to_goal")
+    time_h = float(need.value) if need is not None else np.inf
+    within = table["clock_time"] <= max(2.5 * time_h if np.isfinite(time_h) else 12.0, 2.0)
+    count = max(int(within.sum()), 4)
+    clock, snr = table["clock_time"][:count], table["snr"][:count]
+    fine = np.linspace(clock[0], clock[-1], 200)
+    return Picture(
+        f"snr-time{tag}",
+        snr_against_time(fine, np.interp(np.sqrt(fine), np.sqrt(clock), snr), shares, goal, time_h),
+        f"SNR against clock time, rising to {snr[-1]:.3g} after {clock[-1]:.3g} hours.",
+        "How the signal-to-noise ratio of all the goal's lines together grows with time on the clock; the "
+        "bar below says where the noise comes from.",
+    )
+
+
+def _disk(seen: Look, tag: str) -> Picture:
+    track, target, opening = seen.track, seen.request.target, seen.use.instrument.opening
+    view = view_of(target.figure, float(track.sub_observer_latitude_rad[0]))
+    radius_rad = 0.5 * float(track.equatorial_diameter_rad[0])
+    disk = Disk(
+        radius_rad,
+        radius_rad * view.outline_pole,
+        float(track.pole_angle_rad[0]),
+        float(np.nan_to_num(track.parallactic_angle_rad[0])),
+    )
+    middle_m = 0.5 * sum(seen.use.setting.band_m)
+    image, telescope = seen.use.instrument.image, seen.use.instrument.telescope
+    spread = point_spread(image, telescope, middle_m, seen.air.seeing_rad, float(seen.moment.airmass[0]))
+    kind = {"slit": "slit", "ifu": "field", "imager": "field"}[opening.kind]
+    system = spot_system(target, track)
+    figure = beam_on_disk(
+        DiskView(
+            2.0 * radius_rad * ARCSEC_PER_RAD,
+            target.figure.polar_radius_m / target.figure.equatorial_radius_m,
+            float(np.degrees(track.sub_observer_latitude_rad[0])),
+            float(np.degrees(longitude_for_spots_rad(target, track)[0])),
+            float(np.degrees(track.pole_angle_rad[0])),
+            system.grows == "west",
+        ),
+        OpeningView(
+            f"{kind} of {seen.use.instrument.name}",
+            opening.width_rad * ARCSEC_PER_RAD,
+            opening.length_rad * ARCSEC_PER_RAD,
+            float(np.degrees(slit_angle(opening, disk) + disk.pole_angle_rad)),
+            opening.offset_rad * ARCSEC_PER_RAD,
+        ),
+        spread.fwhm_rad * ARCSEC_PER_RAD,
+        [
+            SpotView(
+                spot.name,
+                float(np.degrees(spot.latitude_rad)),
+                float(np.degrees(spot.longitude_rad)),
+                float(np.degrees(spot.radius_rad)),
+                float(np.degrees(spot.inner_radius_rad)),
+            )
+            for spot in target.emission.spots
+        ],
+    )
+    share = words.percent(float(seen.moment.beam.light_share[0]))
+    return Picture(
+        f"disk{tag}",
+        figure,
+        f"The disk of {target.name} with its longitude grid under the {kind}; {share} of the light is in it.",
+        f"{target.name} as the {kind} sees it at that moment, north up and east left, with the blur of the "
+        f"image beside it. {share} of the light of the visible shell falls into the summed aperture.",
+    )
+
+
+def _ellipse(seen: Look, result: Result, tag: str) -> list[Picture]:
+    """Return the error ellipse after the time to the goal (or one hour); nothing where T is not measured."""
+    times, systematic = result.table("time"), seen.systematic
+    kelvin = times["temperature_error"]
+    if not np.isfinite(kelvin[0]):
+        return []
+    need = result.header.get("time_to_goal")
+    wanted_h = float(need.value) if need is not None and np.isfinite(float(need.value)) else 1.0
+    row = int(np.clip(np.searchsorted(times["clock_time"], wanted_h), 0, kelvin.size - 1))
+    fraction = float(times["column_error"][row])
+    rho = float(correlation(marginalise(seen.detail.matrix + seen.detail.prior)))
+    column_m2 = seen.state.column_m2
+    sigma = np.array([kelvin[row], fraction * column_m2])
+    covariance = np.outer(sigma, sigma) * np.array([[1.0, rho], [rho, 1.0]])
+    figure = error_ellipse(
+        seen.state.temperature_k,
+        column_m2,
+        covariance,
+        (systematic.temperature_total_k, systematic.column_total * column_m2),
+    )
+    hours = words.duration(3600.0 * float(times["clock_time"][row]))
+    text = (
+        f"After {hours} of one visit the temperature is known to ± {words.number(float(kelvin[row]), 2)} K "
+        f"and the column to ± {words.percent(fraction)} (random); the two trade against each other."
+    )
+    return [Picture(f"errors{tag}", figure, text, f"{text} The box shows the systematic errors.")]
