@@ -2,6 +2,7 @@
 
 import dataclasses
 import math
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -121,7 +122,7 @@ def test_seeing_conserves_light(seeing, angle):
     x, y = np.random.default_rng(3).uniform(-1.5, 1.5, (2, 50))
     total = sum(
         aperture_share(x, y, ExtractionAperture(b - a, 60.0, angle, 0.5 * (a + b)), spread)
-        for a, b in zip(edges[:-1], edges[1:], strict=True)
+        for a, b in pairwise(edges)
     )
     assert total == pytest.approx(np.ones(50), abs=1e-4)
 

@@ -140,8 +140,9 @@ def extraction_aperture(
     """Choose the rectangle to sum: the shell plus one FWHM (half of it on each side), cut by the opening.
 
     The shell reaches to `rim` times the disk's half axes. Across a slit the width of the slit; along it,
-    and both ways in an IFU or imager, the shell plus the blur (common practice for an extended source; the corners of the rectangle hold only sky, so the
-    SNR of a round source is up to 12 % lower than with the best round aperture).
+    and both ways in an IFU or imager, the shell plus the blur (common practice for an
+    extended source; the corners of the rectangle hold only sky, so the SNR of a round source is up to 12 %
+    lower than with a round aperture of that diameter).
 
     Raises:
         RangeError: nods within the opening that cannot hold the disk at both positions, or background
@@ -249,8 +250,8 @@ def point_spacing(disk: Disk, opening: Opening, spread: PointSpread) -> float:
     """Return how far apart (in equatorial radii) the points of the shell may lie for `see_disk`.
 
     The aperture's blurred edges must not fall between points: slit widths and blurs far below the disk's
-    radius ask for fine points. Light in the aperture within 0.5 % (tests/detect/test_beam.py), also for a slit
-    of half an arcsecond on Jupiter; between 0.008 and 0.08, that is 150 000 and 1 500 points.
+    radius ask for fine points. Light in the aperture within 0.5 % (tests/detect/test_beam.py), also for a
+    slit of half an arcsecond on Jupiter; between 0.008 and 0.08, that is 150 000 and 1 500 points.
     """
     side = min(opening.width_rad, opening.length_rad, 2.0 * disk.equatorial_radius_rad + spread.fwhm_rad)
     blurred = math.hypot(min(spread.sigma_rad), side / 12.0)

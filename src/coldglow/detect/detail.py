@@ -71,7 +71,8 @@ def temperature_shares(information: np.ndarray, slope: np.ndarray) -> np.ndarray
         return np.zeros_like(information)
     part = information * np.square(slope - float(information @ slope) / total)
     whole = float(part.sum())
-    return np.asarray(part / whole) if whole > 0.0 else np.zeros_like(part)
+    rounding = 1e-12 * float(information @ np.square(slope))
+    return np.asarray(part / whole) if whole > rounding else np.zeros_like(part)
 
 
 def expose_one(

@@ -65,7 +65,7 @@ def make_pixels(setting: Setting) -> Pixels:
         low, high = np.array(bands).T
         return Pixels(low, high, np.array(shares), 0.0, 0.0)
     step = 1.0 / (setting.resolving_power * setting.pixels_per_element)
-    edges = first * np.exp(step * np.arange(int(math.log(last / first) / step + 1e-9) + 1))
+    edges = first * np.exp(step * np.arange(max(int(math.log(last / first) / step + 1e-9), 1) + 1))
     return Pixels(
         edges[:-1],
         edges[1:],
@@ -128,7 +128,10 @@ def line_windows(
     low = (np.log(pixels.low_m[columns]) - centre[rows]) / sigma
     high = (np.log(pixels.high_m[columns]) - centre[rows]) / sigma
     share = _normal_part(low, high)
-    slope = (_normal_density(low) - _normal_density(high)) / (sigma * (LIGHT_M_S + velocity_m_s))
+    # the edges of a filter are known: an imager has no wavelength zero to find
+    slope = np.zeros_like(share)
+    if pixels.step > 0.0:
+        slope = (_normal_density(low) - _normal_density(high)) / (sigma * (LIGHT_M_S + velocity_m_s))
     index, place = np.unique(columns, return_inverse=True)
     if every_pixel:
         index, place = np.arange(count), columns
