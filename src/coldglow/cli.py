@@ -352,8 +352,6 @@ def run(arguments: Sequence[str]) -> int:
     for path in words.write:
         answer.write(path)
     print(answer)
-    for sentence in answer.warnings:
-        print(f"note: {sentence}", file=sys.stderr)
     return NOT_FEASIBLE if words.strict and not answer.feasible else DONE
 
 

@@ -99,8 +99,8 @@ def _dangers(scenes: tuple[Scenario, ...]) -> Iterator[str]:
         if nearest < np.degrees(NEAR_SUN_RAD) or limits.daytime:
             yield (
                 f"{name}: the target comes as near as {words.number(nearest, 2)}° to the Sun in the hours "
-                "listed. Sunlight in a large telescope destroys instruments and blinds people: observe only with the "
-                "observatory's Sun avoidance in force and its staff's consent."
+                "listed. Sunlight in a large telescope destroys instruments and blinds people: observe only "
+                "with the observatory's Sun avoidance in force and its staff's consent."
             )
         if isinstance(place, Site) and place.height_m >= HIGH_M:
             yield (
