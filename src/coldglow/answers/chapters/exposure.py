@@ -63,7 +63,7 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
         lines["wavelength"] * shift,
         [str(label) for label in lines["label"]],
         lines["snr_one_hour"],
-        "electrons per second and pixel of the aperture",
+        "electrons s⁻¹ per pixel",
     )
     best = f"{lines['label'][strongest]} at {lines['wavelength'][strongest]:.4f} µm"
     return Picture(
@@ -159,14 +159,13 @@ def _ellipse(seen: Look, result: Result, tag: str) -> list[Picture]:
     row = int(np.clip(np.searchsorted(times["clock_time"], wanted_h), 0, kelvin.size - 1))
     fraction = float(times["column_error"][row])
     rho = float(correlation(marginalise(seen.detail.matrix + seen.detail.prior)))
-    column_m2 = seen.state.column_m2
-    sigma = np.array([kelvin[row], fraction * column_m2])
+    sigma = np.array([fraction, float(kelvin[row])])
     covariance = np.outer(sigma, sigma) * np.array([[1.0, rho], [rho, 1.0]])
     figure = error_ellipse(
         seen.state.temperature_k,
-        column_m2,
+        seen.state.column_m2,
         covariance,
-        (systematic.temperature_total_k, systematic.column_total * column_m2),
+        (systematic.column_total, systematic.temperature_total_k),
     )
     hours = words.duration(3600.0 * float(times["clock_time"][row]))
     text = (
