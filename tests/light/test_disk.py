@@ -70,8 +70,8 @@ def test_graticule_lies_on_the_visible_body():
 
 
 def test_the_sub_observer_point_is_the_middle_of_the_disk():
-    # planetographic latitude 30 deg and longitude 60 deg W face the observer: there those two lines cross. The point whose
-    # *planetocentric* direction is the observer's lies at x = y = 0.
+    # planetographic latitude 30 deg and longitude 60 deg W face the observer: there those two lines cross.
+    # The point whose *planetocentric* direction is the observer's lies at x = y = 0.
     a, c = FIGURE.equatorial_radius_m, FIGURE.polar_radius_m
     sub = math.radians(30.0)
     lines = graticule(FIGURE, sub, math.radians(60.0), SYSTEM)

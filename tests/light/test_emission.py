@@ -13,8 +13,8 @@ from coldglow.errors import RangeError
 from coldglow.light import emission
 from coldglow.light.lines import load_levels, load_lines
 
-# Miller, Stallard, Tennyson & Melin 2013, J. Phys. Chem. A 117, 9770: Q(T), 100-1800 K, and the total emission per
-# molecule (W/sr), 300-800 K, as polynomials (coefficients recalled, not re-read).
+# Miller et al. 2013, J. Phys. Chem. A 117, 9770: Q(T), 100-1800 K, and the total
+# emission per molecule (W/sr), 300-800 K, as polynomials (coefficients recalled, not re-read).
 PUBLISHED_Q = [-1.11391, 0.0581076, 3.02967e-4, -2.83724e-7, 2.31119e-10, -7.15895e-14, 1.00150e-17]
 PUBLISHED_LOG_W = [-92.2048, 0.298920, -9.62580e-4, 1.82712e-6, -2.04420e-9, 1.24970e-12, -3.22212e-16]
 
@@ -50,9 +50,9 @@ def test_partition_function_against_a_plain_sum(light_rows, temperature_k):
 
 @pytest.mark.parametrize("temperature_k", [300.0, 400.0, 500.0])
 def test_total_emission_against_the_published_fit(lines, temperature_k):
-    # The sum compared is the one over the packaged list, 1.9-5.5 um; the fit counts every wavelength. Over all computed
-    # lines of all levels the makers of the list found 5.347e-24, 1.090e-22 and 6.725e-22 W/sr: the list holds
-    # 99.3-99.7 % of that, the rest lies beyond 5.5 um.
+    # The sum compared is the one over the packaged list, 1.9-5.5 um; the fit counts every wavelength. Over
+    # all computed lines of all levels the makers of the list found 5.347e-24, 1.090e-22 and 6.725e-22 W/sr:
+    # the list holds 99.3-99.7 % of that, the rest lies beyond 5.5 um.
     everything = {300.0: 5.347e-24, 400.0: 1.090e-22, 500.0: 6.725e-22}[temperature_k]
     ours = float(emission.total_radiance_w_m2_sr(lines, temperature_k, 1.0))
     published = math.exp(sum(c * temperature_k**n for n, c in enumerate(PUBLISHED_LOG_W)))
@@ -62,8 +62,9 @@ def test_total_emission_against_the_published_fit(lines, temperature_k):
 
 @pytest.mark.parametrize("temperature_k", [300.0, 500.0, 800.0])
 def test_photons_of_the_list_against_the_decay_of_the_levels(lines, temperature_k):
-    # Every decay of a level is a photon of some wavelength. Not in the list are those beyond 5.5 um: 2 % of the photons
-    # (hot bands, far P lines) and the slow decays within the ground state, which count where excited levels are empty.
+    # Every decay of a level is a photon of some wavelength. Not in the list are those beyond 5.5 um: 2 % of
+    # the photons (hot bands, far P lines) and the slow decays within the ground state, which count where
+    # excited levels are empty.
     levels = load_levels()
     boltzmann = levels.weight * np.exp(-emission.C2_M_K * levels.energy_m1 / temperature_k)
     decays = float(boltzmann @ levels.decay_s / boltzmann.sum())
@@ -143,7 +144,8 @@ def test_photons_carry_the_energy(lines):
 
 
 def test_thermal_width():
-    # sqrt(kT/m) with m = 3.02293 u: 1.17 km/s at 500 K, that is 2.76 km/s full width at half maximum (computed by hand)
+    # sqrt(kT/m) with m = 3.02293 u: 1.17 km/s at 500 K, that is 2.76 km/s full width at half maximum
+    # (computed by hand)
     sigma = float(emission.thermal_sigma_m_s(500.0))
     assert sigma == pytest.approx(math.sqrt(1.380649e-23 * 500.0 / (3.02293 * 1.66053907e-27)), rel=1e-5)
 
@@ -152,9 +154,9 @@ def test_thermal_width():
     ("label", "dipole2_debye2"), [("R(1,0)", 0.0259), ("R(1,1)u", 0.0158), ("R(1,1)l", 0.0140)]
 )
 def test_optical_depth_against_the_dipole_moments_of_absorption_work(lines, label, dipole2_debye2):
-    # Integral of tau over ln(lambda) = (8 pi^3 / 3 h c) |mu|^2 N(lower level), McCall et al. 1999, ApJ 522, 338, with
-    # |mu|^2 of the three lines seen in interstellar absorption (both from memory), cgs units; a cold gas, so that
-    # induced emission is nil.
+    # Integral of tau over ln(lambda) = (8 pi^3 / 3 h c) |mu|^2 N(lower level), McCall et al. 1999, ApJ 522,
+    # 338, with |mu|^2 of the three lines seen in interstellar absorption (both from memory), cgs units; a
+    # cold gas, so that induced emission is nil.
     index = np.array([lines.find(label)])
     line, temperature_k, column_m2 = lines.take(index), 200.0, 1e17
     share = 2.0 if label != "R(1,0)" else 4.0

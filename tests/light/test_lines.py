@@ -23,7 +23,8 @@ def _published(light_rows, kind):
 
 
 def test_positions_against_published_lines(lines, light_rows):
-    # Lindsay & McCall 2001, J. Mol. Spectrosc. 210, 60 (quoted from memory). Three of the rows were used in no fit.
+    # Lindsay & McCall 2001, J. Mol. Spectrosc. 210, 60 (quoted from memory). Three of the rows were used in
+    # no fit.
     chosen = _published(light_rows, "position")
     assert sum(row["role"] == "free" for row in chosen) == 3
     for row in chosen:

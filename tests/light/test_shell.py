@@ -26,7 +26,8 @@ OVAL = Spot("oval", math.radians(65.0), math.radians(190.0), "", math.radians(18
 @pytest.mark.parametrize("height_m", [0.0, 250e3, 1_000e3, 5_000e3])
 @pytest.mark.parametrize("spacing", [0.08, 0.2])
 def test_mean_column_against_the_closed_form(height_m, spacing):
-    # mean over pi R^2 = 2 N (1+h/R)^2 (1 + sqrt(1 - (R/(R+h))^2)): near side and the zone of the far side beyond the limb
+    # mean over pi R^2 = 2 N (1+h/R)^2 (1 + sqrt(1 - (R/(R+h))^2)): near side and the zone of the far side
+    # beyond the limb
     r = 25_000e3
     ratio = 1.0 + height_m / r
     closed = 2.0 * ratio**2 * (1.0 + math.sqrt(1.0 - 1.0 / ratio**2))
@@ -62,7 +63,8 @@ def _count(figure, latitude_rad, seed=20):
     normal /= np.sqrt((normal**2).sum(axis=0))
     radius = np.sqrt((place**2).sum(axis=0))
     area = 4.0 * math.pi / direction.shape[1] * radius**2 / (normal * direction).sum(axis=0)
-    # does the line of sight from the place towards the observer meet the body? solve |p + s o| on the body's spheroid
+    # does the line of sight from the place towards the observer meet the body? solve |p + s o| on the
+    # body's spheroid
     stretch = np.array([[1.0], [1.0], [body_pole]])
     p, o = place / stretch, observer[:, None] / stretch
     oo, po, pp = (o * o).sum(), (p * o).sum(axis=0), (p * p).sum(axis=0) - 1.0
@@ -100,8 +102,9 @@ def test_a_spot_holds_its_share_of_all_ions_wherever_it_lies():
 
 
 def test_light_curve_over_a_turn_against_the_visible_arc():
-    # Sphere seen from its equator: a small spot at latitude b is in view while (R+h)^2 (sin^2 b + cos^2 b sin^2 l) > R^2 or
-    # cos l > 0, l from the meridian; so for the share 1 - asin(sqrt((1/q^2 - sin^2 b))/cos b)/pi of the turn, q = 1 + h/R.
+    # Sphere seen from its equator: a small spot at latitude b is in view while (R+h)^2 (sin^2 b + cos^2 b
+    # sin^2 l) > R^2 or cos l > 0, l from the meridian; so for the share 1 - asin(sqrt((1/q^2 - sin^2
+    # b))/cos b)/pi of the turn, q = 1 + h/R.
     latitude, q = math.radians(30.0), 1.0 + SPHERE.shell_height_m / SPHERE.equatorial_radius_m
     spot = replace(SPOT, radius_rad=math.radians(2.0), share=1.0)
     hidden = math.asin(math.sqrt(1.0 / q**2 - math.sin(latitude) ** 2) / math.cos(latitude))
@@ -115,8 +118,8 @@ def test_light_curve_over_a_turn_against_the_visible_arc():
 
 
 def test_spots_over_a_turn_and_both_sides_make_the_whole():
-    # What one observer sees and what the opposite one sees, less what both see beyond the limb, is all of the shell. With no
-    # height nothing is seen twice.
+    # What one observer sees and what the opposite one sees, less what both see beyond the limb, is all of
+    # the shell. With no height nothing is seen twice.
     flat = replace(SPHERE, shell_height_m=0.0)
     for longitude in np.linspace(0.0, 6.0, 7):
         here = shell.visible_points(flat, (SPOT, OVAL), 0.5, longitude, WEST).total
@@ -126,8 +129,9 @@ def test_spots_over_a_turn_and_both_sides_make_the_whole():
 
 @pytest.mark.parametrize(("system", "side"), [(WEST, 1.0), (EAST, -1.0)])
 def test_a_place_of_larger_longitude_stands_where_its_sense_says(system, side):
-    # x grows to the celestial east. West longitudes of a planet that turns prograde grow towards the celestial east limb
-    # (the place follows and will cross the meridian later); east longitudes grow the other way.
+    # x grows to the celestial east. West longitudes of a planet that turns prograde grow towards the
+    # celestial east limb (the place follows and will cross the meridian later); east longitudes grow the
+    # other way.
     spot = replace(SPOT, latitude_rad=0.0, longitude_rad=math.radians(30.0), share=1.0)
     points = shell.visible_points(SPHERE, (spot,), 0.0, 0.0, system)
     seen = points.weight > 1e-9
