@@ -32,7 +32,7 @@ def test_states_as_in_spice(spice, body):
 
 @pytest.mark.parametrize("body", PLANETS)
 def test_the_series_are_within_their_stated_error(body):
-    # ERFA's notes to plan94 (after Simon et al. 1994, Astron. Astrophys. 282, 663), from memory: up to 71, 81,
+    # ERFA, notes to plan94 (Simon et al. 1994, Astron. Astrophys. 282, 663), from memory: up to 71, 81,
     # 86, 11 arcsec of heliocentric longitude in 1800-2050; the Earth may be a quarter nearer
     kernel, series = load_ephemeris(), load_ephemeris("builtin")
     here, there = (

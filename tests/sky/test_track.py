@@ -5,14 +5,17 @@ import math
 
 import numpy as np
 import pytest
+from astropy import units as u
+from astropy.table import QTable
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from sky_bodies import NORTH, OPEN, SOUTH, iau2015
 
 from coldglow.describe.records import Orbit, Site
-from coldglow.errors import DateError, NotFoundError
-from coldglow.sky.clock import TimeGrid, season_grid, span_grid, times_grid
+from coldglow.errors import DateError, NotFoundError, RangeError
+from coldglow.sky.clock import TimeGrid, iso_from_tt, season_grid, span_grid, times_grid
 from coldglow.sky.ephemeris import load_ephemeris
+from coldglow.sky.stored import FORMAT
 from coldglow.sky.track import Track, make_track
 
 URANUS = iau2015("uranus")
@@ -103,7 +106,11 @@ def test_a_target_that_is_never_up_says_so():
     south = Site(0.0, np.radians(-80.0), 100.0)
     found = track(season_grid("2027-06-20", "2027-06-21", 600.0, south), south)
     assert not found.observable.any()
-    assert "the target is too low (100 % of the time)" in found.why_not
+    # Uranus at declination +21 deg culminates at 90 - 80 - 21 = -11 deg
+    assert found.why_not == (
+        "the target is too low (100 % of the time), the airmass is too large (100 % of the time); "
+        "when the Sun allows, the target is never higher than -11 deg"
+    )
     assert np.isnan(found.airmass).all()
 
 
@@ -132,6 +139,42 @@ def test_an_ephemeris_may_be_given_itself():
     builtin = track(grid, ephemeris="builtin")
     # Simon et al. 1994: Uranus within 86 arcsec
     assert abs(builtin.dec_icrs_rad - track(grid).dec_icrs_rad)[0] < np.radians(100.0 / 3600.0)
+
+
+def test_a_stored_table_takes_the_place_of_the_kernel(tmp_path):
+    # the planet's way rebuilt from its own places every six hours: the same track again
+    stored = track(span_grid("2030-02-25", "2030-03-10", 21600.0))
+    table = QTable({"time": list(iso_from_tt(stored.grid.tt_s, "ms"))})
+    for column, values, unit in (
+        ("ra_icrs", stored.ra_icrs_rad, u.rad),
+        ("dec_icrs", stored.dec_icrs_rad, u.rad),
+        ("ra_rate", stored.ra_rate_rad_s, u.rad / u.s),
+        ("dec_rate", stored.dec_rate_rad_s, u.rad / u.s),
+        ("distance", stored.distance_m, u.m),
+        ("range_rate", stored.range_rate_m_s, u.m / u.s),
+        ("sun_distance", stored.sun_distance_m, u.m),
+    ):
+        table[column] = values * unit
+    place = {"longitude_deg": -155.5, "latitude_deg": 19.8, "height_m": 4200.0}
+    table.meta = {
+        "format": FORMAT,
+        "body": "uranus",
+        "place": place,
+        "query": "none",
+        "answered": "2030-01-01",
+    }
+    path = str(tmp_path / "uranus.ecsv")
+    table.write(path, format="ascii.ecsv")
+
+    target = dataclasses.replace(URANUS, body=path)
+    grid = span_grid("2030-03-01", "2030-03-05", 1000.0)
+    again, kernel = track(grid, target=target), track(grid)
+    np.testing.assert_allclose(again.ra_rad, kernel.ra_rad, atol=np.radians(0.002 / 3600.0))
+    np.testing.assert_allclose(again.distance_m, kernel.distance_m, atol=2e3)
+    np.testing.assert_allclose(again.range_rate_m_s, kernel.range_rate_m_s, atol=0.05)
+    np.testing.assert_allclose(again.sub_observer_longitude_rad, kernel.sub_observer_longitude_rad, atol=1e-6)
+    with pytest.raises(RangeError, match=r"was made for the site at longitude -155\.5"):
+        track(grid, SOUTH, target=target)
 
 
 def test_a_body_that_the_ephemeris_lacks_is_an_error():

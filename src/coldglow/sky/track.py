@@ -82,8 +82,16 @@ class Track:
 
     @property
     def why_not(self) -> str:
-        """Return in words which limits forbid how often; empty if none ever does."""
-        return why_not(self.limited_by)
+        """Return in words which limits forbid how often; empty if none ever does.
+
+        Where nothing is observable on the ground, also how high the target gets when the Sun allows.
+        """
+        words = why_not(self.limited_by)
+        allowing = ~self.limited_by["daylight"]
+        if isinstance(self.place, Site) and allowing.any() and not self.observable.any():
+            highest = np.degrees(self.altitude_rad[allowing].max())
+            words += f"; when the Sun allows, the target is never higher than {highest:.0f} deg"
+        return words
 
 
 def make_track(
@@ -96,14 +104,20 @@ def make_track(
 ) -> Track:
     """Return the track of a target over a grid.
 
-    `ephemeris` is a name for `load_ephemeris`, or an ephemeris itself (one that knows a stored table's body).
+    `ephemeris` is a name for `load_ephemeris`, or an ephemeris itself. A body that ends with ``.ecsv`` is the
+    path of a table that ``fetch`` stored for this place; all other bodies still come from the ephemeris.
 
     Raises:
         DateError: the grid leaves the ephemeris.
-        NotFoundError: there is no such ephemeris, or it has no such body.
+        NotFoundError: there is no such ephemeris or stored table, or it has no such body.
+        RangeError: the stored table was made for another place.
 
     """
     kernel = load_ephemeris(ephemeris) if isinstance(ephemeris, str) else ephemeris
+    if target.body.endswith(".ecsv"):
+        from coldglow.sky.stored import with_stored  # astropy's tables are slow to import and seldom needed
+
+        kernel = with_stored(kernel, target.body, place)
     tt_s = grid.tt_s
     observer = observe(place, tt_s, kernel)
     planet, sun, moon = (see(observer, body) for body in (target.body, "sun", "moon"))
