@@ -35,8 +35,9 @@ from coldglow.light.emission import optical_depth_warnings, validity_warnings
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import path_factor, view_of, visible_points
 from coldglow.plan.stretches import Steps, runs
-from coldglow.sky.clock import season_grid, tdb_from_tt
+from coldglow.sky.clock import TimeGrid, season_grid, tdb_from_tt
 from coldglow.sky.orientation import in_system_rad
+from coldglow.sky.stored import ephemeris_for
 from coldglow.sky.track import Track, make_track
 
 Array = NDArray[np.float64]
@@ -114,12 +115,17 @@ def air_over(instrument: Instrument) -> Atmosphere | None:
 
 def watch(request: Request, use: Use, first: str = "", last: str = "") -> Track:
     """Return the track of the request's target over its nights (or from `first` to `last`) at one site."""
-    dates, place = request.dates, use.instrument.place
-    grid = season_grid(first or dates.first, last or dates.last, dates.step_s, place)
-    systems = {system.name: system for system in request.target.rotation.systems}
-    return make_track(
-        request.target, place, use.instrument.limits, grid, systems[request.longitudes], request.ephemeris
-    )
+    dates = request.dates
+    grid = season_grid(first or dates.first, last or dates.last, dates.step_s, use.instrument.place)
+    return follow(request, use, grid)
+
+
+def follow(request: Request, use: Use, grid: TimeGrid) -> Track:
+    """Return the track of the request's target over any grid of instants at one site."""
+    target, place = request.target, use.instrument.place
+    systems = {system.name: system for system in target.rotation.systems}
+    ephemeris = ephemeris_for(target.body, request.ephemeris, place)
+    return make_track(target, place, use.instrument.limits, grid, systems[request.longitudes], ephemeris)
 
 
 def usable_steps(request: Request, track: Track) -> NDArray[np.bool_]:
@@ -136,6 +142,51 @@ def usable_steps(request: Request, track: Track) -> NDArray[np.bool_]:
     return np.asarray(track.observable & on_a_night & allowed[np.where(on_a_night, track.night, 0)])
 
 
+@dataclass(frozen=True, slots=True)
+class Sight:
+    """What is seen from where through how much air: all that stays the same whatever the ionosphere does."""
+
+    target: Target
+    use: Use
+    air: Air
+    goal_lines: tuple[str, ...]
+    track: Track
+    usable: NDArray[np.bool_]  # ndarray[time]
+    chosen: NDArray[np.int64]  # ndarray[moment]
+    moments: Moments | None  # None where nothing can be observed
+    atmosphere: Atmosphere | None
+
+
+def sight(request: Request, use: Use, track: Track, air: Air | None = None) -> Sight:
+    """Return the moments of a track that are to be worked out, with what the opening sees at each.
+
+    `air` is the night assumed (default: the request's conditions).
+    """
+    target, instrument, setting = request.target, use.instrument, use.setting
+    air = air or air_of(instrument.sky, request.conditions)
+    usable = usable_steps(request, track)
+    chosen = pick_moments(track, usable, target)
+    moments = moments_of(target, instrument, setting, track.take(chosen), air) if chosen.size else None
+    return Sight(target, use, air, request.goal.lines, track, usable, chosen, moments, air_over(instrument))
+
+
+def expose_sight(seen: Sight, state: State) -> Exposure | None:
+    """Return the information at the moments of a sight in some state of the ionosphere."""
+    if seen.moments is None:
+        return None
+    return expose_moments(
+        seen.moments,
+        load_lines(),
+        state.temperature_k,
+        state.shining_m2,
+        seen.target.continuum,
+        seen.atmosphere,
+        seen.use.instrument,
+        seen.use.setting,
+        seen.goal_lines,
+    )
+
+
 def scenario(
     request: Request, use: Use, track: Track, state: State | None = None, air: Air | None = None
 ) -> Scenario:
@@ -149,37 +200,22 @@ def scenario(
         air: seeing and water; default: the request's conditions.
 
     """
-    target, instrument, setting = request.target, use.instrument, use.setting
-    state = state or state_of(target)
-    air = air or air_of(instrument.sky, request.conditions)
-    usable = usable_steps(request, track)
-    chosen = pick_moments(track, usable, target)
-    atmosphere = air_over(instrument)
-    exposure = None
-    if chosen.size:
-        exposure = expose_moments(
-            moments_of(target, instrument, setting, track.take(chosen), air),
-            load_lines(),
-            state.temperature_k,
-            state.shining_m2,
-            target.continuum,
-            atmosphere,
-            instrument,
-            setting,
-            request.goal.lines,
-        )
+    seen = sight(request, use, track, air)
+    state = state or state_of(request.target)
+    exposure = expose_sight(seen, state)
+    airmass = track.airmass[seen.usable]
     return Scenario(
-        target,
+        seen.target,
         use,
         state,
-        air,
+        seen.air,
         track,
-        usable,
-        _steps(track, usable, chosen, exposure),
-        chosen,
+        seen.usable,
+        steps_of(seen, exposure),
+        seen.chosen,
         exposure,
         np.zeros((4, 4)) if exposure is None else exposure.prior,
-        tuple(_warnings(target, setting, state, atmosphere, track.airmass[usable], air)),
+        tuple(_warnings(seen.target, use.setting, state, seen.atmosphere, airmass, seen.air)),
     )
 
 
@@ -289,7 +325,6 @@ def _look(
     target: Target, instrument: Instrument, setting: Setting, track: Track, at: _Geometry, seeing_rad: float
 ) -> Beam:
     """Return the beam at each geometry, one by one."""
-
     system = spot_system(target, track)
 
     def one() -> Iterator[Beam]:
@@ -318,10 +353,9 @@ def _look(
     return join_beams(list(one()))
 
 
-def _steps(
-    track: Track, usable: NDArray[np.bool_], chosen: NDArray[np.int64], exposure: Exposure | None
-) -> Steps:
+def steps_of(seen: Sight, exposure: Exposure | None) -> Steps:
     """Spread the moments over the steps of the grid; steps that cannot be used hold zeros."""
+    track, usable, chosen = seen.track, seen.usable, seen.chosen
     time_s = track.grid.time_s
     matrix = np.zeros((time_s.size, 4, 4))
     share, clear = np.zeros(time_s.size), np.ones(time_s.size)

@@ -36,9 +36,20 @@ from coldglow.plan.goal import (
 from coldglow.plan.limits import Edge, against_time, coldest_temperature, smallest_column
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, Table, column, table
-from coldglow.scenario import Air, Scenario, State, air_of, air_over, moments_of, scenario, state_of, watch
+from coldglow.scenario import (
+    Air,
+    Scenario,
+    State,
+    air_of,
+    air_over,
+    follow,
+    moments_of,
+    scenario,
+    state_of,
+    watch,
+)
 from coldglow.sky.clock import iso_from_tt, times_grid
-from coldglow.sky.track import Track, make_track
+from coldglow.sky.track import Track
 
 EINSTEIN_A_ERROR = 0.03  # 2-3 % for the strong lines (data/h3p.md)
 SHUTTER_S = tuple(
@@ -157,15 +168,7 @@ def expose(request: NamePath | Request, at: str | None = None, instrument: str =
             track = scene.track.take([median_moment(scene)])
             chosen = "the median of the observable steps"
         else:
-            systems = {system.name: system for system in record.target.rotation.systems}
-            track = make_track(
-                record.target,
-                use.instrument.place,
-                use.instrument.limits,
-                times_grid([at]),
-                systems[record.longitudes],
-                record.ephemeris,
-            )
+            track = follow(record, use, times_grid([at]))
             if not track.observable[0]:
                 return _nothing(
                     record, use, f"{record.target.name} cannot be observed then: {track.why_not}."
