@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,6 +21,7 @@ from coldglow.detect.detail import Detail, expose_one
 from coldglow.detect.exposure import NOISE_SOURCES, Moments, expose_moments
 from coldglow.detect.integration import clock_time
 from coldglow.detect.systematics import CAUSES, SystematicErrors, systematic_errors
+from coldglow.errors import SaturationError
 from coldglow.light.atmosphere import transmission_error
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import line_of_sight_column_m2
@@ -55,8 +57,8 @@ EINSTEIN_A_ERROR = 0.03  # 2-3 % for the strong lines (data/h3p.md)
 SHUTTER_S = tuple(
     60.0 * minutes for minutes in (1, 2, 5, 10, 20, 30, 60, 120, 180, 300, 480, 720, 1200, 3000)
 )
-TEMPERATURES_K = 1.0 / np.linspace(1.0 / 1500.0, 1.0 / 150.0, 40)
-COLUMNS_M2 = np.geomspace(1e11, 1e19, 49)
+TEMPERATURES_K = 1.0 / np.linspace(1.0 / 150.0, 1.0 / 1500.0, 40)
+COLUMNS_M2 = np.geomspace(1e8, 1e19, 56)
 LINES_PRINTED = 12
 
 
@@ -298,19 +300,39 @@ def _edges(seen: Look, shutter_s: NDArray[np.float64]) -> tuple[tuple[Edge, ...]
     wanted = seen.request.fade.significance**2
     rest = 1.0 - wanted * floor2
     information = wanted / rest if rest > 0.0 else np.inf
-    by_temperature = np.array([seen.rate(float(t), seen.state.column_m2) for t in TEMPERATURES_K])
-    by_column = np.array([seen.rate(seen.state.temperature_k, float(n)) for n in COLUMNS_M2])
-    tiny = np.finfo(float).tiny
-    in_temperature = CubicSpline(1.0 / TEMPERATURES_K, np.log(np.maximum(by_temperature, tiny)))
-    in_column = CubicSpline(np.log(COLUMNS_M2), np.log(np.maximum(by_column, tiny)))
+    kelvin, by_temperature = _until_saturation(lambda t: seen.rate(t, seen.state.column_m2), TEMPERATURES_K)
+    column_m2, by_column = _until_saturation(lambda n: seen.rate(seen.state.temperature_k, n), COLUMNS_M2)
+    in_temperature = CubicSpline(1.0 / kelvin[::-1], np.log(by_temperature[::-1]))
+    in_column = CubicSpline(np.log(column_m2), np.log(by_column))
     return (
         against_time(
-            coldest_temperature, lambda kelvin: np.exp(in_temperature(1.0 / kelvin)), information, shutter_s
+            lambda measure, needed: coldest_temperature(measure, needed, high_k=float(kelvin[-1])),
+            lambda t: np.exp(in_temperature(1.0 / t)),
+            information,
+            shutter_s,
         ),
         against_time(
-            smallest_column, lambda column_m2: np.exp(in_column(np.log(column_m2))), information, shutter_s
+            lambda measure, needed: smallest_column(
+                measure, needed, float(column_m2[0]), float(column_m2[-1])
+            ),
+            lambda n: np.exp(in_column(np.log(n))),
+            information,
+            shutter_s,
         ),
     )
+
+
+def _until_saturation(
+    rate: Callable[[float], float], nodes: NDArray[np.float64]
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return the nodes (ascending, ever brighter) at which the detector does not saturate, and the rates."""
+    rates = []
+    for node in nodes:
+        try:
+            rates.append(rate(float(node)))
+        except SaturationError:
+            break
+    return nodes[: len(rates)], np.maximum(rates, np.finfo(float).tiny)
 
 
 def _precision_sentences(seen: Look, matrix: NDArray[np.float64]) -> list[str]:
