@@ -8,7 +8,7 @@ from sky_bodies import KERNEL
 from coldglow.errors import DateError, NotFoundError, RangeError
 from coldglow.sky.clock import tt_from_iso
 from coldglow.sky.ephemeris import PLANETS, load_ephemeris
-from coldglow.sky.place import length
+from coldglow.sky.vectors import length
 
 TIMES = np.linspace(tt_from_iso("1975-01-01"), tt_from_iso("2050-12-31"), 500)
 

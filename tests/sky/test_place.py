@@ -17,6 +17,7 @@ from coldglow.errors import DateError
 from coldglow.sky import place
 from coldglow.sky.clock import tdb_from_tt, tt_from_iso, ut1_from_tt
 from coldglow.sky.ephemeris import AU_M, PLANETS, load_ephemeris
+from coldglow.sky.vectors import dot, length, longitude_latitude, separation_rad
 
 ARCSEC = np.pi / 648000.0
 GEOCENTRE = Site(0.0, 0.0, -6378137.0)  # a "site" at the Earth's centre
@@ -43,7 +44,7 @@ def off_arcsec(vector, ra_deg, dec_deg):
     """Return the angle between directions and tabulated coordinates, arcsec."""
     ra, dec = np.radians(ra_deg), np.radians(dec_deg)
     listed = np.stack([np.cos(dec) * np.cos(ra), np.cos(dec) * np.sin(ra), np.sin(dec)], axis=-1)
-    return place.separation_rad(vector / place.length(vector)[..., None], listed) / ARCSEC
+    return separation_rad(vector / length(vector)[..., None], listed) / ARCSEC
 
 
 def column(table, name):
@@ -62,9 +63,9 @@ def test_distance_and_rate_as_in_spice(body):
     spiceypy.kclear()
     _, sight = seen(GEOCENTRE, TIMES, body)
     assert np.abs(sight.astrometric_m - states[:, :3]).max() < 100.0
-    unit = states[:, :3] / place.length(states[:, :3])[:, None]
-    rate = place.dot(sight.rate_m_s, sight.astrometric_m) / sight.distance_m
-    assert np.abs(rate - place.dot(unit, states[:, 3:])).max() < 5e-3
+    unit = states[:, :3] / length(states[:, :3])[:, None]
+    rate = dot(sight.rate_m_s, sight.astrometric_m) / sight.distance_m
+    assert np.abs(rate - dot(unit, states[:, 3:])).max() < 5e-3
 
 
 @pytest.mark.parametrize("body", [*PLANETS, "sun", "moon"])
@@ -101,7 +102,7 @@ def test_separations_as_in_skyfield(sky):
     planet, sun, moon = (place.see(observer, body).apparent for body in ("uranus", "sun", "moon"))
     for body, name in ((sun, "sun"), (moon, "moon")):
         expected = apparent["uranus barycenter"].separation_from(apparent[name]).radians
-        assert np.abs(place.separation_rad(planet, body) - expected).max() < 0.05 * ARCSEC
+        assert np.abs(separation_rad(planet, body) - expected).max() < 0.05 * ARCSEC
 
 
 def test_altitude_and_parallactic_angle_as_in_erfa():
@@ -110,7 +111,7 @@ def test_altitude_and_parallactic_angle_as_in_erfa():
     sidereal = erfa.gst06a(2451545.0, ut1_from_tt(TIMES) / 86400.0, 2451545.0, TIMES / 86400.0)
     turned = np.angle(np.exp(1j * (observer.sidereal_rad - sidereal - SOUTH.longitude_rad)))
     assert np.abs(turned).max() < 0.002 * ARCSEC
-    _, dec = place.longitude_latitude(sight.apparent)
+    _, dec = longitude_latitude(sight.apparent)
     hour_angle = place.hour_angle_rad(observer, sight.apparent)
     azimuth, altitude = erfa.hd2ae(hour_angle, dec, SOUTH.latitude_rad)
     ours = place.altitude_azimuth(observer, sight.apparent)
@@ -165,9 +166,9 @@ def test_places_as_computed_with_spice():
         assert azimuth == pytest.approx(float(row["az"]), abs=5.0 / 3600.0 / np.cos(np.radians(altitude)))
         # DE421 against DE440, 2020-2040: 1951 km and 0.03 m/s
         assert sight.distance_m[0] == pytest.approx(float(row["delta"]) * AU_M, abs=1.951e6)
-        rate = place.dot(sight.rate_m_s, sight.astrometric_m)[0] / sight.distance_m[0]
+        rate = dot(sight.rate_m_s, sight.astrometric_m)[0] / sight.distance_m[0]
         assert rate == pytest.approx(1e3 * float(row["deldot"]), abs=0.05)
-        assert place.length(sight.heliocentric_m)[0] == pytest.approx(float(row["r"]) * AU_M, abs=1.951e6)
+        assert length(sight.heliocentric_m)[0] == pytest.approx(float(row["r"]) * AU_M, abs=1.951e6)
 
 
 def test_places_as_from_the_jpl_service():
@@ -196,8 +197,8 @@ def test_distances_and_rates_as_from_the_jpl_service():
             continue
         _, sight = seen(GEOCENTRE, [tt_from_iso(row["utc"]) for row in mine], body)
         assert np.abs(sight.distance_m - column(mine, "delta") * AU_M).max() < 320e3 + 1951e3
-        assert np.abs(place.length(sight.heliocentric_m) - column(mine, "r") * AU_M).max() < 320e3 + 1951e3
-        rate = place.dot(sight.rate_m_s, sight.astrometric_m) / sight.distance_m
+        assert np.abs(length(sight.heliocentric_m) - column(mine, "r") * AU_M).max() < 320e3 + 1951e3
+        rate = dot(sight.rate_m_s, sight.astrometric_m) / sight.distance_m
         assert np.abs(rate - 1e3 * column(mine, "deldot")).max() < 2.3 + 0.1
 
 
@@ -225,7 +226,7 @@ def test_the_observer_in_space():
     assert np.abs(sight.astrometric_m - (late - earth - expected)).max() < 2e3
     assert np.isnan(place.altitude_azimuth(observer, sight.apparent)).all()
     # 1 % beyond the Earth: faster by 1 %, 300 m/s
-    faster = place.length(observer.velocity_m_s - sun_rate) / place.length(earth_rate - sun_rate)
+    faster = length(observer.velocity_m_s - sun_rate) / length(earth_rate - sun_rate)
     np.testing.assert_allclose(faster, 1.01, atol=2e-3)
 
 

@@ -3,8 +3,8 @@
 Inside the program an instant is ``tt_s``: seconds of Terrestrial Time from 2000-01-01T12:00 TT, one
 float64 (2e-7 s near 2050). UTC comes from the leap-second table of ERFA, without leap seconds after its
 last entry; UT1 from a packaged table whose last prediction (UT1-UTC) is held afterwards. Nobody can
-predict either. Between 1973 and 2026 UT1 lost 0 to 1 s a year against atomic time; every second that the
-Earth is off the held value moves the sky by 15 arcsec and an event by about a second.
+predict either. From 1973 to 2026 UT1 drifted by +0.1 to -1.1 s a year from atomic time; each second that
+the Earth is off the held value moves the sky by 15 arcsec and an event by about a second.
 """
 
 from __future__ import annotations

@@ -24,6 +24,7 @@ from coldglow.sky.clock import DAY_S, Floats, iso_from_tt
 
 AU_M = erfa.DAU
 _KM_M = 1000.0
+_SEGMENT_TYPES = (2, 3, 9)  # those that jplephem reads
 _J2000_JD = 2451545.0
 _CODES = {
     "sun": (10,),
@@ -189,7 +190,7 @@ def load_ephemeris(name: str = "") -> Ephemeris:
     try:
         with path.open("rb") as stream:
             for segment in SPK(DAF(stream)).segments:
-                if hasattr(segment, "compute"):  # the kinds of segment that hold positions
+                if segment.data_type in _SEGMENT_TYPES:
                     segment.compute(segment.start_jd)  # maps the file; the map outlives the open file
                     segments.setdefault((segment.target, segment.center), []).append(segment)
     except (ValueError, OSError) as error:

@@ -15,7 +15,7 @@ from numpy.typing import ArrayLike
 
 from coldglow.describe.records import Figure, LongitudeSystem, Rotation
 from coldglow.sky.clock import DAY_S, Floats
-from coldglow.sky.place import dot
+from coldglow.sky.vectors import dot
 
 _CENTURY_S = 36525.0 * DAY_S
 

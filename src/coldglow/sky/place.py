@@ -1,10 +1,9 @@
 """Where a body stands in the sky of an observer: light time, deflection, aberration, the turning Earth.
 
-Everything slow (bodies, precession and nutation) is computed exactly at nodes on a fixed lattice, one a
-day (for the Moon every three hours), and interpolated by cubic Hermite polynomials; everything fast (the
-Earth's rotation with the observer on it) exactly at each instant. The lattice is fixed in time and the
-interpolation local, so a piece of a grid gives the same numbers as the whole. Measured interpolation error:
-80 m in distance, 4e-3 m/s in rate, 0.002 arcsec in the frame (``tests/sky/test_place.py``).
+Everything slow (bodies, precession and nutation) is computed at the nodes of a lattice, one a day (for the
+Moon every three hours), and interpolated; everything fast (the Earth's rotation with the observer on it) at
+each instant. Measured interpolation error: 80 m in distance, 4e-3 m/s in rate, 0.002 arcsec in the frame
+(``tests/sky/test_place.py``).
 
 Left out: polar motion (0.5 arcsec in altitude), refraction, light deflection by planets.
 """
@@ -19,6 +18,8 @@ import numpy as np
 from coldglow.describe.records import Orbit, Site
 from coldglow.sky.clock import DAY_S, Floats, tdb_from_tt, ut1_from_tt
 from coldglow.sky.ephemeris import AU_M, Ephemeris, check_span
+from coldglow.sky.lattice import Lattice, lattice
+from coldglow.sky.vectors import dot, from_date, length, to_date
 
 LIGHT_M_S = erfa.CMPS
 L2_DISTANCE_M = 0.01 * AU_M
@@ -27,67 +28,6 @@ _J2000_JD = 2451545.0
 _NODE_S = DAY_S
 _MOON_NODE_S = 3 * 3600.0  # 1 m in the Moon's place
 _MARGIN_S = 3 * DAY_S + 6 * 3600.0  # nodes beyond the instants, and the light time to Neptune
-_AROUND = 2  # nodes on either side that the derivative at a node needs
-
-
-# ---------------------------------------------------------------- interpolation on a fixed lattice
-
-
-@dataclass(frozen=True, slots=True)
-class Lattice:
-    """Nodes around given instants, at whole multiples of the step."""
-
-    step_s: float
-    tt_s: Floats  # ndarray[node]
-    left: np.ndarray  # ndarray[time]: node before the instant
-    part: Floats  # ndarray[time]: 0 .. 1 from that node to the next
-
-    def value(self, values: Floats, rates: Floats) -> Floats:
-        """Return the cubic Hermite value at the instants of quantities ndarray[node, ...]."""
-        return self._horner(self._coefficients(values, rates))
-
-    def rate(self, values: Floats, rates: Floats) -> Floats:
-        """Return the derivative per second at the instants of the same polynomials."""
-        _, b, c, d = self._coefficients(values, rates)
-        return self._horner((b / self.step_s, 2 * c / self.step_s, 3 * d / self.step_s))
-
-    def slope(self, values: Floats) -> Floats:
-        """Return the derivative per second at the nodes from five nodes each (not at the outer ones)."""
-        return (
-            8 * (np.roll(values, -1, 0) - np.roll(values, 1, 0))
-            - (np.roll(values, -2, 0) - np.roll(values, 2, 0))
-        ) / (12 * self.step_s)
-
-    def _horner(self, coefficients: tuple[Floats, ...]) -> Floats:
-        """Return the polynomials at the instants, coefficients ndarray[node, ...] from the lowest power."""
-        part = self.part.reshape(-1, *(1,) * (coefficients[0].ndim - 1))
-        result: Floats = coefficients[-1].take(self.left, axis=0)
-        for coefficient in coefficients[-2::-1]:
-            result *= part
-            result += coefficient.take(self.left, axis=0)
-        return result
-
-    def _coefficients(self, values: Floats, rates: Floats) -> tuple[Floats, Floats, Floats, Floats]:
-        """Return the four coefficients of the polynomial that begins at each node."""
-        change = np.roll(values, -1, 0) - values
-        begin, end = self.step_s * rates, self.step_s * np.roll(rates, -1, 0)
-        return values, begin, 3 * change - 2 * begin - end, begin + end - 2 * change
-
-
-def lattice(tt_s: Floats, step_s: float) -> Lattice:
-    """Return the nodes around the instants ndarray[time]; gaps between distant instants hold none."""
-    number = np.floor(tt_s / step_s)
-    first = int(number.min()) - _AROUND
-    offset = (number - first).astype(np.int64)
-    used = np.zeros(int(offset.max()) + _AROUND + 2, dtype=bool)
-    for shift in range(-_AROUND, _AROUND + 2):
-        used[offset + shift] = True
-    position = np.cumsum(used) - 1
-    nodes = step_s * (first + np.flatnonzero(used)).astype(np.float64)
-    return Lattice(step_s, nodes, position[offset], tt_s / step_s - number)
-
-
-# ---------------------------------------------------------------- the observer
 
 
 @dataclass(frozen=True, slots=True)
@@ -256,43 +196,6 @@ def parallactic_angle_rad(observer: Observer, apparent: Floats) -> Floats:
     tan_lat = np.tan(observer.place.latitude_rad)
     angle: Floats = np.arctan2(-east, tan_lat * cos_dec**2 - apparent[:, 2] * south)
     return angle
-
-
-# ---------------------------------------------------------------- vectors
-
-
-def dot(a: Floats, b: Floats) -> Floats:
-    """Return the scalar product over the last axis."""
-    product: Floats = np.einsum("...i,...i->...", a, b)
-    return product
-
-
-def length(a: Floats) -> Floats:
-    """Return the length over the last axis."""
-    result: Floats = np.sqrt(dot(a, a))
-    return result
-
-
-def separation_rad(a: Floats, b: Floats) -> Floats:
-    """Return the angle between unit vectors ndarray[time, xyz], exact for small and large ones."""
-    return 2 * np.arctan2(length(a - b), length(a + b))
-
-
-def longitude_latitude(a: Floats) -> tuple[Floats, Floats]:
-    """Return the angles of vectors ndarray[time, xyz]: longitude 0 .. 2 pi and latitude."""
-    return np.arctan2(a[:, 1], a[:, 0]) % (2 * np.pi), np.arctan2(a[:, 2], np.hypot(a[:, 0], a[:, 1]))
-
-
-def to_date(frame: Floats, vector: Floats) -> Floats:
-    """Turn vectors from ICRS axes to the true equator and equinox of date."""
-    turned: Floats = np.einsum("tij,tj->ti", frame, vector)
-    return turned
-
-
-def from_date(frame: Floats, vector: Floats) -> Floats:
-    """Turn vectors from the true equator and equinox of date to ICRS axes."""
-    turned: Floats = np.einsum("tji,tj->ti", frame, vector)
-    return turned
 
 
 # ---------------------------------------------------------------- inside

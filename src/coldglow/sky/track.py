@@ -13,18 +13,8 @@ from coldglow.sky.clock import Floats, TimeGrid, date_of, night_numbers, tdb_fro
 from coldglow.sky.ephemeris import Ephemeris, load_ephemeris
 from coldglow.sky.night import Mask, airmass, allowed, limiting_masks, why_not
 from coldglow.sky.orientation import body_axes, position_angle_rad, sub_point
-from coldglow.sky.place import (
-    LIGHT_M_S,
-    altitude_azimuth,
-    dot,
-    length,
-    longitude_latitude,
-    observe,
-    parallactic_angle_rad,
-    see,
-    separation_rad,
-    to_date,
-)
+from coldglow.sky.place import LIGHT_M_S, altitude_azimuth, observe, parallactic_angle_rad, see
+from coldglow.sky.vectors import dot, length, longitude_latitude, separation_rad, to_date
 
 
 @dataclass(frozen=True, slots=True)
