@@ -37,7 +37,6 @@ from coldglow.light.shell import path_factor, view_of, visible_points
 from coldglow.plan.stretches import Steps, runs
 from coldglow.sky.clock import TimeGrid, season_grid, tdb_from_tt
 from coldglow.sky.orientation import in_system_rad
-from coldglow.sky.stored import ephemeris_for
 from coldglow.sky.track import Track, make_track
 
 Array = NDArray[np.float64]
@@ -122,10 +121,10 @@ def watch(request: Request, use: Use, first: str = "", last: str = "") -> Track:
 
 def follow(request: Request, use: Use, grid: TimeGrid) -> Track:
     """Return the track of the request's target over any grid of instants at one site."""
-    target, place = request.target, use.instrument.place
+    target, instrument = request.target, use.instrument
     systems = {system.name: system for system in target.rotation.systems}
-    ephemeris = ephemeris_for(target.body, request.ephemeris, place)
-    return make_track(target, place, use.instrument.limits, grid, systems[request.longitudes], ephemeris)
+    system = systems[request.longitudes]
+    return make_track(target, instrument.place, instrument.limits, grid, system, request.ephemeris)
 
 
 def usable_steps(request: Request, track: Track) -> NDArray[np.bool_]:

@@ -21,7 +21,6 @@ from coldglow.report import words
 from coldglow.report.results import Column, Entry, Result, column, table
 from coldglow.sky.clock import iso_from_tt, span_grid, tdb_from_tt, times_grid
 from coldglow.sky.orientation import absolute_phase_uncertainty_rad
-from coldglow.sky.stored import ephemeris_for
 from coldglow.sky.track import Track, make_track
 
 ARCSEC_PER_RAD = 206264.80624709636
@@ -96,8 +95,7 @@ def sky(
             meaning = "above the horizon with the Sun more than 12° below it"
         else:
             raise RangeError("give an instrument or a site")
-        kernel = ephemeris_for(record.body, ephemeris, place)
-        track = make_track(record, place, limits, grid, system, kernel)
+        track = make_track(record, place, limits, grid, system, ephemeris)
     tdb_s = tdb_from_tt(grid.tt_s)
     unsure_deg = float(np.degrees(np.max(absolute_phase_uncertainty_rad(system, tdb_s))))
     sentences = [f"`observable` means {meaning}. Altitudes are airless, airmass is that of Young 1994."]

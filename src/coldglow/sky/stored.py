@@ -20,7 +20,7 @@ from scipy.interpolate import CubicSpline
 from coldglow.describe.records import Orbit, Site
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.sky.clock import Floats, tdb_from_tt, tt_from_utc
-from coldglow.sky.ephemeris import Ephemeris, check_span, load_ephemeris
+from coldglow.sky.ephemeris import Ephemeris, check_span
 from coldglow.sky.place import LIGHT_M_S, observe
 
 FORMAT = "coldglow-ephemeris/1"
@@ -121,15 +121,6 @@ def with_stored(base: Ephemeris, path: str, place: Site | Orbit) -> StoredEpheme
     left_s = tdb_s - table.distance_m / LIGHT_M_S
     way = CubicSpline(left_s, here + table.distance_m[:, None] * toward)
     return StoredEphemeris(name=table.name, body=path, base=base, way=way)
-
-
-def ephemeris_for(body: str, name: str, place: Site | Orbit) -> Ephemeris:
-    """Return the ephemeris of that name; for a body that is the path of a stored table, with that table.
-
-    Raises: as `load_ephemeris` and `with_stored`.
-    """
-    base = load_ephemeris(name)
-    return with_stored(base, body, place) if body.endswith(".ecsv") else base
 
 
 def _from_table(path: str, table: Any) -> StoredTable:
