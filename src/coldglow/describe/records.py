@@ -396,6 +396,7 @@ class Coverage:
     nights_max: float | None
     half_night_cost: float
     time_limit_s: float
+    asked: bool = False  # the request has a block `coverage`; without one the rest are defaults
 
 
 @dataclass(frozen=True, slots=True)

@@ -87,7 +87,7 @@ class CoverageBlock(Block):
     bins: Annotated[int, whole_number(1, 72)] = 12
     snr: _SNR = None
     temperature_error: _KELVIN = None
-    time: Annotated[float | None, quantity("time", "1 min", "1000 h")] = None
+    time: Annotated[float | None, quantity("minutes", "1 min", "1000 h")] = None
     latitude: Annotated[float | None, quantity("angle", "-90 deg", "90 deg")] = None
     angle_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = parse_quantity("60 deg", "angle")
     lit: Annotated[Literal["any", "day", "night"], fields.Word] = "any"
@@ -130,7 +130,7 @@ class BudgetBlock(Block):
     """The most that can be asked for."""
 
     nights: Annotated[float | None, quantity("number", above="0", high="10000")] = None
-    hours: Annotated[float | None, quantity("hours", above="0 h", high="100000 h")] = None
+    hours: Annotated[float | None, quantity("budget hours", above="0 h", high="100000 h")] = None
 
 
 class FadeBlock(Block):
@@ -193,7 +193,7 @@ class RequestSchema(Block):
         """Return the frozen record."""
         dates, goal, cover, weather = self.dates, self.goal, self.coverage, self.weather
         snr = cover.snr
-        kelvin, minutes = cover.temperature_error, None if cover.time is None else cover.time / 60
+        kelvin, minutes = cover.temperature_error, cover.time
         if snr is None and kelvin is None and minutes is None:  # the goal of the whole, in every bin
             snr = goal.snr
             kelvin = goal.temperature_error if snr is None else None
@@ -230,6 +230,7 @@ class RequestSchema(Block):
                 nights_max=cover.nights_max,
                 half_night_cost=cover.half_night_cost,
                 time_limit_s=cover.time_limit,
+                asked="coverage" in self.model_fields_set,
             ),
             conditions=Conditions(self.conditions.name, self.conditions.seeing, self.conditions.water),
             weather=Weather(
@@ -240,9 +241,7 @@ class RequestSchema(Block):
                 trials=weather.trials,
                 seed=weather.seed,
             ),
-            budget=Budget(
-                self.budget.nights, None if self.budget.hours is None else self.budget.hours / 3600
-            ),
+            budget=Budget(self.budget.nights, self.budget.hours),
             fade=Fade(
                 first_year=first_year,
                 last_year=self.fade.last_year or first_year + 20,

@@ -74,7 +74,7 @@ def _request(request: Request) -> dict[str, Any]:
     }
     budget = {
         "nights": _optional(request.budget.nights, "number"),
-        "hours": _optional(request.budget.hours, "hours", per=3600),
+        "hours": _optional(request.budget.hours, "budget hours"),
     }
     block: dict[str, Any] = {
         "format": "coldglow-request/1",
@@ -123,6 +123,8 @@ def _request(request: Request) -> dict[str, Any]:
             "significance": write_quantity(fade.significance, "number"),
         },
     }
+    if not request.coverage.asked:
+        del block["coverage"]
     if request.ephemeris:
         block["ephemeris"] = request.ephemeris
     return {key: _without_unasked(part) if key in _OPTIONAL else part for key, part in block.items()}
@@ -135,8 +137,8 @@ def _without_unasked(block: dict[str, Any]) -> dict[str, Any]:
     return {key: value for key, value in block.items() if value is not None}
 
 
-def _optional(value: float | None, kind: str, per: float = 1.0) -> str | None:
-    return None if value is None else write_quantity(value, kind, per=per)
+def _optional(value: float | None, kind: str) -> str | None:
+    return None if value is None else write_quantity(value, kind)
 
 
 def _flag(value: bool) -> str:
@@ -148,7 +150,7 @@ def _coverage(coverage: Coverage) -> dict[str, Any]:
         "bins": str(coverage.bins),
         "snr": _optional(coverage.snr, "number"),
         "temperature_error": _optional(coverage.temperature_error_k, "temperature difference"),
-        "time": _optional(coverage.minutes, "time", per=60),
+        "time": _optional(coverage.minutes, "minutes"),
         "latitude": _optional(coverage.latitude_rad, "angle"),
         "angle_max": write_quantity(coverage.angle_max_rad, "angle"),
         "lit": coverage.lit,
