@@ -170,6 +170,19 @@ def line_spectrum(in_air: bool = True) -> Figure:
     )
 
 
+def crowded_spectrum() -> Figure:
+    wave = np.linspace(3.9, 4.0, 300)
+    flat, lines = np.ones(300), 3.9995 + 1e-5 * np.arange(20)
+    labels = [f"2v2(l2)-v2 tR({i},{i})u" for i in range(20)]
+    return spectrum.spectrum(wave, flat, flat, flat, wave, 0.9 * flat, lines, labels, np.ones(20))
+
+
+def long_comparison() -> Figure:
+    labels = [f"an-instrument-of-mine-{i}, high-resolution" for i in range(14)]
+    hours = np.geomspace(0.001, 5e4, 14)
+    return compare.comparison(labels, hours, ["the background of the warm telescope"] * 14, hours < 1e3, 9.0)
+
+
 def beam(diameter: float = 3.7, slit: float = 0.8) -> Figure:
     view = disk.DiskView(diameter, 0.977, 62.0, 143.0, 262.0, False)
     spots = [disk.SpotView("northern oval", 65.0, 120.0, 12.0, 6.0), disk.SpotView("spot", 10.0, 190.0, 9.0)]
@@ -193,10 +206,20 @@ FIGURES: dict[str, Callable[[], Figure]] = {
 
 @pytest.fixture(scope="session")
 def figures() -> dict[str, Callable[[], Figure]]:
-    return FIGURES
+    """Return the drawing functions by name: each figure once, then the sizes that are hard to fit."""
+    return FIGURES | {
+        "season-short": lambda: season_chart(12),
+        "nights-many": lambda: chosen_nights(22),
+        "coverage-many": lambda: covered(33),
+        "coverage-one": lambda: covered(1),
+        "spectrum-space": lambda: line_spectrum(False),
+        "spectrum-crowded": crowded_spectrum,
+        "comparison-long": long_comparison,
+        "disk-large": lambda: beam(46.0, 1.0),
+    }
 
 
-def invented_report(title: str = "Uranus with echelle-4m, August 2027 to January 2028") -> Report:
+def make_report(title: str = "Uranus with echelle-4m, August 2027 to January 2028") -> Report:
     """A report of invented numbers with every figure in it."""
     count = 184
     hours = table(
@@ -239,3 +262,8 @@ def invented_report(title: str = "Uranus with echelle-4m, August 2027 to January
         versions={"coldglow": "0.1.0"},
         seed=1,
     )
+
+
+@pytest.fixture(scope="session")
+def invented_report() -> Callable[..., Report]:
+    return make_report

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True, slots=True)
 class Reference:
-    """One article: a key to cite it by, authors as "Family, Initials", and where it stands."""
+    """One article: a key to cite it by, authors as "Family, Initials" (or "others"), and where it stands."""
 
     key: str
     authors: tuple[str, ...]
@@ -38,7 +38,7 @@ class Reference:
 METHODS = (
     Reference(
         "archinal2018",
-        ("Archinal, B. A.", "Acton, C. H.", "A'Hearn, M. F."),
+        ("Archinal, B. A.", "Acton, C. H.", "others"),
         2018,
         "Report of the IAU Working Group on Cartographic Coordinates and Rotational Elements: 2015",
         "Celestial Mechanics and Dynamical Astronomy",
@@ -48,7 +48,7 @@ METHODS = (
     ),
     Reference(
         "drossart1989",
-        ("Drossart, P.", "Maillard, J.-P.", "Caldwell, J."),
+        ("Drossart, P.", "Maillard, J.-P.", "others"),
         1989,
         "Detection of H3+ on Jupiter",
         "Nature",

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from coldglow.report.figures import look
 
 _LABELS = 12
+_MAIN_IN, _LEADER_IN, _LETTER_IN = 1.9, 0.25, 0.067  # of the lower panel, of leaders, per letter of a name
 
 
 @look.styled
@@ -34,11 +35,13 @@ def spectrum(
     largest weight are named, all are marked.
     """
     in_air = len(transmission_um) > 0
+    names_in = _LEADER_IN + 0.1 + _LETTER_IN * max(map(len, line_labels), default=0)
+    air_in = 0.7 if in_air else 0.0
     figure, axes = look.panels(
-        4.7 if in_air else 3.8,
-        rows=(0.45, 1) if in_air else (1,),
-        gap_in=(1.2, 0),
-        margins_in=(0.6, 0.25, 0.35 if in_air else 1.2, 0.5),
+        _MAIN_IN + names_in + (air_in + 0.35 if in_air else 0.1) + 0.5,
+        rows=(air_in, _MAIN_IN) if in_air else (1,),
+        gap_in=(names_in, 0),
+        margins_in=(0.6, 0.25, 0.35 if in_air else names_in + 0.1, 0.5),
     )
     main = axes[-1, 0]
     span = (float(wavelength_um[0]), float(wavelength_um[-1]))
@@ -128,17 +131,11 @@ def _name_lines(
     strongest = inside[np.argsort(-weight[inside], kind="stable")[:_LABELS]]
     named = strongest[np.argsort(line_um[strongest], kind="stable")]
     places = spread(fraction[named], 0.038, 0.0, 1.0)
+    top = 1 + _LEADER_IN / _MAIN_IN
+    across = axes.transAxes
     for line, place in zip(named, places, strict=True):
-        axes.annotate(
-            labels[line],
-            (fraction[line], 1.0),
-            xycoords="axes fraction",
-            xytext=(place, 1.13),
-            textcoords="axes fraction",
-            rotation=90,
-            ha="center",
-            va="bottom",
-            fontsize=7.5,
-            arrowprops={"arrowstyle": "-", "color": look.SOFT, "linewidth": 0.6, "shrinkA": 1, "shrinkB": 0},
-            annotation_clip=False,
+        ends = ([fraction[line], place], [1.0, top - 0.02])
+        axes.plot(*ends, color=look.SOFT, linewidth=0.6, transform=across, clip_on=False)
+        axes.text(
+            place, top, labels[line], transform=across, rotation=90, ha="center", va="bottom", fontsize=7.5
         )

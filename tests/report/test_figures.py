@@ -1,0 +1,238 @@
+from __future__ import annotations
+
+import io
+import itertools
+import re
+import xml.etree.ElementTree as ET
+
+import matplotlib
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+from matplotlib.backends.backend_agg import FigureCanvasAgg
+from matplotlib.figure import Figure
+from matplotlib.text import Text
+
+from coldglow.report.figures import disk, exposure, look, season, spectrum, state
+
+NAMES = (
+    "snr", "season", "nights", "coverage", "probability", "fade", "map", "ellipse", "comparison", "spectrum",
+    "disk",
+    "season-short", "nights-many", "coverage-many", "coverage-one", "comparison-long", "spectrum-space",
+    "spectrum-crowded", "disk-large",
+)  # fmt: skip
+
+
+def tick_outside(figure: Figure) -> set[str]:
+    """Return the labels of ticks beyond the limits of their axis, which are kept but not drawn."""
+    hidden = set()
+    for axes in figure.axes:
+        for axis in (axes.xaxis, axes.yaxis):
+            low, high = sorted(axis.get_view_interval())
+            slack = 1e-9 * (high - low)
+            for tick in itertools.chain(axis.get_major_ticks(), axis.get_minor_ticks()):
+                if not low - slack <= tick.get_loc() <= high + slack:
+                    hidden |= {id(tick.label1), id(tick.label2)}
+    return hidden
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_no_text_is_cut_off_and_none_overlaps_another(figures, name):
+    figure = figures[name]()
+    canvas = FigureCanvasAgg(figure)
+    canvas.draw()
+    hidden = tick_outside(figure)
+    axes_off = {id(text) for axes in figure.axes if not axes.axison for text in axes.findobj(Text)} - {
+        id(text) for axes in figure.axes for text in (axes._left_title, axes._right_title)
+    }
+    legends = {
+        id(text) for axes in figure.axes if axes.get_legend() for text in axes.get_legend().get_texts()
+    }
+    boxes = []
+    for text in figure.findobj(Text):
+        unseen = id(text) in hidden or (id(text) in axes_off and id(text) not in legends)
+        if unseen or not text.get_visible() or not text.get_text().strip():
+            continue
+        box = Text.get_window_extent(text, canvas.get_renderer())  # without the arrow of an annotation
+        assert box.x0 >= 0, text.get_text()
+        assert box.y0 >= 0, text.get_text()
+        assert box.x1 <= figure.bbox.x1, text.get_text()
+        assert box.y1 <= figure.bbox.y1, text.get_text()
+        if "\n" not in text.get_text().strip("\n") and text.get_rotation() in (0, 90):
+            boxes.append((text, box.padded(-1)))
+    assert len(boxes) > 3
+    for (one, box), (other, beside) in itertools.combinations(boxes, 2):
+        two_lines = one.get_text().endswith("\n") and other.get_text().startswith("\n")
+        assert two_lines or not box.overlaps(beside), (one.get_text(), other.get_text())
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_every_panel_names_its_axes_with_units_where_they_have_some(figures, name):
+    figure = figures[name]()
+    texts = " ".join(text.get_text() for text in figure.findobj(Text))
+    expected = {
+        "snr": "(h)", "season": "UTC", "nights": "UTC", "coverage": "(°)", "probability": "%", "fade": "(K)",
+        "map": "(m⁻²)", "ellipse": "(m⁻²)", "comparison": " h", "spectrum": "(µm)", "disk": "(″)",
+    }[name.split("-")[0]]  # fmt: skip
+    assert expected in texts
+
+
+@pytest.mark.parametrize("name", NAMES[:11])
+def test_the_same_numbers_give_the_same_bytes_whatever_the_users_settings(figures, name):
+    first = figures[name]()
+    svg, pdf, png = look.as_svg(first), look.as_pdf(first), look.as_png(first, 60)
+    with matplotlib.rc_context({"font.size": 20, "svg.hashsalt": None, "axes.facecolor": "red"}):
+        second = figures[name]()
+        assert look.as_svg(second) == svg
+        assert look.as_pdf(second) == pdf
+        assert look.as_png(second, 60) == png
+    assert "<dc:date>" not in svg
+    assert b"CreationDate" not in pdf
+    ET.fromstring(svg)
+
+
+def test_drawing_leaves_the_users_settings_alone(figures):
+    before = dict(matplotlib.rcParams)
+    look.as_svg(figures["snr"]())
+    assert dict(matplotlib.rcParams) == before
+
+
+def test_series_stay_apart_in_grey_and_the_scale_of_colours_is_monotone():
+    # IEC 61966-2-1: luminance of pure red, green, blue and white in sRGB (also WCAG 2, relative luminance)
+    for colour, expected in {"#ff0000": 0.2126, "#00ff00": 0.7152, "#0000ff": 0.0722, "#ffffff": 1.0}.items():
+        assert look.luminance(colour) == pytest.approx(expected)
+    paper = look.luminance(look.PAPER)
+    for colour in (look.INK, look.SOFT, look.BLUE, look.BRICK, look.PLUM):
+        contrast = (paper + 0.05) / (look.luminance(colour) + 0.05)
+        assert contrast >= 4.5, colour  # WCAG 2.1, criterion 1.4.3, for text
+    first_two = sorted((look.luminance(look.BLUE), look.luminance(look.AMBER)))
+    assert (first_two[1] + 0.05) / (first_two[0] + 0.05) > 2.5
+    shades = [look.luminance(matplotlib.colors.to_hex(look.GLOW(x))) for x in np.linspace(0, 1, 64)]
+    assert np.all(np.diff(shades) > 0)
+
+
+def test_inline_svg_has_its_own_ids_and_the_pages_colours(figures):
+    svg = look.as_svg(figures["season"]())
+    inline = look.inline_svg(svg, "season")
+    assert inline.startswith("<svg")
+    ids = re.findall(r'\bid="([^"]+)"', inline)
+    assert ids
+    assert all(name.startswith("season-") for name in ids)
+    assert len(set(ids)) == len(ids)
+    used = set(re.findall(r'href="#([^"]+)"', inline)) | set(re.findall(r"url\(#([^)]+)\)", inline))
+    assert used <= set(ids)
+    assert f": var(--figure-ink, {look.INK})" in inline
+    assert not re.search(rf": {look.INK}\b", inline)
+    assert "width=" not in inline[: inline.index(">")]
+    ET.parse(io.StringIO(inline))
+
+
+@given(
+    st.lists(st.floats(0, 1), min_size=1, max_size=12),
+    st.floats(0.001, 0.08),
+)
+def test_labels_are_spread_in_order_and_no_further_than_needed(positions, gap):
+    wanted = np.sort(positions)
+    places = spectrum.spread(wanted, gap, 0.0, 1.0)
+    assert np.all(np.diff(places) >= gap * (1 - 1e-9))
+    assert places[0] >= -1e-12
+    assert places[-1] <= 1 + 1e-9 or gap * (len(places) - 1) > 1
+    if np.all(np.diff(wanted) >= gap) and len(wanted):
+        np.testing.assert_allclose(places, wanted, atol=1e-12)
+
+
+@pytest.mark.parametrize("name", ["spectrum", "spectrum-crowded"])
+def test_names_of_lines_stay_between_the_panels(figures, name):
+    figure = figures[name]()
+    canvas = FigureCanvasAgg(figure)
+    canvas.draw()
+    air, main = figure.axes
+    boxes = [
+        Text.get_window_extent(text, canvas.get_renderer())
+        for text in main.texts
+        if text.get_rotation() == 90
+    ]
+    assert len(boxes) == 12
+    assert max(box.y1 for box in boxes) < air.get_window_extent().y0
+    assert min(box.y0 for box in boxes) > main.get_window_extent().y1
+
+
+def test_two_labels_at_one_place_move_apart_evenly():
+    np.testing.assert_allclose(spectrum.spread(np.array([0.5, 0.5]), 0.1, 0.0, 1.0), [0.45, 0.55])
+
+
+def test_the_envelope_keeps_every_narrow_line():
+    x = np.linspace(0, 1, 50_000)
+    y = np.zeros_like(x)
+    y[31_234] = 7.0
+    y[12_345] = -3.0
+    grid, low, high = spectrum.envelope(x, y, (0.0, 1.0))
+    assert len(grid) <= 900
+    assert high.max() == 7.0
+    assert low.min() == -3.0
+
+
+def test_the_disk_is_projected_as_a_spheroid():
+    # Orthographic projection of a spheroid: the pole stands at polar radius x cos(B), B the planetocentric
+    # latitude of the centre, along the position angle of the axis; the outline is an ellipse with minor
+    # semi-axis sqrt(c^2 cos^2 B + a^2 sin^2 B) (Urban & Seidelmann 2013, Explanatory Supplement, 3rd ed.,
+    # section 10.3, apparent disk).
+    view = disk.DiskView(40.0, 0.9, 25.0, 100.0, 30.0, True)
+    centric = np.arctan(0.81 * np.tan(np.radians(25.0)))
+    east, north, facing = disk._project(view, np.array([np.pi / 2]), np.array([0.0]))
+    assert facing[0]
+    assert np.hypot(east[0], north[0]) == pytest.approx(20 * 0.9 * np.cos(centric))
+    assert np.degrees(np.arctan2(east[0], north[0])) == pytest.approx(30.0)
+    # the point under the observer is the centre
+    east, north, facing = disk._project(view, np.array([centric]), np.array([100.0]))
+    assert (east[0], north[0]) == pytest.approx((0.0, 0.0), abs=1e-12)
+    assert facing[0]
+    # west longitudes beyond the central one lie on the east limb: they come into view as the planet turns
+    east, north, _ = disk._project(view, np.zeros(2), np.array([130.0, 70.0]))
+    right = np.array([-np.cos(np.radians(30.0)), np.sin(np.radians(30.0))])  # towards celestial west
+    assert east[0] * right[0] + north[0] * right[1] < 0 < east[1] * right[0] + north[1] * right[1]
+    # no visible point lies outside the outline
+    latitude, longitude = np.meshgrid(np.linspace(-1.5, 1.5, 41), np.arange(0.0, 360.0, 5.0))
+    east, north, facing = disk._project(view, latitude.ravel(), longitude.ravel())
+    up = east * np.sin(np.radians(30)) + north * np.cos(np.radians(30))
+    along = east * right[0] + north * right[1]
+    minor = np.sqrt(0.81 * np.cos(centric) ** 2 + np.sin(centric) ** 2)
+    size = np.hypot(along / 20, up / (20 * minor))
+    assert size.max() <= 1 + 1e-9
+    assert size[facing].max() > 0.99
+
+
+def test_an_ellipse_of_errors_has_the_axes_of_its_covariance():
+    covariance = np.array([[0.02, -1.5], [-1.5, 180.0]])
+    figure = state.error_ellipse(480.0, 1e15, covariance)
+    ellipse = figure.axes[0].patches[1]  # 1 sigma
+    turn = np.radians(ellipse.angle)
+    across = np.array([[np.cos(turn), -np.sin(turn)], [np.sin(turn), np.cos(turn)]])
+    drawn = across @ np.diag([ellipse.width**2 / 4, ellipse.height**2 / 4]) @ across.T
+    np.testing.assert_allclose(drawn, covariance[::-1, ::-1], rtol=1e-9)
+
+
+def test_hard_cases_draw():
+    clock = np.linspace(0.1, 8, 5)
+    exposure.snr_against_time(clock, np.zeros(5), {"sky": 1.0}, 5.0, np.inf)
+    exposure.snr_against_time(clock, np.sqrt(clock), {"sky": 1.0})
+    nights = ["2027-11-01", "2027-11-02"]
+    season.season_chart(nights, np.arange(22.0, 34.0), np.full((2, 12), np.nan))
+    never = np.full((3, 4), np.inf)
+    figure = state.nights_map(
+        np.linspace(300, 600, 4),
+        np.geomspace(1e14, 1e16, 3),
+        never,
+        (480.0, 1e15),
+        (0.0, 0.0),
+        budget_nights=3,
+    )
+    look.as_png(figure, 50)
+
+
+def test_frames_of_successive_nights_join_and_others_do_not():
+    outlines = season._outlines([(3, 26.0, 28.0), (4, 26.5, 28.5), (9, 25.0, 27.0), (10, 28.0, 29.0)])
+    assert [len(outline) for outline in outlines] == [8, 4, 4]
+    assert outlines[0][0] == (2.5, 26.0)
+    assert outlines[0][3] == (4.5, 26.5)
