@@ -30,7 +30,11 @@ class Unit:
 
 @dataclass(frozen=True, slots=True)
 class Kind:
-    """A kind of quantity: its SI unit, the unit it is shown in, and an example of how it is written."""
+    """A kind of quantity: the unit it is kept in, the unit it is shown in, an example of how it is written.
+
+    Kept in SI, except for what astronomers count in centuries and observers in minutes and hours: a rate
+    read per second and multiplied up again would lose its last digit.
+    """
 
     noun: str
     si: str
@@ -48,7 +52,7 @@ KINDS = {
     "angle": Kind("an angle", "rad", "deg", "30 deg"),
     "small angle": Kind("an angle", "rad", "arcsec", "0.5 arcsec"),
     "angle rate": Kind("a rate of turning", "rad s-1", "deg day-1", "536.3 deg/day"),
-    "slow angle rate": Kind("a rate of turning", "rad s-1", "deg century-1", "0.01 deg/century"),
+    "slow angle rate": Kind("a rate of turning", "rad century-1", "deg century-1", "0.01 deg/century"),
     "temperature": Kind("a temperature", "K", "K", "500 K"),
     "temperature difference": Kind("a temperature difference", "K", "K", "20 K"),
     "temperature rate": Kind("a temperature rate", "K s-1", "K yr-1", "-8 K/yr"),
@@ -56,6 +60,8 @@ KINDS = {
     "column": Kind("a column density", "m-2", "m-2", "2e15 m-2"),
     "time": Kind("a time", "s", "s", "300 s"),
     "hours": Kind("a time", "s", "h", "16 h"),
+    "budget hours": Kind("a time", "h", "h", "40 h"),
+    "minutes": Kind("a time", "min", "min", "30 min"),
     "years": Kind("a time", "s", "yr", "20 yr"),
     "velocity": Kind("a velocity", "m s-1", "km s-1", "10 km/s"),
     "charge": Kind("a number of electrons", "e-", "e-", "80000 e-"),
@@ -153,7 +159,7 @@ def parse_unit(text: str) -> Unit:
 
 
 def parse_quantity(text: str, kind: str, default_unit: str | None = None) -> float:
-    """Return the SI value of a quantity written with its unit.
+    """Return the value of a quantity written with its unit, in SI (or in what its `Kind` is kept in).
 
     `default_unit` is what a bare number means (command line only; in a description a bare number is a
     mistake unless the kind has no unit). Angles may be written as ``-30:14:16`` (degrees, minutes,
@@ -196,12 +202,13 @@ def _to_si(digits: str, text: str, unit_text: str, wanted: Kind, advice: str) ->
         raise UnitError(f"{quoted(text)} has the unknown unit {quoted(unit_text)}; {advice}") from None
     except OverflowError:
         raise UnitError(f"{quoted(text)} has an absurd unit; {advice}") from None
-    if unit.dimension != parse_unit(wanted.si).dimension:
+    kept = parse_unit(wanted.si)
+    if unit.dimension != kept.dimension:
         raise UnitError(f"{quoted(text)} is not {wanted.noun}; {advice}")
     mantissa, _, exponent = digits.lower().partition("e")
     if len(exponent) > 5:
         raise UnitError(f"{quoted(text)} is too large or too small a number; {advice}")
-    return float(f"{mantissa}e{int(exponent or 0) + unit.decade}") * unit.ratio
+    return float(f"{mantissa}e{int(exponent or 0) + unit.decade}") * (unit.ratio / kept.ratio)
 
 
 def from_si(value: float, unit: str) -> float:
@@ -210,27 +217,24 @@ def from_si(value: float, unit: str) -> float:
     return float(Decimal(repr(float(value) / parsed.ratio)).scaleb(-parsed.decade))
 
 
-def write_quantity(value: float, kind: str, *, times: float = 1.0, per: float = 1.0) -> str:
-    """Return a quantity with its unit such that reading it gives back the very same float.
+def write_quantity(value: float, kind: str) -> str:
+    """Return a quantity with its unit such that `parse_quantity` gives back the very same float.
 
-    The value is what a record keeps: `parse_quantity(text, kind) * times / per`. The kind's usual unit is
-    used; where the last digit would be lost in it, the SI unit.
+    The kind's usual unit is used; where the last digit would be lost in it, the unit in which it is kept.
     """
-    si = value * per / times
-    units = (KINDS[kind].shown, KINDS[kind].si)
-    for unit in units:
-        guess = from_si(si, unit)
-        up, down = math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)
-        for number in (guess, up, down, math.nextafter(up, math.inf), math.nextafter(down, -math.inf)):
-            text = f"{_plain(number)} {unit}".strip()
-            if parse_quantity(text, kind) * times / per == value:
-                return text
-    return f"{_plain(si)} {units[1]}".strip()
+    shown, kept = KINDS[kind].shown, KINDS[kind].si
+    guess = from_si(value * parse_unit(kept).ratio, shown)
+    for number in (guess, math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)):
+        text = f"{_plain(number)} {shown}".strip()
+        if parse_quantity(text, kind) == value:
+            return text
+    return f"{_plain(value)} {kept}".strip()
 
 
 def show_quantity(value: float, kind: str, digits: int = 6) -> str:
     """Return a quantity for people: its usual unit and at most so many significant digits."""
-    return f"{from_si(value, KINDS[kind].shown):.{digits}g} {KINDS[kind].shown}".strip()
+    shown, kept = KINDS[kind].shown, KINDS[kind].si
+    return f"{from_si(value * parse_unit(kept).ratio, shown):.{digits}g} {shown}".strip()
 
 
 def _plain(number: float) -> str:

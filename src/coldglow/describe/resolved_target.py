@@ -6,7 +6,7 @@ import datetime
 import math
 from typing import Any
 
-from coldglow.describe.column import mean_path_factor
+from coldglow.describe.column import line_of_sight_column
 from coldglow.describe.records import (
     Continuum,
     Cooling,
@@ -18,8 +18,6 @@ from coldglow.describe.records import (
     Target,
 )
 from coldglow.units import write_quantity
-
-_CENTURY_S = 3155760000.0
 
 
 def resolved_target(target: Target) -> dict[str, Any]:
@@ -41,14 +39,14 @@ def resolved_target(target: Target) -> dict[str, Any]:
     }
 
 
-def write_estimate(found: Estimate, kind: str, spread: str = "", times: float = 1.0) -> str | dict[str, str]:
+def write_estimate(found: Estimate, kind: str, spread: str = "") -> str | dict[str, str]:
     """Return a value, with uncertainty and scatter where it has any (`spread`: their kind)."""
-    value = write_quantity(found.value, kind, times=times)
+    value = write_quantity(found.value, kind)
     if not found.uncertainty and not found.scatter:
         return value
     parts = {"uncertainty": found.uncertainty, "scatter": found.scatter}
     return {"value": value} | {
-        key: write_quantity(part, spread or kind, times=times) for key, part in parts.items() if part
+        key: write_quantity(part, spread or kind) for key, part in parts.items() if part
     }
 
 
@@ -58,14 +56,14 @@ def _rotation(rotation: Rotation) -> dict[str, Any]:
         "source": rotation.source,
         "pole": {
             "right_ascension": write_quantity(ra, "angle"),
-            "right_ascension_rate": write_quantity(ra_rate, "slow angle rate", times=_CENTURY_S),
+            "right_ascension_rate": write_quantity(ra_rate, "slow angle rate"),
             "declination": write_quantity(dec, "angle"),
-            "declination_rate": write_quantity(dec_rate, "slow angle rate", times=_CENTURY_S),
+            "declination_rate": write_quantity(dec_rate, "slow angle rate"),
         },
         "periodic_terms": [
             {
                 "angle": write_quantity(term.angle_rad, "angle"),
-                "rate": write_quantity(term.rate_rad_century, "slow angle rate", times=_CENTURY_S),
+                "rate": write_quantity(term.rate_rad_century, "slow angle rate"),
                 "right_ascension": write_quantity(term.ra_rad, "angle"),
                 "declination": write_quantity(term.dec_rad, "angle"),
                 "meridian": write_quantity(term.meridian_rad, "angle"),
@@ -97,8 +95,8 @@ def _emission(emission: Emission, figure: Figure) -> dict[str, Any]:
     if emission.given_as == "vertical":
         block["column"] = write_estimate(emission.column_m2, "column")
     else:
-        factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
-        block["line_of_sight_column"] = write_estimate(emission.column_m2, "column", times=1 / factor)
+        column = line_of_sight_column(emission.column_m2, figure)
+        block["line_of_sight_column"] = write_estimate(column, "column")
     block["lte_fraction"] = write_estimate(emission.lte_fraction, "fraction")
     block["source"] = emission.source
     shares = math.fsum(spot.share for spot in emission.spots)

@@ -106,12 +106,10 @@ class RotationBlock(Block):
         order = [self.default, *(name for name in self.systems if name != self.default)]
         pole = self.pole
         return Rotation(
-            pole_ra_rad=(pole.right_ascension, _per_century(pole.right_ascension_rate)),
-            pole_dec_rad=(pole.declination, _per_century(pole.declination_rate)),
+            pole_ra_rad=(pole.right_ascension, pole.right_ascension_rate),
+            pole_dec_rad=(pole.declination, pole.declination_rate),
             terms=tuple(
-                PeriodicTerm(
-                    term.angle, _per_century(term.rate), term.right_ascension, term.declination, term.meridian
-                )
+                PeriodicTerm(term.angle, term.rate, term.right_ascension, term.declination, term.meridian)
                 for term in self.periodic_terms
             ),
             systems=tuple(self._system(name) for name in order),
@@ -148,10 +146,6 @@ class RotationBlock(Block):
 def no_system(name: str, systems: dict[str, SystemBlock], key: str) -> Refused:
     """Return the refusal of a longitude system that the rotation block does not have."""
     return Refused(f"there is no longitude system `{name}`", f"one of {', '.join(systems)}", key)
-
-
-def _per_century(rate_rad_s: float) -> float:
-    return rate_rad_s * 3155760000.0
 
 
 def _seconds_from_j2000(date: str) -> float:

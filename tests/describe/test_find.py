@@ -1,0 +1,77 @@
+"""Names and paths: what is found where, in which order."""
+
+from pathlib import Path
+
+import pytest
+
+from coldglow.describe import find
+from coldglow.errors import NotFoundError
+
+TARGET = "format: coldglow-target/1\nextends: uranus\n"
+
+
+def test_what_ships():
+    assert {"jupiter", "saturn", "uranus", "neptune", "cold-giant"} <= set(find.names("target"))
+    assert {
+        "echelle-4m",
+        "echelle-8m",
+        "grating-8m",
+        "longslit-4m",
+        "ifu-8m",
+        "narrowband-3m",
+        "cold-space-ifu",
+    } <= set(find.names("instrument"))
+
+
+def test_the_working_folder_comes_before_the_path_and_both_before_what_ships(write, tmp_path, monkeypatch):
+    elsewhere = write("library/targets/uranus.yaml", TARGET)
+    monkeypatch.setenv("COLDGLOW_PATH", str(tmp_path / "library"))
+    assert find.find("uranus", "target") == elsewhere
+    write("uranus.yaml", TARGET)
+    assert find.find("uranus", "target") == Path("uranus.yaml")
+    assert find.find("saturn", "target").parent == find.shipped_folder("target")
+
+
+def test_a_folder_of_the_path_may_hold_the_files_itself(write, tmp_path, monkeypatch):
+    mine = write("library/mine.yaml", TARGET)
+    monkeypatch.setenv("COLDGLOW_PATH", f"/nowhere:{tmp_path / 'library'}")
+    assert find.find("mine", "target") == mine
+    assert "mine" in find.names("target")
+    assert "mine" not in find.names("instrument")
+
+
+def test_a_request_named_like_a_planet_does_not_hide_it(write):
+    write("uranus.yaml", "format: coldglow-request/1\nname: mine\n")
+    assert find.find("uranus", "target").parent == find.shipped_folder("target")
+
+
+def test_a_file_does_not_find_itself(write):
+    mine = write("uranus.yaml", TARGET)
+    assert find.find("uranus", "target", beside=mine).parent == find.shipped_folder("target")
+
+
+def test_a_path_starts_at_the_folder_of_the_file_that_asks(write):
+    base = write("deep/base.yaml", TARGET)
+    assert find.find("./base.yaml", "target", beside=write("deep/mine.yaml", TARGET)) == base
+    assert find.find(base, "target") == base
+    with pytest.raises(NotFoundError, match=r"there is no target file `base\.yaml`"):
+        find.find("base.yaml", "target")
+
+
+def test_case_of_letters_does_not_matter():
+    assert find.find("Uranus", "target").name == "uranus.yaml"
+
+
+def test_the_nearest_name_is_suggested():
+    with pytest.raises(NotFoundError, match="did you mean `neptune`"):
+        find.find("neptun", "target")
+    with pytest.raises(NotFoundError, match="there are cold-giant, jupiter"):
+        find.find("qqqq", "target")
+
+
+@pytest.mark.parametrize(
+    "name", ["", "\x00", "a\nb", "x" * 5000, "../uranus", "/\x00/x.yaml", "x" * 5000 + ".yaml"]
+)
+def test_odd_names_are_not_found(name):
+    with pytest.raises(NotFoundError):
+        find.find(name, "target")
