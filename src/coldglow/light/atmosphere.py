@@ -13,14 +13,13 @@ from importlib.resources import files
 from pathlib import Path
 
 import numpy as np
-from numpy.lib.stride_tricks import as_strided
 from numpy.typing import ArrayLike, NDArray
 from scipy.constants import c
-from scipy.interpolate import BarycentricInterpolator, BSpline, make_interp_spline
+from scipy.interpolate import BSpline, make_interp_spline
 from scipy.ndimage import gaussian_filter1d
-from scipy.special import ndtr
 
 from coldglow.errors import NotFoundError, RangeError
+from coldglow.light.average import Shifts, moving_average, nodes_and_weights, shift_nodes, window
 from coldglow.light.table import OPAQUE_TAU, read_table
 
 Floats = NDArray[np.float64]
@@ -289,19 +288,20 @@ def line_transmission(
     if not known.size or not rest.size:
         return result
     rate, mass, water = rate[known], mass[known], water[known]
-    shift, per_sample = _shift_nodes(rate, float(sigma.min()), atmosphere.log_step)
-    mass_node, mass_weight = _nodes_and_weights(mass, 6)
-    water_node, water_weight = _nodes_and_weights(water, 5)
-    widths = sigma / (c * atmosphere.log_step)
+    rate = np.log1p(rate / c) / atmosphere.log_step  # in samples from here on
+    widths = np.maximum(sigma / (c * atmosphere.log_step), 1e-3)
+    shifts = shift_nodes(rate, float(widths.min()))
+    mass_node, mass_weight = nodes_and_weights(mass, 6)
+    water_node, water_weight = nodes_and_weights(water, 5)
     table = np.stack(
         [
-            _average_line(atmosphere, place + shift[0], width, shift.size, per_sample, mass_node, water_node)
+            _average_line(atmosphere, place + shifts.first, width, shifts, mass_node, water_node)
             for place, width in zip(atmosphere.position(rest), widths, strict=True)
         ],
         axis=-1,
     )  # [shift, airmass and water, line]
-    spline = make_interp_spline(shift, table, k=3)
-    along = BSpline.design_matrix(np.log1p(rate / c) / atmosphere.log_step, spline.t, 3)
+    spline = make_interp_spline(shifts.nodes, table, k=3)
+    along = BSpline.design_matrix(rate, spline.t, 3)
     weight = (mass_weight[:, :, np.newaxis] * water_weight[:, np.newaxis, :]).reshape(rate.size, -1)
     summed = np.zeros((rate.size, rest.size))
     for node in range(weight.shape[1]):
@@ -311,58 +311,15 @@ def line_transmission(
     return result
 
 
-def _shift_nodes(rate_m_s: Floats, sigma_m_s: float, log_step: float) -> tuple[Floats, int]:
-    """Return shifts in samples that cover the range rates, and how many of them go on one sample.
-
-    They lie at most half the narrowest line apart: the average over the line is smooth on that scale.
-    """
-    per_sample = int(np.clip(np.ceil(2.0 * c * log_step / max(sigma_m_s, 1.0)), 1, 8))
-    low, high = (np.log1p(rate / c) / log_step * per_sample for rate in (rate_m_s.min(), rate_m_s.max()))
-    count = max(int(np.ceil(high - low)) + 3, 4)
-    whole = -(-count // per_sample) * per_sample
-    return (low - 1.0 + np.arange(whole)) / per_sample, per_sample
-
-
-def _nodes_and_weights(value: Floats, count: int) -> tuple[Floats, Floats]:
-    """Return nodes and Lagrange weights ndarray[time, node]; few distinct values are nodes themselves."""
-    distinct, which = np.unique(value, return_inverse=True)
-    if distinct.size <= count:
-        return distinct, np.eye(distinct.size)[which]
-    angle = np.pi * (np.arange(count) + 0.5) / count
-    middle, half = 0.5 * (distinct[0] + distinct[-1]), 0.5 * (distinct[-1] - distinct[0])
-    node = middle - half * np.cos(angle)
-    return node, BarycentricInterpolator(node, np.eye(count))(value)
-
-
 def _average_line(
-    atmosphere: Atmosphere,
-    start: float,
-    width: float,
-    count: int,
-    per_sample: int,
-    airmass: Floats,
-    water_m: Floats,
+    atmosphere: Atmosphere, start: float, width: float, shifts: Shifts, airmass: Floats, water_m: Floats
 ) -> Floats:
-    """Return T averaged over a Gaussian at `count` places from `start` on, ndarray[place, airmass * water].
-
-    All in samples, each the middle of a cell of constant T. The weights of the cells repeat from sample to
-    sample, so they are computed once and laid out along the diagonal of a matrix.
-    """
-    reach = int(5.0 * width) + 2
-    samples = count // per_sample
-    first = int(np.floor(start)) - reach
-    index = np.clip(np.arange(first, first + samples + 2 * reach + 1), 0, atmosphere.tau_dry.size - 1)
+    """Return T averaged over one line at every shift from `start` on, ndarray[shift, airmass * water]."""
+    index = np.clip(window(start, width, shifts), 0, atmosphere.tau_dry.size - 1)
     part = slice(index[0], index[-1] + 1)  # beyond the ends of the table its last samples go on
     depth = np.stack([atmosphere.tau(float(water), part) for water in water_m], axis=-1)[index - index[0]]
     sample = np.exp(-airmass[:, np.newaxis] * depth[:, np.newaxis, :]).reshape(index.size, -1)
-    place = start - np.floor(start) + np.arange(per_sample)[:, np.newaxis] / per_sample
-    edge = np.arange(-reach, reach + 3) - 0.5
-    share = np.diff(ndtr((edge - place) / max(width, 1e-3)), axis=1)
-    matrix = np.zeros((samples, per_sample, index.size))
-    along, across, item = matrix.strides
-    as_strided(matrix, (samples, *share.shape), (along + item, across, item))[:] = share
-    average: Floats = matrix.reshape(count, index.size) @ sample
-    return average
+    return moving_average(sample, start, width, shifts)
 
 
 def transmission_error(

@@ -23,6 +23,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Figure, LongitudeSystem, Spot
 from coldglow.errors import RangeError
 
@@ -265,32 +266,23 @@ def rotation_speed_m_s(figure: Figure, system: LongitudeSystem, tilt_rad: float)
     return system.rate_rad_s * figure.equatorial_radius_m * float(np.cos(tilt_rad))
 
 
-def mean_path_factor(radius_m: float, shell_height_m: float) -> float:
-    """Return mean column along the line of sight over the disk pi R^2, per vertical column (sphere).
-
-    2 (1+h/R)^2 (1 + sqrt(1 - (R/(R+h))^2)): all the light of the visible shell, the annulus above the limb
-    included, divided by the area of the opaque disk. It turns a vertical column into the mean one along the
-    line of sight and back.
-
-    Source: area of the sphere's near side and of the zone of its far side beyond the limb (Archimedes).
-    """
-    ratio = 1.0 + shell_height_m / radius_m
-    return float(2.0 * ratio**2 * (1.0 + np.sqrt(1.0 - ratio**-2)))
-
-
 def path_factor(figure: Figure, sub_observer_latitude_rad: float) -> float:
-    """Return the same mean for the spheroid of a figure, seen from a planetographic latitude, evenly lit."""
+    """Return the mean column along the line of sight over the disk, per vertical column of an even shell.
+
+    For the spheroid, all light of the visible shell over the area of the opaque disk. The closed form for
+    the sphere (`describe.column`) differs by up to 1.5 % for Uranus and Neptune; for Saturn the spheroid has
+    5 % more in the plane of the equator and 7 % less over the pole.
+
+    Args:
+        figure: radii and height of the shell.
+        sub_observer_latitude_rad: planetographic.
+
+    """
     view = view_of(figure, sub_observer_latitude_rad)
     return float(uniform_points(view)[2].sum() / (np.pi * view.outline_pole))
 
 
-def vertical_column_m2(figure: Figure, line_of_sight_column_m2: ArrayLike) -> Floats:
-    """Return the vertical column of an even shell whose mean over the visible disk is given."""
-    factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
-    return np.asarray(line_of_sight_column_m2, dtype=np.float64) / factor
-
-
 def line_of_sight_column_m2(figure: Figure, vertical_column_m2: ArrayLike) -> Floats:
-    """Return the mean column over the visible disk of an even shell of given vertical column."""
+    """Return the mean column over the visible disk of an even shell of given vertical column (sphere)."""
     factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
     return np.asarray(vertical_column_m2, dtype=np.float64) * factor
