@@ -43,6 +43,7 @@ Array = NDArray[np.float64]
 
 MOMENT_SPACING_S = 1800.0  # information is interpolated between moments; tests measure what that costs
 MOMENTS_PER_TURN = 36  # with spots
+DATE_SPACING_S = 25 * 86400.0  # of the beam's table
 FEW = 100  # up to so many moments each is looked at by itself
 
 
@@ -274,7 +275,8 @@ def beams(
     if airmass.size <= FEW:
         return _look(target, instrument, setting, track, geometry, seeing_rad)
     time_s = track.grid.time_s
-    axes = [_axis(time_s, 8), _axis(airmass, 5)]
+    dates = int(np.clip(np.ceil(np.ptp(time_s) / DATE_SPACING_S) + 1, 2, 8))
+    axes = [_axis(time_s, dates), _axis(airmass, 5)]
     where = [time_s, airmass]
     turning = instrument.opening.angle == "parallactic"
     if turning:
