@@ -7,7 +7,7 @@ import time
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.constants import c
 
@@ -138,10 +138,10 @@ def test_300_lines_over_2800_moments_are_fast():
     rate, airmass = 30e3 * np.sin(np.linspace(0.0, 6.0, 2800)), rng.uniform(1.0, 2.2, 2800)
     best = math.inf
     for _ in range(3):
-        start = time.perf_counter()
+        start = time.process_time()
         atmosphere.line_transmission(AIR, lines.wavelength_m, 1200.0, rate, airmass, 0.002)
-        best = min(best, time.perf_counter() - start)
-    assert best < 1.0  # 0.18 s measured on an idle core; the bound allows for a busy machine
+        best = min(best, time.process_time() - start)
+    assert best < 0.6  # 0.1 s measured
 
 
 def test_arrays_equal_scalars():
@@ -171,6 +171,7 @@ def test_pixel_means_are_additive_and_meet_the_monochromatic_mean():
     assert both[1] == pytest.approx(fine, rel=1e-14)
 
 
+@settings(deadline=None)  # a busy machine is no failure
 @given(st.floats(1.0, 3.0), st.floats(0.0, 0.5), st.floats(0.0002, 0.008), st.floats(0.0, 0.002))
 def test_more_air_or_water_never_lets_more_light_through(airmass, more_air, water_m, more_water):
     wavelength = np.linspace(3.2e-6, 3.4e-6, 500)

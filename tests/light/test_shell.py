@@ -8,7 +8,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from coldglow.describe.records import Figure, LongitudeSystem, Spot
@@ -40,9 +40,9 @@ def test_mean_column_against_the_closed_form(height_m, spacing):
 def test_few_points_and_little_time():
     best = math.inf
     for _ in range(20):
-        start = time.perf_counter()
+        start = time.process_time()
         points = shell.visible_points(OBLATE, (SPOT, OVAL), 0.4, 0.0, WEST)
-        best = min(best, time.perf_counter() - start)
+        best = min(best, time.process_time() - start)
     assert points.x.size < 2500
     assert best < 0.005  # 0.0003 s measured
 
@@ -181,6 +181,7 @@ def test_a_spot_in_another_longitude_system_is_refused():
         shell.visible_points(SPHERE, (replace(SPOT, system="other"),), 0.0, 0.0, WEST)
 
 
+@settings(deadline=None)  # a busy machine is no failure
 @given(st.floats(-1.5, 1.5), st.floats(0.0, 6.28), st.floats(0.0, 3e6))
 def test_light_is_never_negative_nor_more_than_the_shell_holds(latitude, longitude, height_m):
     figure = replace(OBLATE, shell_height_m=height_m)
