@@ -387,7 +387,6 @@ def requests(draw):
             half_night_cost=draw(floats(0.1, 1)),
             time_limit_s=draw(floats(1, 3600)),
             asked=True,
-            asked=True,
             **goals,
         ),
         conditions=Conditions(
