@@ -20,9 +20,9 @@ SUN_WAVELENGTH_M = np.array([1.9, 2.2, 2.5, 2.7, 3.0, 3.4, 4.0, 5.5]) * 1e-6
 SUN_TEMPERATURE_K = np.array([6300.0, 6150.0, 6000.0, 5800.0, 5700.0, 5630.0, 5560.0, 5550.0])
 SOLAR_IRRADIANCE_ERROR = 0.05
 
-# Two grey bodies, low-background level (from memory of Glasse et al. 2015, PASP 127, 686; a factor 2)
+# Two grey bodies, low-background level (from memory of Glasse et al. 2015, PASP 127, 686);
+# good to a factor 2
 ZODIACAL = ((4.2e-14, 5500.0), (4.3e-8, 270.0))
-ZODIACAL_FACTOR = 2.0
 
 AIRGLOW_BAND_M = (1.95e-6, 2.30e-6)  # OH bands end here (Ashley et al. 1996, PASP 108, 721)
 

@@ -19,7 +19,7 @@ Floats = NDArray[np.float64]
 Index = NDArray[np.intp]
 
 C2_M_K = h * c / k  # second radiation constant
-HIDDEN_BY_TELLURIC = "AB"  # position classes good enough to say that a telluric line hides this one
+WELL_PLACED = "AB"  # position classes good enough to say that a telluric line hides this one
 POSITION_ERROR_M1 = {"A": 0.5, "B": 5.0, "C": 30.0, "D": 100.0}  # 0.005, 0.05, 0.3, 1 cm-1
 EINSTEIN_A_ERROR = 0.03  # relative, strong fundamental lines with J <= 8; 0.05-0.2 for others
 
@@ -111,9 +111,9 @@ class LineList:
             f"lines; the nearest are {hint or 'none'}"
         )
 
-    def hides(self) -> NDArray[np.bool_]:
-        """Return ndarray[line]: whether "hidden by a telluric line" means anything for the line."""
-        return np.isin(self.quality, list(HIDDEN_BY_TELLURIC))
+    def well_placed(self) -> NDArray[np.bool_]:
+        """Return ndarray[line]: whether "hidden by a telluric line" means anything (classes A and B)."""
+        return np.isin(self.quality, list(WELL_PLACED))
 
     def position_sigma_m_s(self) -> Floats:
         """Return ndarray[line]: 1-sigma error of the position as a velocity; 0 for classes A and B.
@@ -121,7 +121,7 @@ class LineList:
         The positions of classes C and D are too uncertain to place the line on or beside a telluric one:
         their transmission is averaged over this error instead.
         """
-        error_m1 = np.array([0.0 if q in HIDDEN_BY_TELLURIC else POSITION_ERROR_M1[q] for q in self.quality])
+        error_m1 = np.array([0.0 if q in WELL_PLACED else POSITION_ERROR_M1[q] for q in self.quality])
         sigma: Floats = c * error_m1 / self.wavenumber_m1
         return sigma
 
