@@ -1,8 +1,15 @@
-"""Errors that no exposure time lowers, propagated to the column and the temperature.
+"""Errors that come from elsewhere than from counting, propagated to the column and the temperature.
 
 The estimate of (ln N, T) from line fluxes is linear in small relative errors e_l of the fluxes:
-delta = F^-1 sum_l I_l (1, g_l) e_l, with I_l the information of line l and g_l its d ln(flux)/dT. Each
-cause has its own pattern e_l; the causes add in quadrature.
+delta = V sum_l w_l (1, g_l) e_l with V = (sum_l w_l (1, g_l)(1, g_l)^T)^-1, g_l = d ln(flux)/dT. The weights
+are those of a fit that knows its errors, w_l = 1/(1/I_l + e_l²), with I_l the information of the line in
+the exposure and e_l what errs independently from line to line (its Einstein coefficient, the air's
+transmission): a line with an SNR of 1000 is not worth more than its Einstein coefficient.
+
+What errs independently makes V minus what counting alone leaves; what moves all lines in a pattern adds
+the pattern's response. Causes add in quadrature.
+
+Source: generalised least squares, Aitken 1935, Proc. R. Soc. Edinburgh 55, 42 (from memory).
 """
 
 from __future__ import annotations
@@ -48,18 +55,19 @@ class SystematicErrors:
 
 def systematic_errors(
     wavelength_m: np.ndarray,
-    information: np.ndarray,
+    information_s: np.ndarray,
     slope: np.ndarray,
     telluric_error: np.ndarray,
     operation: Operation,
     einstein_a_error: float = EINSTEIN_A_ERROR,
     visits: int = 1,
+    open_shutter_s: float = 3600.0,
 ) -> SystematicErrors:
     """Return the systematic errors of an estimate from some lines.
 
     Args:
         wavelength_m: ndarray[line].
-        information: ndarray[line], I_l up to a common factor; zero for lines that are not used.
+        information_s: ndarray[line], 1/sigma² of ln(flux) per second; zero for lines that are not used.
         slope: ndarray[line], d ln(flux)/dT in 1/K.
         telluric_error: ndarray[line], relative error of the transmission (`transmission_error` over the
             transmission; zero in space), independent from line to line and not reduced by more visits.
@@ -67,41 +75,49 @@ def systematic_errors(
             at the two ends of the lines used, linear in wavelength between; the floors move all lines alike.
         einstein_a_error: relative error of the Einstein coefficients, independent from line to line.
         visits: independent visits, which average the floor of one visit.
+        open_shutter_s: length of the exposure, which sets the weights of faint lines.
 
     """
-    used = information > 0.0
-    weight, g = information[used], slope[used]
-    wavelength = wavelength_m[used]
-    span = float(np.ptp(wavelength)) if wavelength.size else 0.0
-    place = (wavelength - float(np.mean(wavelength))) / span if span > 0.0 else np.zeros(wavelength.size)
+    used = information_s > 0.0
+    if not used.any():
+        never = (math.inf,) * len(CAUSES)
+        return SystematicErrors(never, never, never)
+    counting, g, wavelength = open_shutter_s * information_s[used], slope[used], wavelength_m[used]
+    telluric = telluric_error[used]
+    scatter2 = einstein_a_error**2 + np.square(telluric)
+    weight = counting / (1.0 + counting * scatter2)
+    span = float(np.ptp(wavelength))
+    place = (wavelength - float(np.mean(wavelength))) / span if span > 0.0 else 0.0 * wavelength
     alike = np.ones(wavelength.size)
     floor = math.hypot(operation.visit_floor / math.sqrt(visits), operation.common_floor)
-    # (pattern, independent from line to line?)
-    causes = (
-        (operation.flux_error * alike, False),
-        (operation.relative_error * place, False),
-        (einstein_a_error * alike, True),
-        (telluric_error[used], True),
-        (floor * alike, False),
-    )
-    total = float(weight.sum())
-    if total <= 0.0:
-        never = (math.inf,) * len(causes)
-        return SystematicErrors(never, never, never)
-    mean = float(weight @ g) / total
-    spread = float(weight @ np.square(g - mean))
-    to_fixed = weight / total
-    solvable = spread > 1e-12 * float(weight @ np.square(g))
-    to_temperature = weight * (g - mean) / spread if solvable else np.zeros_like(weight)
-    to_column = to_fixed - mean * to_temperature
+    patterns = (operation.flux_error * alike, operation.relative_error * place, floor * alike)
 
-    def moved(response: np.ndarray, pattern: np.ndarray, independent: bool) -> float:
-        effect = response * pattern
-        return float(np.sqrt(np.sum(np.square(effect)))) if independent else abs(float(effect.sum()))
+    def causes(response: np.ndarray, extra: float) -> tuple[float, ...]:
+        flux, tilt, low = (abs(float(response @ pattern)) for pattern in patterns)
+        einstein, air = (
+            float(np.sum(np.square(response) * part))
+            for part in (einstein_a_error**2 * alike, np.square(telluric))
+        )
+        share = extra / (einstein + air) if einstein + air > 0.0 else 0.0
+        return flux, tilt, math.sqrt(share * einstein), math.sqrt(share * air), low
 
-    def errors(response: np.ndarray, known: bool) -> tuple[float, ...]:
-        return tuple(moved(response, p, i) if known else math.inf for p, i in causes)
-
+    total, mean, spread = _moments(weight, g)
+    own_total, own_mean, own_spread = _moments(counting, g)
+    fixed = causes(weight / total, 1.0 / total - 1.0 / own_total)
+    if spread <= 1e-12 * float(weight @ np.square(g)):
+        return SystematicErrors(fixed, (math.inf,) * len(CAUSES), (math.inf,) * len(CAUSES))
+    to_temperature = weight * (g - mean) / spread
+    variance = 1.0 / total + mean**2 / spread
+    own_variance = 1.0 / own_total + own_mean**2 / own_spread
     return SystematicErrors(
-        errors(to_fixed, True), errors(to_column, solvable), errors(to_temperature, solvable)
+        fixed,
+        causes(weight / total - mean * to_temperature, variance - own_variance),
+        causes(to_temperature, 1.0 / spread - 1.0 / own_spread),
     )
+
+
+def _moments(weight: np.ndarray, slope: np.ndarray) -> tuple[float, float, float]:
+    """Return sum of the weights, mean slope, and weighted sum of squares about it."""
+    total = float(weight.sum())
+    mean = float(weight @ slope) / total
+    return total, mean, float(weight @ np.square(slope - mean))
