@@ -23,7 +23,8 @@ Index: TypeAlias = NDArray[np.int64]
 
 TURN = 2.0 * np.pi
 SUB_POINTS = 9  # places looked at in a bin for a latitude of interest: its edge is met to 1/18 of the bin
-SHARP_RAD = 1e-7  # widths below are drawn as this: sharp, without a division by zero
+SHARP_RAD = 1e-5  # widths below are drawn as this: sharp, without a division by zero
+NOTHING = 1e-9  # a share below is rounding
 FWHM_SIGMA = 2.0 * np.sqrt(2.0 * np.log(2.0))
 
 
@@ -95,7 +96,7 @@ def central_weights(
     weight = np.zeros((longitude_rad.size, bins))
     for turn in (-2, -1, 0, 1, 2):
         weight += np.diff(_smeared_step(edge + turn * TURN - centre, half, sigma), axis=1)
-    return weight
+    return np.where(weight > NOTHING, weight, 0.0)
 
 
 def interest_weights(longitude_rad: Array, bins: int, interest: Interest) -> Array:
@@ -112,8 +113,8 @@ def interest_weights(longitude_rad: Array, bins: int, interest: Interest) -> Arr
         if interest.lit != "any":
             sun = _cosine(latitude, place, interest.sub_solar_latitude_rad, interest.sub_solar_longitude_rad)
             counts &= (sun > 0.0) if interest.lit == "day" else (sun <= 0.0)
-        weight += counts / SUB_POINTS
-    return weight
+        weight += counts
+    return weight / SUB_POINTS
 
 
 def _cosine(latitude: float, longitude: Array, from_latitude: Array, from_longitude: Array) -> Array:
@@ -150,7 +151,8 @@ def gather(steps: Steps, weight: Array, first: Index, end: Index, overhead_s: fl
         axis=1,
     )
     seconds = np.where(seconds > 1e-6, seconds, 0.0)  # of a running sum, rounding is what is left
-    return BinGains(matrix, seconds, (seconds > 0.0).astype(np.int64))
+    served = seconds > 0.0
+    return BinGains(np.where(served[..., None, None], matrix, 0.0), seconds, served.astype(np.int64))
 
 
 def spot_gain(

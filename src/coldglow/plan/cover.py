@@ -80,29 +80,21 @@ class _Question:
             columns = np.flatnonzero((helps > 0.0) & (chosen < 0.5))
             self.cuts.append((columns, np.ones(columns.size), 1.0, np.inf))
 
-    def settle(
-        self,
-        objective: Array,
-        wanted: NDArray[np.bool_] | None,
-        end: float,
-    ) -> Answer:
+    def settle(self, objective: Array, aim: NDArray[np.bool_], full: bool, end: float) -> Answer:
         """Solve until the choice stands up to evaluation.
 
-        `wanted` names the bins whose whole goal is claimed; None lets the shares be claimed freely and
-        maximises their sum. A choice that does not stand up when a limit ends the search is dropped.
+        `full` claims the whole goal of the bins aimed at; otherwise shares of them are claimed freely and
+        their sum is maximised. A choice that does not stand up when a limit ends the search is dropped.
         """
-        bins = self.gain.shape[1]
-        full = wanted is not None
-        claim = wanted.astype(float) if wanted is not None else np.zeros(bins)
-        bounds = (claim, claim if full else np.ones(bins))
-        value = np.zeros(bins) if full else -np.ones(bins)
+        bounds = (aim.astype(float) * full, aim.astype(float))
+        value = np.zeros(aim.size) if full else -aim.astype(float)
         while True:
             rows = self.goals + (self.cuts if full else [])
             answer = self.model.solve(objective, rows, bounds, value, end - monotonic())
             if answer.chosen is None:
                 return answer
             share = self.share(answer.chosen)
-            missing = answer.share - np.minimum(share, 1.0)
+            missing = np.where(aim, answer.share - np.minimum(share, 1.0), 0.0)
             short = missing > (1.0 - REACHED if full else ROUNDING)
             bend = short & (missing > ROUNDING) & (not self.linear)
             if not full and self.linear:
@@ -121,7 +113,8 @@ def cover(
     """Choose the cheapest candidates that reach the goal in every bin that can be reached.
 
     Where the rules (a limit on nights, runs of nights) leave no full cover, the choice of the largest sum
-    of the bins' shares min(got/goal, 1) is made instead, at the lowest cost that gives it.
+    of those bins' shares min(got/goal, 1) is made instead. Where no bin can be reached at all, the shares
+    of all bins count, if there is a limit on the cost; without one nothing is chosen.
 
     Args:
         candidates: what can be asked for.
@@ -139,10 +132,11 @@ def cover(
     most = reachable_share(candidates, gain, demand, rules)
     reachable = most >= REACHED
     kind: Literal["full", "most"] = "full"
+    hopeless = not reachable.any() and bool(np.isfinite(rules.cost_max))
     chosen, bound, gap = _full(question, reachable, begin + seconds)
-    if bound == np.inf:
-        kind = "most"
-        chosen, gap = _most(question, begin + seconds)
+    if bound == np.inf or hopeless:
+        kind, bound = "most", np.inf
+        chosen, gap = _most(question, reachable | hopeless, begin + seconds)
     share = question.share(chosen)
     taken = np.flatnonzero(chosen > 0.5)
     return Cover(
@@ -164,7 +158,7 @@ def _full(question: _Question, wanted: NDArray[np.bool_], end: float) -> tuple[A
     """Cheapest full cover of the wanted bins, the bound of its cost (inf: there is none), and the gap."""
     cost = question.model.candidates.cost
     unit = cost_unit(cost)
-    answer = question.settle(cost, wanted, end)
+    answer = question.settle(cost, wanted, True, end)
     if answer.infeasible:
         return np.zeros(cost.size), np.inf, 0.0
     bound = max(np.ceil(answer.bound / unit - 1e-6) * unit if unit else answer.bound, 0.0)
@@ -184,13 +178,13 @@ def _full(question: _Question, wanted: NDArray[np.bool_], end: float) -> tuple[A
     return chosen, bound, gap
 
 
-def _most(question: _Question, end: float) -> tuple[Array, float]:
+def _most(question: _Question, aim: NDArray[np.bool_], end: float) -> tuple[Array, float]:
     """Choice of the largest covered share within the rules, and the relative gap of that share."""
     size = question.size
-    answer = question.settle(np.zeros(size), None, end)
+    answer = question.settle(np.zeros(size), aim, False, end)
     if answer.chosen is None:  # no choice obeys the rules (gap 0), or none was found in time
         return np.zeros(size), 0.0 if answer.infeasible else np.inf
-    got = float(np.minimum(question.share(answer.chosen), 1.0).sum())
+    got = float(np.minimum(question.share(answer.chosen), 1.0)[aim].sum())
     gap = max(-answer.bound - got, 0.0) / got if got > 0.0 else float(-answer.bound > ROUNDING)
     if gap > ROUNDING:
         return answer.chosen, gap
@@ -208,19 +202,21 @@ def _tidy(question: _Question, chosen: Array) -> Array:
     position = np.empty(order.size)
     position[order] = np.arange(order.size)
     free = allowed(candidates, rules)
-    now = chosen.copy()
-    for each in order[::-1][chosen[order[::-1]] > 0.5]:
-        rest = total_of(gain, now) - gain[each]
-        now[each] = 0.0
-        if np.all(question.demand.share(rest) >= least) and obeys(candidates, rules, now):
-            continue
-        good = np.all(question.demand.share(rest + gain) >= least, axis=1) & free & (now < 0.5)
-        good &= (candidates.cost == candidates.cost[each]) & (position < position[each])
-        for other in order[good[order]]:
-            now[other] = 1.0
-            if obeys(candidates, rules, now):
-                break
-            now[other] = 0.0
-        else:
-            now[each] = 1.0
+    now, before = chosen.copy(), np.zeros_like(chosen)
+    while not np.array_equal(now, before):
+        before = now.copy()
+        for each in order[::-1][before[order[::-1]] > 0.5]:
+            rest = total_of(gain, now) - gain[each]
+            now[each] = 0.0
+            if np.all(question.demand.share(rest) >= least) and obeys(candidates, rules, now):
+                continue
+            good = np.all(question.demand.share(rest + gain) >= least, axis=1) & free & (now < 0.5)
+            good &= (candidates.cost == candidates.cost[each]) & (position < position[each])
+            for other in order[good[order]]:
+                now[other] = 1.0
+                if obeys(candidates, rules, now):
+                    break
+                now[other] = 0.0
+            else:
+                now[each] = 1.0
     return now

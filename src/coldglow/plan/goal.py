@@ -61,7 +61,8 @@ def with_floor(information: ArrayLike, floor: ArrayLike) -> Array:
 def without_floor(information: ArrayLike, floor: ArrayLike) -> Array:
     """Return the information that gives `information` after the floor; inf where nothing can."""
     information = np.asarray(information, dtype=float)
-    rest = 1.0 - information * np.square(floor)
+    finite = np.isfinite(information)
+    rest = np.where(finite, 1.0 - np.where(finite, information, 0.0) * np.square(floor), 0.0)
     return np.where(rest > 0.0, information / np.where(rest > 0.0, rest, 1.0), np.inf)
 
 

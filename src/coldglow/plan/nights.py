@@ -7,6 +7,7 @@ temperature error is that goal, many bins are coverage: the same functions answe
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TypeAlias
 
@@ -15,13 +16,12 @@ from numpy.typing import ArrayLike, NDArray
 from scipy.special import ndtri
 
 from coldglow.plan.demand import Amount, Demand
-from coldglow.plan.weather import history_probability, probability_of_sum, simulate
+from coldglow.plan.weather import all_histories, probability_of_sum, simulate
 
 Array: TypeAlias = NDArray[np.float64]
 Index: TypeAlias = NDArray[np.int64]
 
 REACHED = 1.0 - 1e-9
-EXACT_NIGHTS = 12  # up to so many different nights all histories are enumerated, without random numbers
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,23 +63,6 @@ def clear_needed(gain: Array, demand: Demand) -> int | None:
     """
     reached = demand.share(np.cumsum(gain, axis=0))[:, 0] >= REACHED
     return int(np.argmax(reached)) + 1 if reached.any() else None
-
-
-def histories(
-    day: ArrayLike, weather: Weather, rng: np.random.Generator
-) -> tuple[NDArray[np.bool_], Array, bool]:
-    """Weather histories ndarray[history, unit] of units in order of time, and their probabilities.
-
-    All of them where the different nights are few (exact), else a random sample of equal weights.
-    """
-    day = np.asarray(day)
-    different, unit = np.unique(day, return_inverse=True)
-    if different.size <= EXACT_NIGHTS:
-        state = (np.arange(2**different.size)[:, None] >> np.arange(different.size)) & 1 > 0
-        chance = history_probability(state, different, weather.clear_fraction, weather.correlation)
-        return state[:, unit], chance, True
-    clear = simulate(day, weather.clear_fraction, weather.correlation, weather.trials, rng)
-    return clear, np.full(weather.trials, 1.0 / weather.trials), False
 
 
 def scatter_factors(
@@ -133,16 +116,17 @@ def drawn(
     """
     day = np.asarray(day)
     order = np.argsort(day, kind="stable")
-    rng = weather.generator(stream)
-    if factors is None:
-        clear, chance, exact = histories(day[order], weather, rng)
+    chain = weather.clear_fraction, weather.correlation
+    every = all_histories(day[order], *chain) if factors is None else None
+    if every is None:
+        trials = weather.trials if factors is None else factors.shape[0]
+        clear = simulate(day[order], *chain, trials, weather.generator(stream))
+        chance = np.full(trials, 1.0 / trials)
     else:
-        trials = factors.shape[0]
-        clear = simulate(day[order], weather.clear_fraction, weather.correlation, trials, rng)
-        chance, exact = np.full(trials, 1.0 / trials), False
+        clear, chance = every
     weight = np.empty(clear.shape)
     weight[:, order] = clear
-    return weight if factors is None else weight * factors, chance, exact
+    return weight if factors is None else weight * factors, chance, every is not None
 
 
 def success(
@@ -200,8 +184,6 @@ def curve(
 ) -> Curve:
     """Probability for requests that take the units in a stated order of preference, one more each time.
 
-    All requests are judged in the same histories, so that one more unit never lowers the probability.
-
     Args:
         gain: ndarray[unit, bin] or ndarray[unit, bin, 2, 2].
         demand: goal per bin.
@@ -212,26 +194,54 @@ def curve(
         factors: ndarray[trial, unit], natural scatter.
 
     """
+    if not isinstance(demand, Amount) or gain.shape[1] > 1 or factors is not None:
+        return joint_curve([(gain, demand)], day, cost, order, weather, factors)
     day, order = np.asarray(day), np.asarray(order, dtype=np.int64)
-    gain = gain[order]
-    some = None if factors is None else factors[:, order]
-    found: list[tuple[float, float]] = []
-    if isinstance(demand, Amount) and gain.shape[1] == 1 and some is None:
-        found = [
-            success(gain[:count], demand, day[order[:count]], weather) for count in range(1, order.size + 1)
-        ]
-    else:
-        weight, chance, exact = drawn(day[order], weather, 0, some)
-        total = np.zeros((weight.shape[0], *gain.shape[1:]))
-        for i in range(order.size):
-            total += np.multiply.outer(weight[:, i], gain[i])
-            found.append(estimate(np.all(demand.share(total) >= REACHED, axis=1), chance, exact))
-    low = np.array([each[0] for each in found])
-    high = low + np.array([each[1] for each in found])
-    low = np.maximum.accumulate(low)  # a lower bound for fewer units is one for more
+    found = [success(gain[order[:n]], demand, day[order[:n]], weather) for n in range(1, order.size + 1)]
+    low = np.maximum.accumulate([each[0] for each in found])  # a bound for fewer units is one for more
+    high = np.array([each[0] + each[1] for each in found])
     return Curve(
         units=np.arange(1, order.size + 1),
         cost=np.cumsum(np.asarray(cost, dtype=float)[order]),
         probability=low,
         probability_error=np.maximum(high - low, 0.0),
+    )
+
+
+def joint_curve(
+    goals: Sequence[tuple[Array, Demand]],
+    day: ArrayLike,
+    cost: ArrayLike,
+    order: ArrayLike,
+    weather: Weather,
+    factors: Array | None = None,
+) -> Curve:
+    """Probability that *all* of several goals are reached, against units requested.
+
+    All requests are judged in the same histories: one more unit never lowers the probability, and goals
+    fail together as they do under one sky.
+
+    Args:
+        goals: pairs of gain (ndarray[unit, bin] or ndarray[unit, bin, 2, 2]) and demand.
+        day: ndarray[unit], any order.
+        cost: ndarray[unit].
+        order: unit indices, most wanted first.
+        weather: chain, trials and seed.
+        factors: ndarray[trial, unit], natural scatter.
+
+    """
+    day, order = np.asarray(day), np.asarray(order, dtype=np.int64)
+    weight, chance, exact = drawn(day[order], weather, 0, None if factors is None else factors[:, order])
+    reached = np.ones((order.size, weight.shape[0]), dtype=bool)
+    for gain, demand in goals:
+        total = np.zeros((weight.shape[0], *gain.shape[1:]))
+        for i, unit in enumerate(order):
+            total += np.multiply.outer(weight[:, i], gain[unit])
+            reached[i] &= np.all(demand.share(total) >= REACHED, axis=1)
+    found = [estimate(each, chance, exact) for each in reached]
+    return Curve(
+        units=np.arange(1, order.size + 1),
+        cost=np.cumsum(np.asarray(cost, dtype=float)[order]),
+        probability=np.array([each[0] for each in found]),
+        probability_error=np.array([each[1] for each in found]),
     )

@@ -17,7 +17,8 @@ from numpy.typing import ArrayLike, NDArray
 from coldglow.errors import RangeError
 
 Array: TypeAlias = NDArray[np.float64]
-CELLS = 4096  # steps of information in the distribution; the bounds returned show what they cost
+CELLS = 16384  # steps of information in the distribution; the bounds returned show what they cost
+EXACT_NIGHTS = 12  # up to so many different nights all histories are enumerated instead
 
 
 def _gaps(day: ArrayLike, clear_fraction: float, correlation: float) -> Array:
@@ -70,6 +71,17 @@ def history_probability(
     return np.asarray(np.where(clear, chance, 1.0 - chance).prod(axis=1))
 
 
+def all_histories(
+    day: ArrayLike, clear_fraction: float, correlation: float
+) -> tuple[NDArray[np.bool_], Array] | None:
+    """Return all histories ndarray[history, unit] and their probabilities; None beyond 12 nights."""
+    different, unit = np.unique(np.asarray(day), return_inverse=True)
+    if different.size > EXACT_NIGHTS:
+        return None
+    state = (np.arange(2**different.size)[:, None] >> np.arange(different.size)) & 1 > 0
+    return state[:, unit], history_probability(state, different, clear_fraction, correlation)
+
+
 def sum_distribution(
     amount: NDArray[np.int64], top: int, day: ArrayLike, clear_fraction: float, correlation: float
 ) -> Array:
@@ -116,8 +128,8 @@ def probability_of_sum(
 ) -> tuple[float, float]:
     """Probability that the clear units together yield the demand, as safe lower and upper bound.
 
-    The amounts are counted in steps of demand/4096, rounded down for the lower bound and up for the
-    upper one; equal amounts that divide the demand give equal bounds.
+    Equal amounts are counted and few nights enumerated, exactly: both bounds are the same. Otherwise the
+    amounts are rounded to steps of demand/16384, down for the lower bound and up for the upper one.
 
     Args:
         information: ndarray[unit] that a unit yields when clear (floors applied).
@@ -140,6 +152,11 @@ def probability_of_sum(
             return 0.0, 0.0
         exact = float(count_distribution(day, clear_fraction, correlation)[needed:].sum())
         return exact, exact
+    every = all_histories(day, clear_fraction, correlation)
+    if every is not None:
+        clear, chance = every
+        few = float(np.clip(chance @ (clear @ information >= demand * (1.0 - 1e-9)), 0.0, 1.0))
+        return few, few
     steps = np.minimum(information / demand, 1.0) * CELLS
     low, high = (
         sum_distribution(whole.astype(np.int64), CELLS, day, clear_fraction, correlation)[-1]
