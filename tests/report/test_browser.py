@@ -127,7 +127,8 @@ def test_words_and_figures_stand_out_in_light_and_in_dark(page, scheme):
     page.call("Emulation.setEmulatedMedia", features=[{"name": "prefers-color-scheme", "value": scheme}])
     resize(page, 1000)
     colours = page.value(
-        """(() => { const all = [...document.querySelectorAll("p, h1, h2, dt, dd, figcaption, td, th, li, a")];
+        """(() => {
+        const all = [...document.querySelectorAll("p, h1, h2, dt, dd, figcaption, td, th, li, a")];
         return [getComputedStyle(document.body).backgroundColor,
                 [...new Set(all.map(part => getComputedStyle(part).color))]]; })()"""
     )
