@@ -38,13 +38,15 @@ class Candidates:
 
 @dataclass(frozen=True, slots=True)
 class Rules:
-    """Limits on the choice. A fixed night has at least one chosen candidate, a forbidden one none."""
+    """Limits on the choice. A fixed night or set has at least one chosen candidate, a forbidden one none."""
 
     cost_max: float = np.inf
     consecutive: bool = False  # the nights used are a single run of days
     block_nights: int = 1  # the nights used fall into runs of exactly this many
     fixed_nights: tuple[int, ...] = ()
     forbidden_nights: tuple[int, ...] = ()
+    fixed_sets: tuple[tuple[int, ...], ...] = ()  # of candidates
+    nights_max: float = np.inf  # different nights used
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,6 +105,8 @@ def obeys(candidates: Candidates, rules: Rules, chosen: Array) -> bool:
         candidates.cost[taken].sum() <= rules.cost_max + 1e-9 * abs(rules.cost_max)
         and np.isin(rules.fixed_nights, used).all()
         and not np.isin(used, rules.forbidden_nights).any()
+        and all(taken[list(some)].any() for some in rules.fixed_sets)
+        and used.size <= rules.nights_max
         and (used.size == 0 or not rules.consecutive or length.size == 1)
         and (used.size == 0 or np.all(length % rules.block_nights == 0))
     )
@@ -111,7 +115,8 @@ def obeys(candidates: Candidates, rules: Rules, chosen: Array) -> bool:
 class Model:
     """Variables x, y, z, s, r in this order, the rows that the rules put on them, and the solver call.
 
-    r marks the rise of z (first night of a run). z, s and r exist only where the rules speak of runs.
+    r marks the rise of z (first night of a run). z, s and r exist only where the rules speak of runs or
+    count nights.
     """
 
     def __init__(self, candidates: Candidates, rules: Rules, bins: int) -> None:
@@ -119,7 +124,7 @@ class Model:
         self.candidates, self.rules, self.bins = candidates, rules, bins
         self.size = candidates.night.size
         self.nights = np.arange(candidates.night.min(), candidates.night.max() + 1)
-        runs = rules.consecutive or rules.block_nights > 1
+        runs = rules.consecutive or rules.block_nights > 1 or bool(np.isfinite(rules.nights_max))
         self.width = self.size + bins + (3 * self.nights.size if runs else 0)
         self.rows: list[Row] = []
         for together in overlaps(candidates):
@@ -127,6 +132,8 @@ class Model:
         for night in rules.fixed_nights:
             here = np.flatnonzero(candidates.night == night)
             self.rows.append((here, np.ones(here.size), 1.0, np.inf))
+        for some in rules.fixed_sets:
+            self.rows.append((np.array(some), np.ones(len(some)), 1.0, np.inf))
         if np.isfinite(rules.cost_max):
             most = rules.cost_max + 1e-9 * abs(rules.cost_max)
             self.rows.append((np.arange(self.size), candidates.cost, -np.inf, most))
@@ -134,7 +141,7 @@ class Model:
             self._run_rows()
 
     def _run_rows(self) -> None:
-        """Tie nights used to their candidates, to blocks, and to a single rise."""
+        """Tie nights used to their candidates, to blocks, to a single rise, and to their number."""
         length, count = self.rules.block_nights, self.nights.size
         z, s, r = self.size + self.bins + np.arange(3 * count).reshape(3, count)
         for i, night in enumerate(self.nights):
@@ -156,6 +163,8 @@ class Model:
                 self.rows.append((columns, weights, -np.inf, 0.0))  # z rises only where r says so
         if self.rules.consecutive:
             self.rows.append((r, np.ones(count), -np.inf, 1.0))
+        if np.isfinite(self.rules.nights_max):
+            self.rows.append((z, np.ones(count), -np.inf, self.rules.nights_max))
 
     def solve(
         self,

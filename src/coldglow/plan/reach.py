@@ -63,12 +63,12 @@ def greedy(
 ) -> Array | None:
     """Take the candidate of the largest rise in covered share per cost until all wanted bins are full.
 
-    Then drop what turned out not to be needed, dearest first. Knows no runs of nights and proves nothing:
-    None where it ends without a full cover that the rules allow.
+    Then drop what turned out not to be needed, dearest first. Knows no runs and numbers of nights and
+    proves nothing: None where it ends without a full cover that the rules allow.
 
     Source: greedy multi-cover, Dobson 1982, Math. Oper. Res. 7, 515.
     """
-    if rules.consecutive or rules.block_nights > 1:
+    if rules.consecutive or rules.block_nights > 1 or np.isfinite(rules.nights_max):
         return None
     free = allowed(candidates, rules)
     conflicts = overlaps(candidates)
@@ -76,6 +76,7 @@ def greedy(
     total = np.zeros_like(gain[0])
     price = np.maximum(candidates.cost, 1e-9)
     must = [np.flatnonzero(candidates.night == night) for night in rules.fixed_nights]
+    must += [np.array(some) for some in rules.fixed_sets]
     while True:
         open_nights = [here for here in must if not chosen[here].any()]
         covered = np.minimum(demand.share(total), 1.0)[wanted]
