@@ -14,10 +14,11 @@ from coldglow.detect.beam import Beam
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import nod_noise
+from coldglow.detect.systematics import systematic_errors
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.light.emission import photon_radiance_s_m2_sr
 from coldglow.light.lines import load_lines
-from coldglow.plan.goal import marginalise
+from coldglow.plan.goal import marginalise, temperature_error
 
 ARCSEC = math.pi / 648000.0
 BAND_M = (3.94e-6, 3.97e-6)
@@ -188,3 +189,20 @@ def test_snr_grows_with_the_root_of_the_time_and_halves_add(make):
     assert halves == pytest.approx(whole, rel=1e-12)
     one, four = (math.sqrt(marginalise(exposure.matrix[0] * t)[0, 0]) for t in (100.0, 400.0))
     assert four == pytest.approx(2.0 * one, rel=1e-9)
+
+
+def test_an_imager_tells_no_temperature_whatever_its_lines(make):
+    made = camera(make, band_m=(3.4e-6, 4.0e-6))
+    moments = make.moments_of(made, beam=box())
+    detail = expose_one(moments, LINES, 600.0, 3e15, make.grey, None, made, made.settings[0])
+    assert len(detail.lines) > 10
+    assert detail.temperature_share == pytest.approx(0.0)
+    assert temperature_error(marginalise(detail.matrix * 3600.0 + detail.prior)) == math.inf
+    errors = systematic_errors(
+        detail.lines.wavelength_m,
+        detail.line_information,
+        detail.temperature_slope,
+        np.zeros(len(detail.lines)),
+        made.operation,
+    )
+    assert errors.temperature_total_k == math.inf

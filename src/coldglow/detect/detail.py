@@ -34,7 +34,8 @@ class Detail:
     Lines (ndarray[line], those that were kept): `line_signal_e_s`, `line_transmission`, `line_information`
     (1/sigma² of ln of the line's flux per second, all else known; its root times the root of the time is
     the line's SNR), `temperature_share` (of the information on T when N is free; sums to 1, or is zero with
-    one line). `wanted` marks the goal's lines.
+    one line). `wanted` marks the goal's lines. `temperature_slope` is d ln(flux)/dT as far as the setting
+    tells lines apart: an imager sees one slope, the mean over the light.
 
     `variance_share` in the order of `exposure.NOISE_SOURCES`.
     """
@@ -107,6 +108,10 @@ def expose_one(
     signal = bench.nod.signal * rates[0]
     information = np.square(signal) * (windows.share.power(2) @ (time_share / counts.variance[0]))
     measured = information * bench.wanted
+    slope = bench.slope
+    if bench.pixels.step == 0.0:
+        light = rates[0] * bench.wanted
+        slope = np.full_like(slope, float(light @ slope) / float(light.sum()))
     return Detail(
         bench.pixels.centre_m,
         counts.lines[0],
@@ -119,11 +124,11 @@ def expose_one(
         float(readout_e2[0]),
         bench.lines,
         bench.wanted > 0.0,
-        bench.slope,
+        slope,
         rates[0],
         clear[0],
         information,
-        temperature_shares(measured, bench.slope),
+        temperature_shares(measured, slope),
         fisher(counts.derivatives, counts.variance, time_share)[0],
         prior,
         variance_shares(bench, counts)[0],
