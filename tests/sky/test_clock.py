@@ -115,6 +115,8 @@ def test_the_date_line():
     assert clock.night_start_tt(east, "2027-03-01") == pytest.approx(
         clock.night_start_tt(west, "2027-03-01"), abs=1e-5
     )
+    instants = clock.tt_from_iso("2027-03-01") + 3600.0 * np.arange(48)
+    assert np.array_equal(clock.night_numbers(east, instants), clock.night_numbers(west, instants))
     # a step over the line changes the date of one and the same night by a day
     before, after = Site(np.radians(179.999), 0.3, 0.0), Site(np.radians(-179.999), 0.3, 0.0)
     instant = np.array([clock.tt_from_iso("2027-03-01T10:00")])
