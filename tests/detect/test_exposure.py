@@ -12,7 +12,7 @@ import pytest
 from scipy.constants import c, h, k
 from scipy.signal import fftconvolve
 
-from coldglow.detect import exposure as module
+from coldglow.detect import bench
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import CONTINUUM_UNIT
@@ -132,7 +132,7 @@ def test_the_fast_path_is_the_slow_one(make, monkeypatch):
     )
     arguments = (LINES, 550.0, 1e15, make.grey, AIR, made, made.settings[0])
     fast = marginalise(expose_moments(moments, *arguments).matrix)
-    monkeypatch.setattr(module, "LINES_KEPT", 1.0)
+    monkeypatch.setattr(bench, "LINES_KEPT", 1.0)
     slow = np.array(
         [
             marginalise(expose_one(moments.take(np.array([i])), *arguments).matrix)
@@ -153,7 +153,7 @@ def test_dropped_lines_carry_a_thousandth_of_the_information(make, monkeypatch):
         arguments = (LINES, 500.0, 1e14, make.grey, AIR, made, made.settings[0])
         part = expose_one(moments, *arguments)
         with monkeypatch.context() as patch:
-            patch.setattr(module, "LINES_KEPT", 1.0)
+            patch.setattr(bench, "LINES_KEPT", 1.0)
             whole = expose_one(moments, *arguments)
         assert len(part.lines) < 0.25 * len(whole.lines)
         lost = 1 - marginalise(part.matrix)[(0, 1), (0, 1)] / marginalise(whole.matrix)[(0, 1), (0, 1)]

@@ -7,15 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from coldglow.describe.records import Continuum, Instrument, Setting
-from coldglow.detect.exposure import (
-    NOISE_SOURCES,
-    Moments,
-    continuum_prior,
-    count,
-    line_rates,
-    set_up,
-    variance_shares,
-)
+from coldglow.detect.bench import NOISE_SOURCES, Moments, set_up
+from coldglow.detect.counts import count, line_rates, variance_shares
+from coldglow.detect.exposure import continuum_prior
 from coldglow.detect.information import fisher
 from coldglow.detect.integration import Integrations
 from coldglow.detect.pixels import line_windows, profile_sigma
