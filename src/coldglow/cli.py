@@ -147,6 +147,20 @@ def run_nights(words: argparse.Namespace) -> Result:
     return nights(words.word)
 
 
+def add_fade(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `fade`."""
+    request_word(parser)
+    parser.add_argument("--years", nargs=2, type=int, metavar=("FIRST", "LAST"), help="both included")
+    parser.add_argument("--instrument", default="", metavar="NAME", help="one of the request's; default: first")
+
+
+def run_fade(words: argparse.Namespace) -> Result:
+    """Run `fade`."""
+    from coldglow.answers import fade
+
+    return fade(words.word, tuple(words.years) if words.years else None, words.instrument)
+
+
 def add_plan(parser: argparse.ArgumentParser) -> None:
     """Arguments of `plan`."""
     request_word(parser)
@@ -242,6 +256,13 @@ COMMANDS: dict[str, Command] = {
         "REQUEST.yaml",
         request_word,
         run_nights,
+    ),
+    "fade": Command(
+        "Is a colder planet still detectable, and until when?",
+        "coldglow fade examples/uranus-season.yaml --years 2027 2047",
+        "REQUEST.yaml",
+        add_fade,
+        run_fade,
     ),
     "draft": Command(
         "Start a request of my own",

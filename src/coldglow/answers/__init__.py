@@ -2,10 +2,11 @@
 
 from coldglow.answers.descriptions import check, draft, show
 from coldglow.answers.expose import expose
+from coldglow.answers.fade import fade
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
 from coldglow.answers.nights import nights
 from coldglow.answers.plan import plan
 from coldglow.answers.sky import sky
 
-__all__ = ["check", "draft", "expose", "glow", "hours", "nights", "plan", "show", "sky"]
+__all__ = ["check", "draft", "expose", "fade", "glow", "hours", "nights", "plan", "show", "sky"]

@@ -1,0 +1,147 @@
+"""The best night of each year: with that year's declination, distance, diameter and motion of the target."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coldglow.describe.records import Request, Use
+from coldglow.detect.exposure import expose_moments
+from coldglow.light.lines import load_lines
+from coldglow.plan.fade import InformationGrid, night_information
+from coldglow.plan.goal import marginalise
+from coldglow.plan.stretches import runs, table
+from coldglow.scenario import (
+    Sight,
+    State,
+    air_of,
+    air_over,
+    expose_sight,
+    follow,
+    moments_of,
+    sight,
+    state_of,
+    steps_of,
+)
+from coldglow.sky.clock import DAY_S, iso_from_tt, season_grid
+
+Array = NDArray[np.float64]
+
+STEP_S = 900.0
+EVERY = 10  # nights: the best of every tenth brings within 3 % of what the best of all does
+TEMPERATURES, COLUMNS = 16, 6  # of the grid; its error is below 0.3 % (tests/answers/test_fade.py)
+
+
+@dataclass(frozen=True, slots=True)
+class Night:
+    """One whole night of a use of an instrument, ready for any state of the ionosphere."""
+
+    date: str  # evening
+    seen: Sight
+    lte_fraction: float
+    duration_s: float  # that can be observed, in all
+    middle: str  # ISO, UTC: the middle one of its observable steps
+
+    def information(self, temperature_k: float, column_m2: float) -> float:
+        """Return 1/sigma² of ln N of the night before floors, its visits marginalised one by one."""
+        seen, instrument = self.seen, self.seen.use.instrument
+        exposure = expose_sight(seen, State(temperature_k, column_m2, self.lte_fraction))
+        assert exposure is not None
+        steps = steps_of(seen, exposure)
+        operation, longest_s = instrument.operation, instrument.limits.longest_visit_s
+        first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night, longest_s)
+        overhead_s = operation.acquisition_s + operation.standards_s
+        return float(table(steps, first, end, overhead_s, 0.0, exposure.prior).matrix[:, 0, 0].sum())
+
+
+def whole_year(request: Request) -> Request:
+    """Return the request with every night on offer, in the coarse steps of this module."""
+    dates = replace(request.dates, offered=(), forbidden=(), fixed=(), step_s=STEP_S)
+    return replace(request, dates=dates)
+
+
+def best_night(request: Request, use: Use, year: int, every: int = EVERY) -> Night | None:
+    """Return the best night of a calendar year, None where the target is never observable.
+
+    Best is what brings most information: the rate at the least airmass of a night times the time it offers,
+    compared over every tenth night.
+
+    Raises:
+        RangeError: the year lies outside the ephemeris, or the instrument cannot do it.
+
+    """
+    wide = whole_year(request)
+    grid = season_grid(f"{year}-01-01", f"{year}-12-31", STEP_S, use.instrument.place)
+    track = follow(wide, use, grid.take((grid.time_s // DAY_S).astype(np.int64) % every == 0))
+    index = np.flatnonzero(track.observable & (track.night >= 0))
+    if not index.size:
+        return None
+    nights, count = np.unique(track.night[index], return_counts=True)
+    by_airmass = index[np.lexsort((np.nan_to_num(track.airmass[index]), track.night[index]))]
+    highest = by_airmass[np.cumsum(count) - count]
+    target, instrument, state = request.target, use.instrument, state_of(request.target)
+    air = air_of(instrument.sky, request.conditions)
+    exposure = expose_moments(
+        moments_of(target, instrument, use.setting, track.take(highest), air),
+        load_lines(),
+        state.temperature_k,
+        state.shining_m2,
+        target.continuum,
+        air_over(instrument),
+        instrument,
+        use.setting,
+        request.goal.lines,
+    )
+    operation = instrument.operation
+    open_s = np.maximum(count * STEP_S - operation.acquisition_s - operation.standards_s, 0.0)
+    worth = marginalise(exposure.matrix + exposure.prior)[:, 0, 0] * exposure.shutter_share * open_s
+    best = int(np.argmax(worth))
+    chosen = track.take(track.night == nights[best])
+    seen = sight(wide, use, chosen)
+    inside = np.flatnonzero(seen.usable)
+    middle = float(chosen.grid.tt_s[inside[(inside.size - 1) // 2]])
+    return Night(
+        chosen.night_dates[int(nights[best])],
+        seen,
+        state.lte_fraction,
+        float(inside.size * STEP_S),
+        str(iso_from_tt(middle, "m")),
+    )
+
+
+def information_grid(
+    nights: list[Night | None],
+    temperature_k: Array,
+    column_m2: Array,
+    track_k: list[Array],
+    track_m2: Array,
+) -> InformationGrid:
+    """Return the information of each year's night over temperature and column.
+
+    The whole grid is worked out for the first night alone. What another year's night brings more or less
+    is worked out at some temperatures of that year and runs straight between them (held beyond them).
+
+    Args:
+        nights: of each year; None brings nothing.
+        temperature_k: axis of the grid, ascending.
+        column_m2: axis of the grid, ascending.
+        track_k: for each year the temperatures, ascending, at which its night is worked out.
+        track_m2: ndarray[year], the column there.
+
+    """
+    information = np.zeros((len(nights), temperature_k.size, column_m2.size))
+    reference = next((night for night in nights if night is not None), None)
+    if reference is None:
+        return InformationGrid(temperature_k, column_m2, information)
+    whole = np.array([[reference.information(t, n) for n in column_m2] for t in temperature_k])
+    grid = InformationGrid(temperature_k, column_m2, whole[None])
+    for i, night in enumerate(nights):
+        if night is None:
+            continue
+        exact = np.array([night.information(float(t), float(track_m2[i])) for t in track_k[i]])
+        ratio = exact / night_information(grid, 0, track_k[i], track_m2[i])
+        factor = np.exp(np.interp(1.0 / -temperature_k, 1.0 / -track_k[i], np.log(ratio)))
+        information[i] = whole * factor[:, None]
+    return InformationGrid(temperature_k, column_m2, information)
