@@ -231,6 +231,28 @@ def test_hard_cases_draw():
     look.as_png(figure, 50)
 
 
+def test_a_faint_line_over_a_bright_sky_stays_on_the_scale():
+    wave = np.linspace(3.9, 4.0, 300)
+    lines = 1e-4 * np.exp(-(((wave - 3.95) / 0.001) ** 2))
+    sky, sun, none = np.full(300, 1e4), np.full(300, 1e-9), wave[:0]
+    figure = spectrum.spectrum(wave, lines, sun, sky, none, none, np.array([3.95]), ["Q(1,0)"], np.ones(1))
+    low, high = figure.axes[0].get_ylim()
+    assert low < 0.1 * lines.max()
+    assert high > sky.max()
+    names = [text.get_text() for text in figure.axes[0].get_legend().get_texts()]
+    assert names == ["background", "reflected sunlight (off scale)", "H₃⁺ lines"]
+    dark = spectrum.spectrum(wave, 0 * wave, 0 * wave, 0 * wave, none, none, np.array([]), [], np.array([]))
+    look.as_png(dark, 50)
+
+
+def test_rates_that_hardly_differ_fill_the_scale_of_colours():
+    nights, hours = ["2027-11-01", "2027-11-02"], np.arange(22.0, 26.0)
+    flat = season.season_chart(nights, hours, np.linspace(8.0, 10.0, 8).reshape(2, 4))
+    steep = season.season_chart(nights, hours, np.linspace(1.0, 10.0, 8).reshape(2, 4))
+    assert flat.axes[0].images[0].get_clim() == (8.0, 10.0)
+    assert steep.axes[0].images[0].get_clim() == (0.0, 10.0)
+
+
 def test_frames_of_successive_nights_join_and_others_do_not():
     outlines = season._outlines([(3, 26.0, 28.0), (4, 26.5, 28.5), (9, 25.0, 27.0), (10, 28.0, 29.0)])
     assert [len(outline) for outline in outlines] == [8, 4, 4]

@@ -229,6 +229,14 @@ def test_chosen_rows_and_hidden_columns():
     assert "b" in csv_text(Result("x", {"x": chosen})).splitlines()[0]
 
 
+def test_a_table_for_files_only_is_not_printed():
+    kept = table(column("a", [1, 2]), caption="Files", rows=[])
+    result = Result("x", {"files": kept})
+    assert str(result) == ""
+    assert "<table>" not in result._repr_html_()
+    assert csv_text(result) == "a\n1\n2\n"
+
+
 def test_an_empty_table_prints_and_is_stored(tmp_path):
     result = Result("x", {"x": table(column("a", np.array([]), "K"))}, feasible=False)
     assert str(result) == ""

@@ -76,8 +76,8 @@ class Column:
 class Table:
     """Columns of equal length with a caption.
 
-    `rows` picks the rows that are printed (None: from the first on, as many as fit `Result.print`);
-    files hold all.
+    `rows` picks the rows that are printed (None: from the first on, as many as fit; an empty tuple: the
+    table is for files only); files hold all.
     """
 
     columns: tuple[Column, ...]

@@ -19,7 +19,7 @@ _HTML_ROWS = 60
 def result_text(result: Result, width: int = WIDTH, rows: int = ROWS) -> str:
     """Return sentences, tables, header values and warnings, in this order, folded to `width`."""
     blocks = [textwrap.fill(sentence, width) for sentence in result.sentences]
-    blocks += [table_text(table, width, rows) for table in result.tables.values() if len(table)]
+    blocks += [table_text(table, width, rows) for table in result.tables.values() if _printed_rows(table, 1)]
     if result.header:
         blocks.append("\n".join(_header_lines(result, width)))
     if result.warnings:
@@ -61,6 +61,7 @@ def table_text(table: Table, width: int = WIDTH, rows: int = ROWS) -> str:
 
 
 def _printed_rows(table: Table, rows: int) -> range | tuple[int, ...]:
+    """Return the rows to print; a table with none, empty or meant for files only, is left out."""
     return range(min(len(table), rows)) if table.rows is None else table.rows
 
 
@@ -104,7 +105,7 @@ def _panels(blocks: list[_Block], width: int) -> Iterator[list[_Block]]:
 def result_html(result: Result) -> str:
     """Return the result for a notebook: sentences, tables with scoped headings, header values, warnings."""
     parts = [f"<p>{html.escape(sentence)}</p>" for sentence in result.sentences]
-    parts += [table_html(table) for table in result.tables.values() if len(table)]
+    parts += [table_html(table) for table in result.tables.values() if _printed_rows(table, 1)]
     if result.header:
         rows = (
             f'<tr><th scope="row">{html.escape(entry.label or words.sentence_case(key))}</th>'

@@ -76,7 +76,7 @@ def _share_bar(bar: Axes, shares: Mapping[str, float]) -> None:
             color=colour,
             edgecolor=look.PAPER,
             linewidth=1,
-            label=f"{name} {words.percent(share)}",
+            label=f"{name} {_percent(share)}",
         )
         start += share
     bar.legend(
@@ -87,3 +87,7 @@ def _share_bar(bar: Axes, shares: Mapping[str, float]) -> None:
         handleheight=0.9,
         columnspacing=1.5,
     )
+
+
+def _percent(share: float) -> str:
+    return words.percent(share) if share >= 0.001 else "< 0.1 %"

@@ -146,14 +146,15 @@ def name_axes(axes: Axes, across: str, up: str) -> None:
 
 
 def powers_of_ten(axis: Axis) -> None:
-    """Write the decades of a logarithmic axis as powers (or plainly near 1), in the font of the figure."""
-    axis.set_major_formatter(lambda value, _: _power(value))
+    """Write the decades of a logarithmic axis plainly near 1, as powers elsewhere."""
+    axis.set_major_formatter(lambda value, _: decade(value))
     axis.set_minor_formatter(NullFormatter())
 
 
-def _power(value: float) -> str:
+def decade(value: float) -> str:
+    """Return a power of ten as text: ``0.001`` to ``10000``, else ``10⁻⁹``."""
     exponent = round(np.log10(value))
-    return words.short(value) if abs(exponent) < 3 else f"10{words.raised(exponent)}"
+    return words.short(value) if -4 < exponent < 5 else f"10{words.raised(exponent)}"
 
 
 def luminance(colour: str) -> float:

@@ -14,6 +14,8 @@ from numpy.typing import NDArray
 from coldglow.report import words
 from coldglow.report.figures import look
 
+_NARROW = 0.4  # rates that differ by less than this fill the scale of colours; others start at zero
+
 
 @look.styled
 def season_chart(
@@ -38,7 +40,9 @@ def season_chart(
     step = float(hour_utc[1] - hour_utc[0])
     bottom, top = float(hour_utc[0]) - step / 2, float(hour_utc[-1]) + step / 2
     main.set_facecolor(look.FAINT)
-    largest = float(np.nanmax(rate)) if np.isfinite(rate).any() else 1.0
+    seen = rate[np.isfinite(rate)]
+    largest = float(seen.max(initial=0.0)) or 1.0
+    smallest = float(seen.min(initial=largest))
     image = main.imshow(
         rate.T,
         origin="lower",
@@ -46,8 +50,8 @@ def season_chart(
         interpolation="nearest",
         extent=(-0.5, len(nights) - 0.5, bottom, top),
         cmap=look.GLOW,
-        vmin=0,
-        vmax=largest if largest > 0 else 1.0,
+        vmin=smallest if _NARROW * largest < smallest < largest else 0.0,
+        vmax=largest,
     )
     index = np.arange(len(nights))
     for edge in (dark_start_h, dark_end_h):

@@ -55,19 +55,22 @@ def spectrum(
         air.set_yticks([0, 0.5, 1], ["0", "50 %", "100 %"])
         air.tick_params(labelbottom=False)
         look.name_axes(air, "", "transmission of the air")
+    largest = max(float(np.nanmax(part)) for part in (signal, continuum, background)) or 1.0
+    floor = 0.03 * float(np.nanmax(signal)) or 1e-3 * largest
+    if floor / 30 < (sunlight := 0.3 * float(np.nanmedian(continuum))) < floor:
+        floor = sunlight
     for values, colour, name, dash in (
         (background, look.STONE, "background", look.DASHES[2]),
         (continuum, look.AMBER, "reflected sunlight", look.DASHES[1]),
         (signal, look.BLUE, "H₃⁺ lines", "-"),
     ):
         x, low, high = envelope(wavelength_um, values, span)
+        hidden = "" if high.max() > floor else " (off scale)"
+        low, high = np.maximum(low, floor / 10), np.maximum(high, floor / 10)  # zero has no logarithm
         main.fill_between(x, low, high, color=colour, linewidth=0, alpha=0.6)
-        main.plot(x, high, color=colour, linestyle=dash, linewidth=1, label=name)
+        main.plot(x, high, color=colour, linestyle=dash, linewidth=1, label=name + hidden)
     main.set_yscale("log")
     look.powers_of_ten(main.yaxis)
-    largest = max(float(np.nanmax(part)) for part in (signal, continuum, background))
-    faintest = min(0.03 * float(np.nanmax(signal)), 0.3 * float(np.nanmedian(continuum)) or np.inf)
-    floor = max(1e-5 * largest, faintest)
     main.set_ylim(floor, (largest / floor) ** 0.25 * largest)
     main.set_xlim(*span)
     look.name_axes(main, "wavelength in vacuum, as observed (µm)", "")

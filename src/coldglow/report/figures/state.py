@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -189,9 +189,10 @@ def error_ellipse(
 def _column_ticks(axes: Axes, column_m2: float) -> None:
     """Write the column at the marks of the logarithmic scale about it."""
     low, high = np.exp(axes.get_ylim()) * column_m2
+    write: Callable[[float], str] = look.decade
     if high < 30 * low:
-        marks = np.asarray(MaxNLocator(6).tick_values(low, high))
+        marks, write = np.asarray(MaxNLocator(6).tick_values(low, high)), words.number
     else:
         marks = 10.0 ** np.arange(np.floor(np.log10(low)), np.ceil(np.log10(high)) + 1)
     marks = marks[(marks > low) & (marks < high)]
-    axes.set_yticks(np.log(marks / column_m2), [words.number(mark, 2) for mark in marks])
+    axes.set_yticks(np.log(marks / column_m2), [write(mark) for mark in marks])
