@@ -1,7 +1,10 @@
 from __future__ import annotations
 
 import os
+import subprocess
+import sys
 from collections.abc import Iterator
+from pathlib import Path
 
 import pytest
 
@@ -116,10 +119,36 @@ def test_the_working_folder_is_never_moved(tmp_path, monkeypatch):
 
 
 def test_a_report_becomes_the_same_files_twice(tmp_path, invented_report):
-    first = report_files(invented_report())
-    assert report_files(invented_report()) == first
+    first = report_files(invented_report(few=True))
+    assert report_files(invented_report(few=True)) == first
     assert {"report.html", "figures/season.svg", "figures/season.pdf", "tables/hours.ecsv"} <= set(first)
     folder = write_folder(tmp_path / "plan", first)
     back = read_result(folder / "tables" / "hours.ecsv")
     assert len(back.table()) == 184
     assert back.header["temperature"].value == 480.0
+
+
+def test_another_process_writes_the_same_bytes(tmp_path):
+    script = f"""
+import hashlib, importlib.util, sys
+spec = importlib.util.spec_from_file_location("invented", {str(Path(__file__).with_name("conftest.py"))!r})
+invented = importlib.util.module_from_spec(spec)
+spec.loader.exec_module(invented)
+from coldglow.report.folder import report_files
+files = report_files(invented.make_report(few=True))
+for name, content in sorted(files.items()):
+    print(name, hashlib.sha256(content if isinstance(content, bytes) else content.encode()).hexdigest())
+"""
+    runs = [
+        subprocess.run(
+            [sys.executable, "-c", script],
+            env={**os.environ, "PYTHONHASHSEED": seed, "TZ": zone, "LC_ALL": "C"},
+            cwd=tmp_path,
+            capture_output=True,
+            text=True,
+            check=True,
+        ).stdout
+        for seed, zone in (("1", "UTC"), ("2", "Pacific/Auckland"))
+    ]
+    assert runs[0] == runs[1]
+    assert len(runs[0].splitlines()) == 1 + 2 * 3 + 1
