@@ -75,3 +75,17 @@ def test_the_nearest_name_is_suggested():
 def test_odd_names_are_not_found(name):
     with pytest.raises(NotFoundError):
         find.find(name, "target")
+
+
+def test_package_data_comes_before_the_checkout(tmp_path, monkeypatch):
+    monkeypatch.setattr(find, "files", lambda package: tmp_path / package)
+    assert find.shipped_folder("target").name == "targets"  # no data inside: the checkout
+    (tmp_path / "coldglow" / "data" / "targets").mkdir(parents=True)
+    assert find.shipped_folder("target") == tmp_path / "coldglow" / "data" / "targets"
+
+
+def test_a_folder_named_like_a_description_is_none(write, tmp_path):
+    (tmp_path / "saturn.yaml").mkdir()
+    write("other.txt", "")
+    assert find.find("saturn", "target").parent == find.shipped_folder("target")
+    assert "saturn" in find.names("target")

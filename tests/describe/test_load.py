@@ -3,9 +3,11 @@
 import math
 
 import pytest
+import yaml
 
 from coldglow.describe.load import load_any, load_instrument, load_request, load_target, names
-from coldglow.describe.records import Estimate, Instrument, Orbit, Request, Target
+from coldglow.describe.records import Estimate, Instrument, Orbit, Origin, Request, Target
+from coldglow.describe.resolved import resolved, resolved_text
 from coldglow.errors import DescriptionError, NotFoundError
 
 REQUEST = """format: coldglow-request/1
@@ -202,3 +204,28 @@ def test_a_tree_of_a_later_version_is_refused_also_where_it_is_extended(write):
     write("new.yaml", "format: coldglow-target/3\nextends: uranus\n")
     with pytest.raises(DescriptionError, match="written in version 3 of the format"):
         load_target(write("mine.yaml", "format: coldglow-target/1\nextends: ./new.yaml\n"))
+
+
+def test_an_atmosphere_of_ones_own_is_written_out_again(write):
+    write("air.csv", "")
+    text = "format: coldglow-instrument/1\nextends: echelle-8m\natmosphere: air.csv\n"
+    instrument = load_instrument(write("i.yaml", text))
+    again = load_instrument(write("again.yaml", resolved_text(instrument)))
+    assert again == instrument
+
+
+def test_an_instrument_needs_a_setting(write):
+    block = resolved(load_instrument("echelle-4m")) | {"settings": {}}
+    with pytest.raises(DescriptionError, match="settings: there is no setting; at least one"):
+        load_instrument(write("i.yaml", yaml.safe_dump(block)))
+
+
+def test_an_origin_that_knows_nothing_names_the_file():
+    assert Origin("x.yaml").locate("emission.column") == ("x.yaml", 1)
+
+
+def test_a_setting_is_known_by_its_name():
+    instrument = load_instrument("echelle-4m")
+    assert instrument.setting("r-branch") == instrument.settings[1]
+    with pytest.raises(KeyError):
+        instrument.setting("nothing")

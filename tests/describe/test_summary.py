@@ -29,6 +29,11 @@ def test_instruments():
     assert "off band 2.14 to 2.17 um" in rows["setting"]
 
 
+def test_a_goal_without_snr(repository):
+    rows = dict(summary(load_request(repository / "examples" / "uranus-space.yaml")))
+    assert rows["goal"] == "temperature to 5 K; column to 5 %; with probability 0.9"
+
+
 def test_a_request(repository):
     rows = summary(load_request(repository / "examples" / "uranus-two-sites.yaml"))
     assert [label for label, _ in rows].count("instrument") == 2

@@ -40,7 +40,7 @@ class Refusals(ValueError):
 class Block(BaseModel):
     """A block of a description: no unknown keys, and rules between its keys."""
 
-    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
+    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True, defer_build=True)
 
     def rules(self) -> Iterator[Refused]:
         """Yield every rule between keys that is broken (the keys themselves are right already)."""
@@ -78,8 +78,6 @@ def _in_range(
 def _span(low: str | None, high: str | None, above: str | None) -> str:
     if above is not None:
         return f"more than {above}" + (f", at most {high}" if high is not None else "")
-    if low is None or high is None:
-        return f"at least {low}" if high is None else f"at most {high}"
     return f"from {low} to {high}"
 
 

@@ -80,11 +80,7 @@ def names(kind: NamedKind) -> list[str]:
     """Return the names of all targets or instruments that a name would find, sorted."""
     found = set()
     for folder in search_folders(kind):
-        try:
-            paths = sorted(folder.glob("*.yaml"))
-        except OSError:
-            continue
-        found |= {path.stem for path in paths if _kind_of(path) == kind}
+        found |= {path.stem for path in folder.glob("*.yaml") if _kind_of(path) == kind}
     return sorted(found)
 
 
@@ -92,7 +88,7 @@ def is_file(path: Path) -> bool:
     """Return whether this is a file; a name that no file can have is none."""
     try:
         return path.is_file()
-    except (OSError, ValueError):
+    except OSError:  # a name too long, a folder closed to us
         return False
 
 

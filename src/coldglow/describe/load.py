@@ -123,7 +123,7 @@ def _request(tree: Tree, file: Path) -> Request:
     except DescriptionError as error:
         problems += error.problems
     instruments: dict[int, Instrument] = {}
-    for index, (key, node) in enumerate(_requested_instruments(tree)):
+    for index, key, node in _requested_instruments(tree):
         try:
             instruments[index] = _requested_instrument(tree, file, key, node)
         except DescriptionError as error:
@@ -157,15 +157,14 @@ def _requested_target(tree: Tree, file: Path) -> Target | None:
     return _target(assemble(path, "target"))
 
 
-def _requested_instruments(tree: Tree) -> Iterator[tuple[str, Node]]:
-    """Yield key path and node of every instrument that is given legibly."""
+def _requested_instruments(tree: Tree) -> Iterator[tuple[int, str, Node]]:
+    """Yield position, key path and node of every instrument that is named or described."""
     entries = tree.data.get("instruments", [])
     for index, entry in enumerate(entries if isinstance(entries, list) else [entries]):
         key = f"instruments.{index}" if isinstance(entries, list) else "instruments"
-        if isinstance(entry, dict):
-            yield f"{key}.instrument", entry.get("instrument", "")
-        elif isinstance(entry, str):
-            yield key, entry
+        node = entry.get("instrument") if isinstance(entry, dict) else entry
+        if isinstance(node, dict) or (isinstance(node, str) and node.strip()):
+            yield index, f"{key}.instrument" if isinstance(entry, dict) else key, node
 
 
 def _requested_instrument(tree: Tree, file: Path, key: str, node: Node) -> Instrument:

@@ -148,7 +148,8 @@ class _Builder:
         """Consume events up to the end of the root mapping; False when reading cannot go on."""
         stack: list[tuple[dict[str, Node] | list[Node], str]] = [(root, "")]
         key: str | None = None  # waiting for its value, in a mapping
-        for event in events:
+        while True:
+            event = next(events)  # the parser closes what it opened, or raises
             holder, path = stack[-1]
             if isinstance(event, yaml.MappingEndEvent | yaml.SequenceEndEvent):
                 stack.pop()
@@ -165,17 +166,16 @@ class _Builder:
                 if isinstance(holder, list):
                     self.tree.lines[child] = (self.tree.file, _line(event))
                     holder.append(node)
-                elif key is not None:
+                else:
+                    assert key is not None  # the branch above took it
                     holder[key] = node
                 key = None
                 if isinstance(node, dict | list):
                     if len(stack) == DEEPEST:
-                        self.complain(
-                            event, child, f"more than {DEEPEST} levels of nesting", "a flatter file"
-                        )
+                        what = f"more than {DEEPEST} levels of nesting"
+                        self.complain(event, child, what, "a flatter file")
                         return False
                     stack.append((node, child))
-        return True
 
     def take_key(self, event: Any, holder: dict[str, Node], path: str) -> str | None:
         """Return the key of the next entry; None when it is none and reading cannot go on."""
