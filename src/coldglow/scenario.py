@@ -9,17 +9,14 @@ matrix per second of open shutter. Everything that decides (which hours, how man
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, fields
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.constants import c
-from scipy.interpolate import RegularGridInterpolator
 
 from coldglow.describe.records import (
     Conditions,
     Instrument,
-    LongitudeSystem,
     Request,
     Setting,
     Site,
@@ -27,24 +24,21 @@ from coldglow.describe.records import (
     Target,
     Use,
 )
-from coldglow.detect.beam import Beam, Disk, join_beams, point_spread, see_disk
 from coldglow.detect.exposure import Exposure, Moments, expose_moments
+from coldglow.detect.season import beams
 from coldglow.light.atmosphere import Atmosphere, load_atmosphere
 from coldglow.light.atmosphere import validity_warnings as atmosphere_warnings
 from coldglow.light.emission import optical_depth_warnings, validity_warnings
 from coldglow.light.lines import load_lines
-from coldglow.light.shell import path_factor, view_of, visible_points
+from coldglow.light.shell import path_factor
 from coldglow.plan.stretches import Steps, runs
-from coldglow.sky.clock import TimeGrid, season_grid, tdb_from_tt
-from coldglow.sky.orientation import in_system_rad
+from coldglow.sky.clock import TimeGrid, season_grid
 from coldglow.sky.track import Track, make_track
 
 Array = NDArray[np.float64]
 
 MOMENT_SPACING_S = 1800.0  # information is interpolated between moments; tests measure what that costs
 MOMENTS_PER_TURN = 36  # with spots
-DATE_SPACING_S = 25 * 86400.0  # of the beam's table
-FEW = 100  # up to so many moments each is looked at by itself
 
 
 @dataclass(frozen=True, slots=True)
@@ -241,117 +235,6 @@ def moments_of(target: Target, instrument: Instrument, setting: Setting, track: 
         track.sun_distance_m,
         beams(target, instrument, setting, track, airmass, air.seeing_rad),
     )
-
-
-@dataclass(frozen=True, slots=True)
-class _Geometry:
-    """What the beam depends on; arrays of any one shape."""
-
-    diameter_rad: Array
-    latitude_rad: Array
-    longitude_rad: Array
-    pole_rad: Array
-    parallactic_rad: Array
-    airmass: Array
-
-
-def beams(
-    target: Target, instrument: Instrument, setting: Setting, track: Track, airmass: Array, seeing_rad: float
-) -> Beam:
-    """Return what the opening sees at every instant of a track.
-
-    For more than a hundred instants it is worked out on a grid over what it depends on (date, airmass; the
-    parallactic angle or the longitude only where they matter) and interpolated; the error is below 0.3 %
-    of the light (tests/test_scenario.py), with spots below 2 %.
-    """
-    geometry = _Geometry(
-        track.equatorial_diameter_rad,
-        track.sub_observer_latitude_rad,
-        longitude_for_spots_rad(target, track),
-        track.pole_angle_rad,
-        np.nan_to_num(track.parallactic_angle_rad),
-        airmass,
-    )
-    if airmass.size <= FEW:
-        return _look(target, instrument, setting, track, geometry, seeing_rad)
-    time_s = track.grid.time_s
-    dates = int(np.clip(np.ceil(np.ptp(time_s) / DATE_SPACING_S) + 1, 2, 8))
-    axes = [_axis(time_s, dates), _axis(airmass, 5)]
-    where = [time_s, airmass]
-    turning = instrument.opening.angle == "parallactic"
-    if turning:
-        axes.append(np.linspace(-np.pi, np.pi, 37))
-        where.append(np.angle(np.exp(1j * geometry.parallactic_rad)))
-    if target.emission.spots:
-        axes.append(np.linspace(0.0, 2.0 * np.pi, MOMENTS_PER_TURN * 2 + 1))
-        where.append(np.mod(geometry.longitude_rad, 2.0 * np.pi))
-    mesh = [part.ravel() for part in np.meshgrid(*axes, indexing="ij")]
-    zero = np.zeros_like(mesh[0])
-    at = _Geometry(
-        np.interp(mesh[0], time_s, geometry.diameter_rad),
-        np.interp(mesh[0], time_s, geometry.latitude_rad),
-        mesh[-1] if target.emission.spots else zero,
-        np.interp(mesh[0], time_s, np.unwrap(geometry.pole_rad)),
-        mesh[2] if turning else zero,
-        mesh[1],
-    )
-    table = _look(target, instrument, setting, track, at, seeing_rad)
-    shape, place = [axis.size for axis in axes], np.stack(where, axis=1)
-    return Beam(
-        *(
-            RegularGridInterpolator(axes, getattr(table, field.name).reshape(shape))(place)
-            for field in fields(Beam)
-        )
-    )
-
-
-def spot_system(target: Target, track: Track) -> LongitudeSystem:
-    """Return the longitude system in which the target's spots are fixed (the track's own without spots)."""
-    systems = {system.name: system for system in target.rotation.systems}
-    return systems[target.emission.spots[0].system] if target.emission.spots else track.system
-
-
-def longitude_for_spots_rad(target: Target, track: Track) -> Array:
-    """Return the sub-observer longitude in the system of the spots, ndarray[time]."""
-    tdb_s = tdb_from_tt(track.grid.tt_s) - track.distance_m / c
-    return in_system_rad(track.sub_observer_longitude_rad, track.system, spot_system(target, track), tdb_s)
-
-
-def _axis(value: Array, count: int) -> Array:
-    low, high = float(value.min()), float(value.max())
-    return np.linspace(low, high, count) if high > low else np.array([low, low + 1.0])
-
-
-def _look(
-    target: Target, instrument: Instrument, setting: Setting, track: Track, at: _Geometry, seeing_rad: float
-) -> Beam:
-    """Return the beam at each geometry, one by one."""
-    system = spot_system(target, track)
-
-    def one() -> Iterator[Beam]:
-        middle_m = 0.5 * (setting.band_m[0] + setting.band_m[1])
-        for i in range(at.airmass.size):
-            view = view_of(target.figure, float(at.latitude_rad[i]))
-            points = visible_points(
-                target.figure,
-                target.emission.spots,
-                float(at.latitude_rad[i]),
-                float(at.longitude_rad[i]),
-                system,
-            )
-            radius_rad = 0.5 * float(at.diameter_rad[i])
-            disk = Disk(
-                radius_rad,
-                radius_rad * view.outline_pole,
-                float(at.pole_rad[i]),
-                float(at.parallactic_rad[i]),
-            )
-            spread = point_spread(
-                instrument.image, instrument.telescope, middle_m, seeing_rad, float(at.airmass[i])
-            )
-            yield see_disk(points, disk, instrument.opening, instrument.operation, spread)
-
-    return join_beams(list(one()))
 
 
 def steps_of(seen: Sight, exposure: Exposure | None) -> Steps:

@@ -6,6 +6,7 @@ import numpy as np
 
 from coldglow.answers.expose import Look
 from coldglow.detect.beam import Disk, point_spread, slit_angle
+from coldglow.detect.season import longitude_for_spots_rad, spot_system
 from coldglow.light.shell import view_of
 from coldglow.plan.goal import correlation, marginalise
 from coldglow.report import words
@@ -15,7 +16,7 @@ from coldglow.report.figures.spectrum import spectrum
 from coldglow.report.figures.state import error_ellipse
 from coldglow.report.record import Picture, Section
 from coldglow.report.results import Result
-from coldglow.scenario import air_over, longitude_for_spots_rad, spot_system
+from coldglow.scenario import air_over
 
 ARCSEC_PER_RAD = 206264.80624709636
 
