@@ -140,6 +140,13 @@ def run_hours(words: argparse.Namespace) -> Result:
     return hours(words.word, length=words.length)
 
 
+def run_cover(words: argparse.Namespace) -> Result:
+    """Run `cover`."""
+    from coldglow.answers import cover
+
+    return cover(words.word)
+
+
 def run_nights(words: argparse.Namespace) -> Result:
     """Run `nights`."""
     from coldglow.answers import nights
@@ -249,6 +256,13 @@ COMMANDS: dict[str, Command] = {
         "REQUEST.yaml",
         add_hours,
         run_hours,
+    ),
+    "cover": Command(
+        "Which hours together cover a full rotation?",
+        "coldglow cover examples/uranus-season.yaml",
+        "REQUEST.yaml",
+        request_word,
+        run_cover,
     ),
     "nights": Command(
         "How many nights must I request?",

@@ -7,7 +7,7 @@ longitudes from b to b+1 times 360/n degrees. In one visit each bin has its own 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from dataclasses import replace as with_changes
 from typing import Literal, TypeAlias
 
@@ -129,30 +129,45 @@ def step_drift(steps: Steps) -> Array:
     return np.asarray(longitude_rate(steps) * steps.step_s)
 
 
-def gather(steps: Steps, weight: Array, first: Index, end: Index, overhead_s: float = 0.0) -> BinGains:
-    """Sum what candidates bring to each bin; `overhead_s` is lost at the start of each.
+class BinSums:
+    """Running sums of information and clock time on each bin, to read off any visit at once.
 
-    Args:
-        steps: information over time.
-        weight: ndarray[time, bin] from `central_weights` or `interest_weights`.
-        first: ndarray[candidate], first step.
-        end: ndarray[candidate], step after the last.
-        overhead_s: acquisition and standards.
-
+    Visits must lie within runs of observable steps, as those of `stretches.runs` do.
     """
-    lost = overhead_s / steps.step_s
-    clock = with_changes(steps, shutter_share=np.ones_like(steps.shutter_share))
-    seconds = RunningSums(clock, weight).window(first, end, lost)
-    matrix = np.stack(
-        [
-            RunningSums(steps, steps.matrix * weight[:, b, None, None]).window(first, end, lost)
-            for b in range(weight.shape[1])
-        ],
-        axis=1,
-    )
-    seconds = np.where(seconds > 1e-6, seconds, 0.0)  # of a running sum, rounding is what is left
-    served = seconds > 0.0
-    return BinGains(np.where(served[..., None, None], matrix, 0.0), seconds, served.astype(np.int64))
+
+    def __init__(self, steps: Steps, weight: Array, clock_weight: Array | None = None) -> None:
+        """Sum up over the observable steps.
+
+        Args:
+            steps: information over time.
+            weight: ndarray[time, bin] from `central_weights` or `interest_weights`.
+            clock_weight: ndarray[time, bin] that counts clock time; default: the same.
+
+        """
+        good = steps.observable & (steps.night >= 0)
+        self.place = np.append(0, np.cumsum(good))
+        self.step_s = steps.step_s
+        seen = with_changes(
+            steps, **{f.name: getattr(steps, f.name)[good] for f in fields(steps) if f.name != "step_s"}
+        )
+        clock = with_changes(seen, shutter_share=np.ones_like(seen.shutter_share))
+        self.seconds = RunningSums(clock, (weight if clock_weight is None else clock_weight)[good])
+        self.matrix = RunningSums(seen, seen.matrix[:, None] * weight[good][:, :, None, None])
+
+    def visits(self, first: Index, end: Index, overhead_s: float = 0.0) -> BinGains:
+        """Sum what visits of steps `first` ... `end`-1 bring; `overhead_s` is lost at the start of each."""
+        lost = overhead_s / self.step_s
+        first, end = self.place[first], self.place[end]
+        seconds = self.seconds.window(first, end, lost)
+        seconds = np.where(seconds > 1e-6, seconds, 0.0)  # of a running sum, rounding is what is left
+        served = seconds > 0.0
+        matrix = np.where(served[..., None, None], self.matrix.window(first, end, lost), 0.0)
+        return BinGains(matrix, seconds, served.astype(np.int64))
+
+
+def gather(steps: Steps, weight: Array, first: Index, end: Index, overhead_s: float = 0.0) -> BinGains:
+    """Sum what candidates (steps `first` ... `end`-1) bring to each bin: `BinSums` for a single use."""
+    return BinSums(steps, weight).visits(first, end, overhead_s)
 
 
 def spot_gain(
