@@ -21,6 +21,7 @@ _UNIT_WORDS = {
     "electron": "e⁻",
     "%": "%",
 }
+_SHORT_NAMES = {"snr": "SNR", "ra": "RA", "dec": "Dec", "icrs": "ICRS", "utc": "UTC", "lte": "LTE"}
 NOTHING = "–"
 
 
@@ -228,5 +229,5 @@ def listing(items: Sequence[str], last: str = "and") -> str:
 
 def sentence_case(name: str) -> str:
     """Return the name of a column or table as words: ``snr_one_night`` becomes ``SNR one night``."""
-    text = " ".join("SNR" if word == "snr" else word for word in name.replace("-", " ").split("_"))
+    text = " ".join(_SHORT_NAMES.get(word, word) for word in name.replace("-", " ").split("_"))
     return text[:1].upper() + text[1:]

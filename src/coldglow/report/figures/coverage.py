@@ -53,6 +53,7 @@ def coverage(
     )
     blank.axis("off")
     width = np.diff(bin_edges_deg)
+    reached = np.nan_to_num(reached)
     met = reached >= goal * (1 - 1e-9)
     bins.bar(
         bin_edges_deg[:-1][met], reached[met], width[met], align="edge", color=look.BLUE, edgecolor=look.PAPER
@@ -66,7 +67,7 @@ def coverage(
         color=look.AMBER,
         edgecolor=look.PAPER,
     )
-    top = 1.25 * max(float(np.nanmax(reached)), goal)
+    top = 1.25 * max(float(reached.max()), goal)
     bins.bar(
         bin_edges_deg[:-1][~reachable], np.full((~reachable).sum(), top), width[~reachable], align="edge",
         facecolor="none", edgecolor=look.STONE, hatch="////", linewidth=0,

@@ -35,8 +35,8 @@ def snr_against_time(
         main.fill_between(clock_h, snr_low, snr_high, color=look.BLUE, alpha=0.18, linewidth=0)
     main.plot(clock_h, snr, color=look.BLUE)
     main.set_xlim(0, float(clock_h[-1]))
-    top = np.nanmax(snr if snr_high is None else snr_high)
-    main.set_ylim(0, 1.12 * max(float(top), 0.0 if goal is None else goal, 1e-3))
+    top = float(np.nan_to_num(snr if snr_high is None else snr_high).max())
+    main.set_ylim(0, 1.12 * max(top, 0.0 if goal is None else goal, 1e-3))
     look.name_axes(main, "time on the clock, overheads included (h)", "SNR of the H₃⁺ lines")
     if goal is not None:
         _mark_goal(main, goal, time_to_goal_h, float(clock_h[-1]))
@@ -63,6 +63,8 @@ def _share_bar(bar: Axes, shares: Mapping[str, float]) -> None:
     bar.set_xlim(0, 1)
     bar.set_ylim(0, 1)
     bar.axis("off")
+    if not shares:
+        return
     bar.set_title("share of the variance")
     start = 0.0
     ranked = sorted(shares.items(), key=lambda item: -item[1])

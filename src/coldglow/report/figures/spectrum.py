@@ -125,7 +125,7 @@ def _name_lines(
     if not len(inside):
         return
     fraction = (line_um - span[0]) / (span[1] - span[0])
-    strength = np.sqrt(weight / weight[inside].max())
+    strength = np.sqrt(weight / (weight[inside].max() or 1.0))
     for line in inside:
         axes.plot(
             [fraction[line]] * 2, [1, 1 - 0.05 * strength[line]], color=look.INK, linewidth=0.8,

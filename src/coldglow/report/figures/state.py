@@ -177,6 +177,7 @@ def error_ellipse(
         )
     main.plot(temperature_k, 0, "+", color=look.INK, markersize=9)
     reach = np.maximum(2.6 * np.sqrt(np.diag(covariance)), 1.5 * np.asarray(systematic))
+    reach = np.maximum(reach, (1e-6, 1e-6 * temperature_k))
     main.set_xlim(temperature_k - reach[1], temperature_k + reach[1])
     main.set_ylim(-reach[0], reach[0])
     _column_ticks(main, column_m2)
