@@ -118,13 +118,15 @@ def add_expose(parser: argparse.ArgumentParser) -> None:
     """Arguments of `expose`."""
     request_word(parser)
     parser.add_argument("--at", metavar="TIME", help="the moment (UTC); default: the median observable step")
+    parser.add_argument("--for", dest="clock", metavar="DT", help="tell errors and limits after DT (bare: h)")
+    parser.add_argument("--instrument", default="", metavar="NAME", help="one that the request names")
 
 
 def run_expose(words: argparse.Namespace) -> Result:
     """Run `expose`."""
     from coldglow.answers import expose
 
-    return expose(words.word, at=words.at)
+    return expose(words.word, at=words.at, instrument=words.instrument, clock=words.clock)
 
 
 def add_hours(parser: argparse.ArgumentParser) -> None:
@@ -158,7 +160,7 @@ def add_fade(parser: argparse.ArgumentParser) -> None:
     """Arguments of `fade`."""
     request_word(parser)
     parser.add_argument("--years", nargs=2, type=int, metavar=("FIRST", "LAST"), help="both included")
-    parser.add_argument("--instrument", default="", metavar="NAME", help="one of the request's; default: first")
+    parser.add_argument("--instrument", default="", metavar="NAME", help="one that the request names")
 
 
 def run_fade(words: argparse.Namespace) -> Result:

@@ -2,40 +2,34 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline
 
-from coldglow.answers.inputs import NamePath, as_request, described, place_errors
+from coldglow.answers.edges import coldest_temperatures, refined, smallest_columns
+from coldglow.answers.inputs import NamePath, Quantity, as_request, described, in_si, place_errors
 from coldglow.answers.scenes import (
     choose_use,
     conditions_words,
     information_rate,
     unseen_words,
 )
+from coldglow.answers.visit import Need, Visit, needs
 from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.detail import Detail, expose_one
 from coldglow.detect.exposure import NOISE_SOURCES, Moments, expose_moments
-from coldglow.detect.integration import clock_time
 from coldglow.detect.systematics import CAUSES, SystematicErrors, systematic_errors
-from coldglow.errors import SaturationError
+from coldglow.errors import RangeError
 from coldglow.light.atmosphere import transmission_error
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import line_of_sight_column_m2
 from coldglow.plan.goal import (
     column_error,
     correlation,
-    marginalise,
-    required_snr,
     temperature_error,
-    time_to_error,
-    time_to_snr,
-    with_floor,
 )
-from coldglow.plan.limits import Edge, against_time, coldest_temperature, smallest_column
+from coldglow.plan.limits import Edge
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, Table, column, table
 from coldglow.scenario import (
@@ -53,13 +47,18 @@ from coldglow.scenario import (
 from coldglow.sky.clock import iso_from_tt, times_grid
 from coldglow.sky.track import Track
 
-EINSTEIN_A_ERROR = 0.03  # 2-3 % for the strong lines (data/h3p.md)
 SHUTTER_S = tuple(
     60.0 * minutes for minutes in (1, 2, 5, 10, 20, 30, 60, 120, 180, 300, 480, 720, 1200, 3000)
 )
-TEMPERATURES_K = 1.0 / np.linspace(1.0 / 150.0, 1.0 / 1500.0, 40)
-COLUMNS_M2 = np.geomspace(1e8, 1e19, 56)
 LINES_PRINTED = 12
+_SPOKEN = {
+    "lines": "the lines themselves",
+    "planet continuum": "the planet's continuum",
+    "sky": "the sky",
+    "telescope": "the telescope",
+    "dark": "the dark current",
+    "read-out": "the read-out",
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,8 +79,15 @@ class Look:
         """The moment as ISO text, UTC."""
         return str(iso_from_tt(self.track.grid.tt_s, "m")[0])
 
-    def rate(self, temperature_k: float, column_m2: float) -> float:
-        """Return 1/sigma² of ln N per second of open shutter in another state of the ionosphere."""
+    @property
+    def visit(self) -> Visit:
+        """The visit in the state of the description."""
+        detail = self.detail
+        share = float(detail.plan.shutter_share[0])
+        return Visit(detail.matrix, detail.prior, share, self.use.instrument.operation)
+
+    def visit_in(self, temperature_k: float, column_m2: float) -> Visit:
+        """Return the visit in another state of the ionosphere."""
         target, instrument = self.request.target, self.use.instrument
         exposure = expose_moments(
             self.moment,
@@ -94,7 +100,8 @@ class Look:
             self.use.setting,
             self.request.goal.lines,
         )
-        return float(marginalise(exposure.matrix + exposure.prior)[0, 0, 0])
+        share = float(exposure.shutter_share[0])
+        return Visit(exposure.matrix[0], exposure.prior, share, instrument.operation)
 
 
 def median_moment(scene: Scenario) -> int:
@@ -126,7 +133,6 @@ def look(request: Request, use: Use, track: Track) -> Look:
         detail.temperature_slope,
         _telluric_error(detail, instrument, moment),
         instrument.operation,
-        EINSTEIN_A_ERROR,
     )
     return Look(request, use, track, state, air, moment, detail, systematic)
 
@@ -147,13 +153,20 @@ def _telluric_error(detail: Detail, instrument: Instrument, moment: Moments) -> 
     return relative
 
 
-def expose(request: NamePath | Request, at: str | None = None, instrument: str = "") -> Result:
+def expose(
+    request: NamePath | Request,
+    at: str | None = None,
+    instrument: str = "",
+    clock: Quantity | None = None,
+) -> Result:
     """Return SNR and errors against time for one use of an instrument at one moment.
 
     Args:
         request: path or record.
         at: the moment, ISO, UTC; default: the observable step of the median information rate.
         instrument: which of the request's instruments; default: the first.
+        clock: time on the clock at which errors and limits are told (text without a unit: hours); default:
+            when all goals are reached, or one hour of open shutter.
 
     Returns:
         A result with tables ``time`` (``clock_time``, ``shutter_time``, ``snr``, errors, limits),
@@ -162,6 +175,7 @@ def expose(request: NamePath | Request, at: str | None = None, instrument: str =
     """
     record = as_request(request)
     use = choose_use(record, instrument)
+    clock_s = None if clock is None else in_si(clock, "hours", "time")
     with place_errors(*described(record)):
         if at is None:
             scene = scenario(record, use, watch(record, use))
@@ -176,7 +190,7 @@ def expose(request: NamePath | Request, at: str | None = None, instrument: str =
                     record, use, f"{record.target.name} cannot be observed then: {track.why_not}."
                 )
             chosen = "as asked"
-        return expose_of(look(record, use, track), chosen)
+        return expose_of(look(record, use, track), chosen, clock_s)
 
 
 def _nothing(request: Request, use: Use, sentence: str) -> Result:
@@ -185,48 +199,25 @@ def _nothing(request: Request, use: Use, sentence: str) -> Result:
     return Result("expose", {"time": empty}, header, [sentence], feasible=False)
 
 
-def expose_of(seen: Look, chosen: str = "") -> Result:
+def expose_of(seen: Look, chosen: str = "", clock_s: float | None = None) -> Result:
     """Return `expose` for a look that is at hand."""
-    operation, detail = seen.use.instrument.operation, seen.detail
-    matrix = marginalise(detail.matrix + detail.prior)
-    share = float(detail.plan.shutter_share[0])
-    goal = seen.request.goal
-    shutter_s = np.array(SHUTTER_S)
-    clock_s = clock_time(shutter_s, np.array(share), operation)
-    snr = np.sqrt(
-        with_floor(with_floor(shutter_s * matrix[0, 0], operation.visit_floor), operation.common_floor)
-    )
-    kelvin = temperature_error(matrix) / np.sqrt(shutter_s)
-    fraction = column_error(matrix) / np.sqrt(shutter_s)
-    coldest, smallest = _edges(seen, shutter_s)
-    times = table(
-        column("clock_time", clock_s / 3600.0, "h", digits=3),
-        column("shutter_time", shutter_s / 3600.0, "h", digits=3),
-        column("snr", snr, digits=3),
-        column("temperature_error", kelvin, "K", digits=3, infinite="none"),
-        column("column_error", fraction, digits=3, infinite="none", description="1 sigma, fraction"),
-        column("coldest_temperature", [edge.value for edge in coldest], "K", digits=3),
-        column("smallest_column", [edge.value for edge in smallest], "m-2", digits=3),
-        caption=(
-            "One visit against time (clock time with all overheads). Limits: the coldest temperature at the "
-            "given column and the smallest vertical column at the given temperature with "
-            f"SNR {words.number(seen.request.fade.significance)}"
-        ),
-    )
-    needs = _needs(seen, matrix)
-    header = _header(seen, chosen, matrix)
-    for name, (open_s, text) in needs.items():
-        need_s = (
-            float(clock_time(np.array(open_s), np.array(share), operation)) if np.isfinite(open_s) else np.inf
-        )
-        header[name] = Entry(need_s / 3600.0, "h", text=text.format(words.duration(need_s)))
-    sentences = [entry.text + "." for name, entry in header.items() if name in needs]
+    detail, visit, goal = seen.detail, seen.visit, seen.request.goal
+    wanted = needs(goal, visit, seen.systematic)
+    open_s, occasion = _occasion(visit, wanted, clock_s)
+    times_s = np.array(SHUTTER_S)
+    edges = _edges(seen, np.append(times_s, open_s))
+    header = _header(seen, chosen)
+    for need in wanted:
+        header[need.name] = Entry(need.clock_s / 3600.0, "h", text=need.text)
+    header |= _yields(seen, open_s, occasion, *(_exact(seen, edges, open_s)))
     strongest = int(np.argmax(detail.variance_share))
+    sentences = [f"{need.text}." for need in wanted]
+    sentences.append(_precision_sentence(seen, open_s, occasion))
+    sentences.append(_limit_sentence(seen, header, occasion))
     sentences.append(
         f"Most of the noise ({words.percent(float(detail.variance_share[strongest]))}) comes from "
-        f"{NOISE_SOURCES[strongest]}."
+        f"{_SPOKEN[NOISE_SOURCES[strongest]]}."
     )
-    sentences.extend(_precision_sentences(seen, matrix))
     if goal.snr is not None and goal.probability == 0.5:
         sentences.append(
             "At an expected SNR equal to the goal the measured one reaches it about half of the time."
@@ -234,7 +225,7 @@ def expose_of(seen: Look, chosen: str = "") -> Result:
     return Result(
         "expose",
         {
-            "time": times,
+            "time": _times_table(seen, times_s, edges),
             "lines": _lines_table(detail),
             "noise": table(column("source", NOISE_SOURCES), column("variance_share", detail.variance_share)),
             "systematics": _systematics_table(seen.systematic),
@@ -242,113 +233,144 @@ def expose_of(seen: Look, chosen: str = "") -> Result:
         },
         header,
         sentences,
-        feasible=all(np.isfinite(open_s) for open_s, _ in needs.values()),
+        feasible=all(np.isfinite(need.open_s) for need in wanted),
     )
 
 
-def _needs(seen: Look, matrix: NDArray[np.float64]) -> dict[str, tuple[float, str]]:
-    """Return for each goal the open-shutter time that reaches it and the words around it."""
-    goal, operation, systematic = seen.request.goal, seen.use.instrument.operation, seen.systematic
-    needs = {}
-    if goal.snr is not None:
-        wanted = required_snr(goal.snr, goal.probability)
-        open_s = float(time_to_snr(wanted, matrix[0, 0], operation.visit_floor, operation.common_floor))
-        text = f"SNR {words.number(goal.snr)} is reached in {{}}"
-        if goal.probability != 0.5:
-            text += f" with probability {words.probability(goal.probability)}"
-            text += f" (expected SNR {words.number(wanted)})"
-        if not np.isfinite(open_s):
-            text = f"SNR {words.number(goal.snr)} is never reached: the floors end at {_asymptote(seen)}"
-        needs["time_to_goal"] = (open_s, text)
-    for name, wanted_error, one_second, fixed, unit in (
-        (
-            "temperature",
-            goal.temperature_error_k,
-            temperature_error(matrix),
-            systematic.temperature_total_k,
-            "K",
-        ),
-        ("column", goal.column_error, column_error(matrix), systematic.column_total, ""),
-    ):
-        if wanted_error is None:
-            continue
-        scale, symbol = (1.0, " K") if unit else (100.0, " %")
-        shown = f"{words.number(scale * wanted_error)}{symbol}"
-        open_s = float(time_to_error(wanted_error, one_second))
-        text = f"A {name} to ± {shown} (random) is reached in {{}}"
-        if not np.isfinite(open_s):
-            text = f"A {name} to ± {shown} is never reached: these lines alone do not give it"
-        elif wanted_error < fixed:
-            text += (
-                f", but the systematic error of ± {words.number(scale * fixed, 2)}{symbol} is larger than "
-                "that and no time lowers it"
+def _occasion(visit: Visit, wanted: tuple[Need, ...], clock_s: float | None) -> tuple[float, str]:
+    """Return the open shutter at which errors and limits are told, and its words."""
+    if clock_s is not None:
+        open_s = float(visit.open_s(clock_s))
+        if not open_s > 0.0:
+            raise RangeError(
+                f"{words.duration(clock_s)} on the clock leave no open shutter: acquisition and standard "
+                f"stars alone take {words.duration(float(visit.clock_s(0.0)))}"
             )
-        needs[f"time_to_{name}_error"] = (open_s, text)
-    return needs
+        return open_s, f"in {words.duration(clock_s)}"
+    finite = [need.open_s for need in wanted if np.isfinite(need.open_s)]
+    if finite:
+        return max(finite), f"in {words.duration(float(visit.clock_s(max(finite))))}"
+    return 3600.0, "in one hour of open shutter"
 
 
-def _asymptote(seen: Look) -> str:
-    operation = seen.use.instrument.operation
-    floor = float(np.hypot(operation.visit_floor, operation.common_floor))
-    return f"SNR {words.number(1.0 / floor)}" if floor > 0.0 else "nothing, as no line's light arrives"
-
-
-def _edges(seen: Look, shutter_s: NDArray[np.float64]) -> tuple[tuple[Edge, ...], tuple[Edge, ...]]:
+def _edges(seen: Look, open_s: NDArray[np.float64]) -> tuple[list[Edge], list[Edge]]:
     """Return coldest temperature and smallest column against time, at the significance of the request."""
-    operation = seen.use.instrument.operation
-    floor2 = operation.visit_floor**2 + operation.common_floor**2
-    wanted = seen.request.fade.significance**2
-    rest = 1.0 - wanted * floor2
-    information = wanted / rest if rest > 0.0 else np.inf
-    kelvin, by_temperature = _until_saturation(lambda t: seen.rate(t, seen.state.column_m2), TEMPERATURES_K)
-    column_m2, by_column = _until_saturation(lambda n: seen.rate(seen.state.temperature_k, n), COLUMNS_M2)
-    in_temperature = CubicSpline(1.0 / kelvin[::-1], np.log(by_temperature[::-1]))
-    in_column = CubicSpline(np.log(column_m2), np.log(by_column))
+    state, snr = seen.state, seen.request.fade.significance
     return (
-        against_time(
-            lambda measure, needed: coldest_temperature(measure, needed, high_k=float(kelvin[-1])),
-            lambda t: np.exp(in_temperature(1.0 / t)),
-            information,
-            shutter_s,
+        coldest_temperatures(lambda kelvin: seen.visit_in(kelvin, state.column_m2), snr, open_s),
+        smallest_columns(lambda column_m2: seen.visit_in(state.temperature_k, column_m2), snr, open_s),
+    )
+
+
+def _exact(seen: Look, edges: tuple[list[Edge], list[Edge]], open_s: float) -> tuple[Edge, Edge]:
+    """Return the last edges solved again without interpolation, so that they give the SNR exactly."""
+    state, needed = seen.state, seen.visit.demanded(seen.request.fade.significance)
+
+    def at_temperature(kelvin: float) -> float:
+        return float(seen.visit_in(kelvin, state.column_m2).yields(open_s)[0, 0])
+
+    def at_column(column_m2: float) -> float:
+        return float(seen.visit_in(state.temperature_k, column_m2).yields(open_s)[0, 0])
+
+    coldest, smallest = edges
+    return refined(coldest[-1], at_temperature, needed), refined(smallest[-1], at_column, needed)
+
+
+def _times_table(seen: Look, open_s: NDArray[np.float64], edges: tuple[list[Edge], list[Edge]]) -> Table:
+    visit, (coldest, smallest) = seen.visit, edges
+    matrix, count = visit.yields(open_s), open_s.size
+    return table(
+        column("clock_time", visit.clock_s(open_s) / 3600.0, "h", digits=3),
+        column("shutter_time", open_s / 3600.0, "h", digits=3),
+        column("snr", visit.snr(open_s), digits=3),
+        column("temperature_error", temperature_error(matrix), "K", digits=3, infinite="none"),
+        column(
+            "column_error", column_error(matrix), digits=3, infinite="none", description="1 sigma, fraction"
         ),
-        against_time(
-            lambda measure, needed: smallest_column(
-                measure, needed, float(column_m2[0]), float(column_m2[-1])
-            ),
-            lambda n: np.exp(in_column(np.log(n))),
-            information,
-            shutter_s,
+        column("coldest_temperature", [edge.value for edge in coldest[:count]], "K", digits=3),
+        column("smallest_column", [edge.value for edge in smallest[:count]], "m-2", digits=3),
+        caption=(
+            "One visit against time (clock time with all overheads). Limits: the coldest temperature at the "
+            "given column and the smallest vertical column at the given temperature that are expected with "
+            f"SNR {words.short(seen.request.fade.significance)}"
         ),
     )
 
 
-def _until_saturation(
-    rate: Callable[[float], float], nodes: NDArray[np.float64]
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Return the nodes (ascending, ever brighter) at which the detector does not saturate, and the rates."""
-    rates = []
-    for node in nodes:
-        try:
-            rates.append(rate(float(node)))
-        except SaturationError:
-            break
-    return nodes[: len(rates)], np.maximum(rates, np.finfo(float).tiny)
+def _yields(seen: Look, open_s: float, occasion: str, coldest: Edge, smallest: Edge) -> dict[str, Entry]:
+    """Return the headline numbers of one time, with their systematic errors."""
+    visit, figure = seen.visit, seen.request.target.figure
+    matrix, snr = visit.yields(open_s), words.short(seen.request.fade.significance)
+    kelvin, percent = _errors(seen, open_s)
+    faintest = edge_words(smallest, "m-2", 3)
+    if smallest.kind != "none":
+        along = float(line_of_sight_column_m2(figure, smallest.value))
+        faintest += f" vertical, {words.quantity(along, 'm-2')} along the line of sight"
+    return {
+        "shutter_time": Entry(open_s / 3600.0, "h", label=f"open shutter {occasion}", digits=3),
+        "snr": Entry(float(visit.snr(open_s)), label=f"SNR {occasion}", digits=3),
+        "temperature_error": Entry(float(temperature_error(matrix)), "K", text=kelvin, label="error of T"),
+        "column_error": Entry(float(column_error(matrix)), text=percent, label="error of N, T free"),
+        "correlation": Entry(float(correlation(matrix)), label="correlation of ln N and T"),
+        "coldest_temperature": Entry(
+            coldest.value, "K", label=f"coldest T at this N, SNR {snr}", text=edge_words(coldest, "K", 4)
+        ),
+        "smallest_column": Entry(
+            smallest.value, "m-2", label=f"smallest N at this T, SNR {snr}", text=faintest
+        ),
+    }
 
 
-def _precision_sentences(seen: Look, matrix: NDArray[np.float64]) -> list[str]:
-    if not np.isfinite(temperature_error(matrix)):
-        return [
-            "These lines give no temperature: they rise from one upper energy only, so its error is infinite."
-        ]
-    return [
-        f"The errors of temperature and column are correlated by "
-        f"{words.number(float(correlation(matrix)), 2)}; the systematic errors beside the random ones are ± "
-        f"{words.number(seen.systematic.temperature_total_k, 2)} K and ± "
-        f"{words.percent(seen.systematic.column_total)} (column, temperature free)."
-    ]
+def edge_words(edge: Edge, unit: str, digits: int = 3) -> str:
+    """Return the edge of detection in words."""
+    if edge.kind == "none":
+        return f"none up to {words.quantity(edge.high, unit, digits)}"
+    text = words.quantity(edge.value, unit, digits)
+    return f"{text} or less" if edge.kind == "below" else text
 
 
-def _header(seen: Look, chosen: str, matrix: NDArray[np.float64]) -> dict[str, Entry]:
+def _errors(seen: Look, open_s: float) -> tuple[str, str]:
+    """Return the errors of temperature and column (T free) in words, random and systematic."""
+    matrix, fixed = seen.visit.yields(open_s), seen.systematic
+
+    def both(random: float, systematic: float, unit: str) -> str:
+        if not np.isfinite(random):
+            return "not measured: these lines rise from one upper energy"
+        first, second = words.quantity(random, unit, 2), words.quantity(systematic, unit, 2)
+        return f"± {first} (random), ± {second} (systematic)"
+
+    return (
+        both(float(temperature_error(matrix)), fixed.temperature_total_k, "K"),
+        both(100.0 * float(column_error(matrix)), 100.0 * fixed.column_total, "%"),
+    )
+
+
+def _limit_sentence(seen: Look, header: dict[str, Entry], occasion: str) -> str:
+    snr, state = words.short(seen.request.fade.significance), seen.state
+    column_words = words.quantity(state.column_m2, "m-2")
+    return (
+        f"Detection limits {occasion} (SNR {snr} expected): at a vertical column of {column_words} the "
+        f"coldest temperature is {header['coldest_temperature']}; at {words.quantity(state.temperature_k, 'K')} the "
+        f"smallest column is {header['smallest_column']}."
+    )
+
+
+def _precision_sentence(seen: Look, open_s: float, occasion: str) -> str:
+    known = (
+        f"at a given temperature the column has a random error of "
+        f"{words.percent(1.0 / float(seen.visit.snr(open_s)))} and a systematic one of "
+        f"{words.percent(seen.systematic.fixed_total)}"
+    )
+    if not np.isfinite(temperature_error(seen.visit.yields(open_s))):
+        return (
+            "These lines give no temperature: they rise from one upper energy only, so its error is "
+            f"infinite; {known} {occasion}."
+        )
+    kelvin, percent = _errors(seen, open_s)
+    return f"Known {occasion}: the temperature to {kelvin}, the column to {percent}; {known}."
+
+
+def _header(seen: Look, chosen: str) -> dict[str, Entry]:
     track, plan, operation = seen.track, seen.detail.plan, seen.use.instrument.operation
     beam, figure = seen.moment.beam, seen.request.target.figure
     on_source = float(plan.shutter_share[0]) * (operation.on_fraction if operation.nod == "off-slit" else 1.0)
@@ -380,11 +402,12 @@ def _header(seen: Look, chosen: str, matrix: NDArray[np.float64]) -> dict[str, E
         "well_fill": Entry(float(plan.well_fill[0]), digits=2),
         "on_source_fraction": Entry(on_source, digits=3, label="on-source share of the clock"),
         "variance": Entry(noise, label="share of the variance"),
-        "information_rate": Entry(float(matrix[0, 0]), "s-1", label="1/σ² of ln N per open second"),
         "systematic_column": Entry(
             seen.systematic.fixed_total, label="systematic error of N at this T", digits=2
         ),
-        "systematic_temperature": Entry(seen.systematic.temperature_total_k, "K", digits=2),
+        "systematic_temperature": Entry(
+            seen.systematic.temperature_total_k, "K", digits=2, label="systematic error of T"
+        ),
     }
 
 
@@ -401,9 +424,15 @@ def _lines_table(detail: Detail) -> Table:
         column("signal", detail.line_signal_e_s, "electron s-1", digits=3),
         column("snr_one_hour", hour, digits=3, description="in one hour of open shutter"),
         column(
-            "temperature_share", detail.temperature_share, digits=2, description="of the information on T"
+            "temperature_share",
+            detail.temperature_share,
+            digits=2,
+            description="of the information on T, column free",
         ),
-        caption=f"The {best.size} lines of {len(lines)} that count most, one hour of open shutter",
+        caption=(
+            f"The {best.size} lines of {len(lines)} that count most, one hour of open shutter. The last "
+            "column is each line's share of the information on the temperature (column free)"
+        ),
         rows=best.tolist(),
     )
 
@@ -413,7 +442,7 @@ def _systematics_table(errors: SystematicErrors) -> Table:
         column("cause", CAUSES),
         column("column_at_this_temperature", errors.fixed, digits=2, infinite="none"),
         column("column", errors.column, digits=2, infinite="none"),
-        column("temperature", errors.temperature_k, "K", digits=2, infinite="none"),
+        column("temperature", np.round(errors.temperature_k, 9), "K", digits=2, infinite="none"),
         caption="Errors that no exposure time lowers, 1 sigma",
     )
 

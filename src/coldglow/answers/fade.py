@@ -8,8 +8,8 @@ from itertools import groupby
 import numpy as np
 from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
-from scipy.optimize import brentq
 
+from coldglow.answers.edges import refined
 from coldglow.answers.inputs import NamePath, as_request, described, place_errors
 from coldglow.answers.scenes import choose_use, conditions_words
 from coldglow.answers.seasons import (
@@ -48,7 +48,6 @@ MAP_TEMPERATURES, MAP_COLUMNS = 40, 25
 MAP_SPAN = 10.0  # the map reaches from a tenth to ten times the column of the law
 YEAR_S = 365.25 * 86400.0
 GLOW_NODES = 100
-POLISH = 0.02  # relative span about the interpolated limit in which the exact one is looked for
 
 
 @dataclass(frozen=True, slots=True)
@@ -234,12 +233,7 @@ def _coldest(
     if near.kind != "found":
         return near
 
-    def lacking(inverse_k: float) -> float:
-        return float(np.log(night.information(1.0 / inverse_k, column_m2) / needed))
-
-    cold, hot = 1.0 / ((1.0 - POLISH) * near.value), 1.0 / ((1.0 + POLISH) * near.value)
-    root = brentq(lacking, hot, cold, xtol=1e-300, rtol=1e-13)
-    return replace(near, value=1.0 / float(root))
+    return refined(near, lambda kelvin: night.information(kelvin, column_m2), needed)
 
 
 def fade_of(found: Fading) -> Result:
