@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import combinations
 from math import comb
 from typing import TypeAlias
@@ -38,13 +38,20 @@ class _Histories:
     """Common weather for all sets that are compared, so that their difference is not noise."""
 
     def __init__(
-        self, candidates: Candidates, gain: Array, demand: Demand, rules: Rules, weather: Weather
+        self,
+        candidates: Candidates,
+        gain: Array,
+        demand: Demand,
+        rules: Rules,
+        weather: Weather,
+        day: Array,
+        factors: Array | None,
     ) -> None:
         few = Weather(
             weather.clear_fraction, weather.correlation, min(weather.trials, SCORE_TRIALS), weather.seed
         )
         self.candidates, self.gain, self.demand, self.rules = candidates, gain, demand, rules
-        self.weight, self.chance, _ = drawn(candidates.night, few, CHOOSING)
+        self.weight, self.chance, _ = drawn(day, few, CHOOSING, factors)
 
     def total(self, chosen: Index) -> Array:
         return np.tensordot(self.weight[:, chosen], self.gain[chosen], axes=1)
@@ -64,11 +71,10 @@ class _Histories:
         total = self.total(chosen)
         before, best = self.score(total), None
         for each in pool:
-            if not self.fits(np.append(chosen, each)):
-                continue
             after = self.score(total + np.multiply.outer(self.weight[:, each], self.gain[each]))
             rise = (after - before) / max(float(self.candidates.cost[each]), 1e-9)
-            if rise > 1e-12 and (best is None or rise > best[2] * (1.0 + 1e-9)):
+            better = rise > 1e-12 and (best is None or rise > best[2] * (1.0 + 1e-9))
+            if better and self.fits(np.append(chosen, each)):
                 best = int(each), after, rise
         return None if best is None else best[:2]
 
@@ -80,12 +86,15 @@ def robust_set(
     rules: Rules,
     weather: Weather,
     base: Index | None = None,
+    day: Array | None = None,
+    factors: Array | None = None,
 ) -> RobustSet:
     """Set within the rules (a limit on cost among them) with the highest probability of reaching all goals.
 
     Where the sets are few all are compared. Otherwise candidates are added to the base (the proven cover)
     one at a time, the largest rise per cost first, and then each one added is exchanged for any other that
-    does better, until no exchange does: a heuristic that may miss the best set. Sets are compared in
+    does better, until no exchange does: a heuristic that may miss the best set, and that adds nothing where
+    nights come in blocks only. What the rules fix is taken first. Sets are compared in
     common histories; the probability returned comes from fresh ones, because the winner of a comparison
     looks too good in the histories that chose it.
 
@@ -96,12 +105,19 @@ def robust_set(
         rules: limits; `cost_max` must be finite.
         weather: chain, trials and seed.
         base: candidates that are in the set anyway.
+        day: ndarray[candidate], of the weather, from `chain_day`; default: the candidates' nights.
+        factors: ndarray[trial, candidate] from `scatter_factors`; the first half serves to choose, the
+            second to judge.
 
     """
     if not np.isfinite(rules.cost_max):
         raise ValueError("a robust set needs a limit on its cost")
     kept = np.zeros(0, dtype=np.int64) if base is None else np.asarray(base, dtype=np.int64)
-    histories = _Histories(candidates, gain, demand, rules, weather)
+    day = candidates.night.astype(float) if day is None else day
+    some, others = (None, None) if factors is None else np.array_split(factors, 2)
+    histories = _Histories(
+        candidates, gain, demand, rules, weather, day, None if some is None else some[:SCORE_TRIALS]
+    )
     free = np.setdiff1d(np.flatnonzero(allowed(candidates, rules)), kept)
     order = np.argsort(candidates.start_s[free], kind="stable")
     free = free[order]
@@ -117,7 +133,8 @@ def robust_set(
     chosen = chosen[np.lexsort((candidates.place[chosen], candidates.start_s[chosen]))]
     probability, error = 0.0, 0.0
     if chosen.size:
-        probability, error = success(gain[chosen], demand, candidates.night[chosen], weather, JUDGING)
+        scatter = None if others is None else others[:, chosen]
+        probability, error = success(gain[chosen], demand, day[chosen], weather, JUDGING, scatter)
     return RobustSet(chosen, added, float(candidates.cost[chosen].sum()), probability, error, method)
 
 
@@ -135,13 +152,23 @@ def _all_sets(histories: _Histories, kept: Index, free: Index, largest: int) -> 
 
 
 def _grow(histories: _Histories, kept: Index, free: Index) -> Index:
+    """Add the fixed, then what helps most; then exchange what was added freely while that helps."""
+    rules, night = histories.rules, histories.candidates.night
+    must = [np.flatnonzero(night == each) for each in rules.fixed_nights]
+    must += [np.array(some) for some in rules.fixed_sets]
+    histories.rules = replace(rules, fixed_nights=(), fixed_sets=())  # hold from the first step on
     added = np.zeros(0, dtype=np.int64)
+    for here in must:
+        if not np.isin(here, np.append(kept, added)).any():
+            found = histories.best_addition(np.append(kept, added), np.intersect1d(here, free))
+            added = added if found is None else np.append(added, found[0])
+    fixed = added.size
     while (found := histories.best_addition(np.append(kept, added), np.setdiff1d(free, added))) is not None:
         added = np.append(added, found[0])
     improved = True
     while improved:
         improved = False
-        for i in range(added.size):
+        for i in range(fixed, added.size):
             rest = np.delete(added, i)
             now = histories.score(histories.total(np.append(kept, added)))
             found = histories.best_addition(np.append(kept, rest), np.setdiff1d(free, added))

@@ -108,23 +108,23 @@ def drawn(
     """Yield of each unit in each history ndarray[history, unit] (0 = cloudy), chances, and whether exact.
 
     Args:
-        day: ndarray[unit], any order.
+        day: ndarray[unit], any order; several places by `chain_day`, nan where it is always clear.
         weather: chain, trials and seed.
         stream: which of the seed's generators to use.
         factors: ndarray[trial, unit] from `scatter_factors`; None = a clear unit yields what was planned.
 
     """
-    day = np.asarray(day)
-    order = np.argsort(day, kind="stable")
+    day = np.asarray(day, dtype=float)
+    order = np.argsort(day, kind="stable")[: np.isfinite(day).sum()]  # nan stands last
     chain = weather.clear_fraction, weather.correlation
     every = all_histories(day[order], *chain) if factors is None else None
     if every is None:
         trials = weather.trials if factors is None else factors.shape[0]
-        clear = simulate(day[order], *chain, trials, weather.generator(stream))
+        clear = simulate(day[order], *chain, trials, weather.generator(stream))[:, : order.size]
         chance = np.full(trials, 1.0 / trials)
     else:
         clear, chance = every
-    weight = np.empty(clear.shape)
+    weight = np.ones((chance.size, day.size))
     weight[:, order] = clear
     return weight if factors is None else weight * factors, chance, every is not None
 
@@ -142,7 +142,7 @@ def success(
     Args:
         gain: ndarray[unit, bin] or ndarray[unit, bin, 2, 2] when clear.
         demand: goal per bin.
-        day: ndarray[unit], any order.
+        day: ndarray[unit], any order; several places by `chain_day`, nan where it is always clear.
         weather: chain, trials and seed.
         stream: which of the seed's generators to use.
         factors: ndarray[trial, unit] from `scatter_factors`, natural scatter; None = none.
@@ -152,11 +152,18 @@ def success(
         the exact distribution and the width of its bounds.
 
     """
-    day = np.asarray(day)
+    day = np.asarray(day, dtype=float)
     if isinstance(demand, Amount) and gain.shape[1] == 1 and factors is None:
-        order = np.argsort(day, kind="stable")
+        certain = np.isnan(day)
+        order = np.argsort(day, kind="stable")[: (~certain).sum()]
+        wanted = float(demand.demand[0])
+        left = wanted - float(gain[certain, 0].sum())
         low, high = probability_of_sum(
-            gain[order, 0], float(demand.demand[0]), day[order], weather.clear_fraction, weather.correlation
+            gain[order, 0],
+            left if left > (1.0 - REACHED) * wanted else 0.0,
+            day[order],
+            weather.clear_fraction,
+            weather.correlation,
         )
         return low, high - low
     weight, chance, exact = drawn(day, weather, stream, factors)
@@ -196,7 +203,7 @@ def curve(
     """
     if not isinstance(demand, Amount) or gain.shape[1] > 1 or factors is not None:
         return joint_curve([(gain, demand)], day, cost, order, weather, factors)
-    day, order = np.asarray(day), np.asarray(order, dtype=np.int64)
+    day, order = np.asarray(day, dtype=float), np.asarray(order, dtype=np.int64)
     found = [success(gain[order[:n]], demand, day[order[:n]], weather) for n in range(1, order.size + 1)]
     low = np.maximum.accumulate([each[0] for each in found])  # a bound for fewer units is one for more
     high = np.array([each[0] + each[1] for each in found])
@@ -230,7 +237,7 @@ def joint_curve(
         factors: ndarray[trial, unit], natural scatter.
 
     """
-    day, order = np.asarray(day), np.asarray(order, dtype=np.int64)
+    day, order = np.asarray(day, dtype=float), np.asarray(order, dtype=np.int64)
     weight, chance, exact = drawn(day[order], weather, 0, None if factors is None else factors[:, order])
     reached = np.ones((order.size, weight.shape[0]), dtype=bool)
     for gain, demand in goals:

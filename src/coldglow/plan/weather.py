@@ -4,6 +4,9 @@ With clear share c and correlation rho from one night to the next, a gap of d da
 rho**d, so P(clear after clear) = c + (1-c) rho**d and P(clear after cloudy) = c (1 - rho**d). A gap of
 zero days keeps the state: both halves of a night share it. Observing units stand in order of time.
 
+Several places have chains of their own: their days stand one place after the other on the same axis, too
+far apart to remember (`chain_day`), so that every function here serves them all.
+
 Source: two-state Markov chain of daily weather, Gabriel & Neumann 1962, Q. J. R. Meteorol. Soc. 88, 90.
 """
 
@@ -17,6 +20,7 @@ from numpy.typing import ArrayLike, NDArray
 from coldglow.errors import RangeError
 
 Array: TypeAlias = NDArray[np.float64]
+APART = 1e6  # days between the chains of two places
 CELLS = 16384  # steps of information in the distribution; the bounds returned show what they cost
 EXACT_NIGHTS = 12  # up to so many different nights all histories are enumerated instead
 
@@ -32,7 +36,20 @@ def _gaps(day: ArrayLike, clear_fraction: float, correlation: float) -> Array:
     step = np.diff(np.asarray(day, dtype=float))
     if np.any(step < 0.0):
         raise ValueError("days must stand in order of time")
-    return np.asarray(np.power(correlation, step))
+    return np.where(step >= 0.5 * APART, 0.0, np.power(correlation, step))
+
+
+def chain_day(day: ArrayLike, place: ArrayLike, cloudless: ArrayLike = ()) -> Array:
+    """Days ndarray[unit] on the common axis of several independent chains; nan where no clouds come.
+
+    Args:
+        day: ndarray[unit], day number (below 400 000).
+        place: ndarray[unit], number of the place whose weather it is.
+        cloudless: numbers of the places without weather, as in space.
+
+    """
+    place = np.asarray(place)
+    return np.where(np.isin(place, cloudless), np.nan, np.asarray(day, dtype=float) + APART * place)
 
 
 def simulate(
