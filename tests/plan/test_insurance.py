@@ -87,3 +87,12 @@ def test_forbidden_nights_and_halves_are_respected():
 def test_a_set_without_a_limit_is_refused():
     with pytest.raises(ValueError, match="limit on its cost"):
         robust_set(nights(2), np.ones((2, 1)), Amount(np.ones(1)), Rules(), WEATHER)
+
+
+@pytest.mark.parametrize("sets", [0, 3000])
+def test_fixed_nights_are_in_the_set(monkeypatch, sets):
+    monkeypatch.setattr(insurance, "BRUTE_SETS", sets)
+    gain = np.array([[0.1], [1.0], [1.0], [0.2], [1.0], [1.0]])
+    rules = Rules(cost_max=4.0, fixed_nights=(3,), fixed_sets=((0, 1),))
+    found = robust_set(nights(6), gain, Amount(np.ones(1)), rules, WEATHER)
+    assert found.chosen.tolist() == [1, 2, 3, 5]  # far apart, as weather lasts

@@ -175,7 +175,7 @@ def _full(question: _Question, wanted: NDArray[np.bool_], end: float) -> tuple[A
     gap = gap if gap > GAP_ROUNDING else 0.0
     if gap == 0.0:
         chosen = _tidy(question, chosen)
-    return chosen, bound, gap
+    return chosen, float(bound), float(gap)
 
 
 def _most(question: _Question, aim: NDArray[np.bool_], end: float) -> tuple[Array, float]:

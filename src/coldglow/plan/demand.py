@@ -8,7 +8,8 @@ With F the sum of the marginalised 2 x 2 matrices, the information on T with N f
     J(F) = F11 - F01**2/F00 = min over a of (F11 - 2 a F01 + a**2 F00),
 
 so J >= d means that the linear inequality holds for *every* a; the tightest at F has a = F01/F00. Adding
-those inequalities where a choice breaks them solves the non-linear goal exactly.
+those inequalities where a choice breaks them solves the non-linear goal exactly. (The sum of what each visit
+knows of T by itself would be a safe bound, but two visits can be worth far more together than apart.)
 
 Source: the minimum over a is the generalised Schur complement as a variational problem, Boyd &
 Vandenberghe 2004, Convex Optimization, appendix A.5.5; the method is the cutting-plane method of Kelley
@@ -74,12 +75,3 @@ def snr_gain(matrix: ArrayLike, visit_floor: ArrayLike = 0.0) -> Array:
 
     """
     return with_floor(marginalise(matrix)[..., 0, 0], visit_floor)
-
-
-def safe_gain(matrix: ArrayLike) -> Array:
-    """Information on T of each visit alone, N free: ndarray[...] from marginalised ndarray[..., 2, 2].
-
-    Its sum over visits never exceeds the information of the visits together (the Schur complement is
-    superadditive), so a cover by these amounts is a cover by the temperature error too.
-    """
-    return np.asarray(np.square(1.0 / temperature_error(matrix)))
