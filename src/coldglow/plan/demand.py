@@ -31,9 +31,13 @@ Array: TypeAlias = NDArray[np.float64]
 
 @dataclass(frozen=True, slots=True)
 class Amount:
-    """A sum to be reached in each bin: `demand` ndarray[bin], in the unit of the gains; inf = never."""
+    """A sum to be reached in each bin: `demand` ndarray[bin], in the unit of the gains; inf = never.
+
+    `by_clock` marks time: a clear night yields all of it, however good or poor its conditions.
+    """
 
     demand: Array
+    by_clock: bool = False
 
     def share(self, total: Array) -> Array:
         """Share of the demand that ndarray[..., bin] reaches; 1 and more is reached."""

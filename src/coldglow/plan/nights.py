@@ -167,8 +167,14 @@ def success(
         )
         return low, high - low
     weight, chance, exact = drawn(day, weather, stream, factors)
+    weight = yields_of(weight, demand)
     reached = np.all(demand.share(np.tensordot(weight, gain, axes=1)) >= REACHED, axis=1)
     return estimate(reached, chance, exact)
+
+
+def yields_of(weight: Array, demand: Demand) -> Array:
+    """Yield ndarray[history, unit] as a demand counts it: time knows only clear and cloudy."""
+    return (weight > 0.0).astype(float) if isinstance(demand, Amount) and demand.by_clock else weight
 
 
 def estimate(reached: NDArray[np.bool_], chance: Array, exact: bool) -> tuple[float, float]:
@@ -242,8 +248,9 @@ def joint_curve(
     reached = np.ones((order.size, weight.shape[0]), dtype=bool)
     for gain, demand in goals:
         total = np.zeros((weight.shape[0], *gain.shape[1:]))
+        counted = yields_of(weight, demand)
         for i, unit in enumerate(order):
-            total += np.multiply.outer(weight[:, i], gain[unit])
+            total += np.multiply.outer(counted[:, i], gain[unit])
             reached[i] &= np.all(demand.share(total) >= REACHED, axis=1)
     found = [estimate(each, chance, exact) for each in reached]
     return Curve(
