@@ -24,7 +24,7 @@ from coldglow.describe.target_schema import TargetSchema
 from coldglow.errors import DescriptionError, NotFoundError, Problem
 from coldglow.units import quoted
 
-__all__ = ["load_any", "load_instrument", "load_request", "load_target", "names"]
+__all__ = ["load_any", "load_instrument", "load_instrument_for", "load_request", "load_target", "names"]
 
 NamePath = str | os.PathLike[str]
 
@@ -53,6 +53,23 @@ def load_request(path: NamePath) -> Request:
     """
     file = Path(path).expanduser()
     return _request(assemble(file, "request"), file)
+
+
+def load_instrument_for(request: Request, name_or_path: NamePath) -> Instrument:
+    """Return another instrument as the request would see it: with the request's own limits laid over.
+
+    Limits that mean nothing for it (an airmass in space) leave its own as they are.
+
+    Raises `NotFoundError` (with the nearest name) or `DescriptionError` (with every mistake).
+    """
+    file = Path(request.origin.file)
+    if not request.origin.file or not file.is_file():
+        return load_instrument(name_or_path)
+    path = find(name_or_path, "instrument", beside=file)
+    try:
+        return _requested_instrument(assemble(file, "request"), file, "instruments", str(path))
+    except DescriptionError:
+        return load_instrument(path)
 
 
 def load_any(name_or_path: NamePath) -> Target | Instrument | Request:

@@ -149,6 +149,14 @@ class FadeBlock(Block):
                 yield Refused("the years do not span 0 to 100 years", "the earlier first", "last_year")
 
 
+def _name_or_block(value: object) -> object:
+    """Let pass a whole description, or the name or path of one."""
+    return value if isinstance(value, dict) else fields.as_text(value)
+
+
+_NamedOrWhole = Annotated[Any, BeforeValidator(_name_or_block)]
+
+
 def _one_use(value: object) -> object:
     """Let a bare name stand for a use of that instrument in its first setting."""
     return {"instrument": value} if isinstance(value, str) else value
@@ -157,7 +165,7 @@ def _one_use(value: object) -> object:
 class UseBlock(Block):
     """One instrument of the request; `instrument` is a name, a path, or a whole description."""
 
-    instrument: Any
+    instrument: _NamedOrWhole
     setting: fields.Name | None = None
     cost: Annotated[float, quantity("number", "0", "1e6")] = 1.0
 
@@ -166,7 +174,7 @@ class RequestSchema(Block):
     """A whole request file; `target` and `instruments` are loaded beforehand."""
 
     name: fields.Name
-    target: Any
+    target: _NamedOrWhole
     instruments: Annotated[
         tuple[Annotated[UseBlock, BeforeValidator(_one_use)], ...], BeforeValidator(fields.as_list)
     ]
