@@ -102,7 +102,7 @@ def goal_of(
     """Return gain (one of the three, ndarray[offer, bin, ...]), demand and the goal in words."""
     coverage, bins = request.coverage, clock_s.shape[1]
     if coverage.minutes is not None:
-        demand = Amount(np.full(bins, 60.0 * coverage.minutes))
+        demand = Amount(np.full(bins, 60.0 * coverage.minutes), by_clock=True)
         return clock_s, demand, words.duration(60.0 * coverage.minutes)
     if coverage.temperature_error_k is not None:
         kelvin = coverage.temperature_error_k

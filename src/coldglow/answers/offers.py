@@ -51,6 +51,7 @@ class Offers:
     end_tt_s: NDArray[np.float64]
     observable_s: NDArray[np.float64]
     shutter_s: NDArray[np.float64]  # open shutter in it
+    calibration_s: NDArray[np.float64]
     cost: NDArray[np.float64]  # in nights; of stretches in hours
     matrix: NDArray[np.float64]  # ndarray[offer, 2, 2], sum of the visits' marginalised matrices
     information: NDArray[np.float64]  # on ln N, with the floor of each visit
@@ -201,7 +202,7 @@ def _of_scene(request: Request, scene: Scenario, cut: Pieces, telescope: int, si
     seconds = np.bincount(owner, rows.duration_s, size).astype(np.float64)
     whole = np.append(0.0, np.cumsum(steps.shutter_share))
     share = (whole[cut.end] - whole[cut.first]) / np.maximum(cut.end - cut.first, 1)
-    open_s = share * np.maximum(rows.duration_s - scene.overhead_s, 0.0)
+    left_s = np.maximum(rows.duration_s - scene.overhead_s, 0.0)
     origin = track.grid.tt_s[0] - steps.time_s[0]
     begin, stop = np.full(size, np.inf), np.full(size, -np.inf)
     np.minimum.at(begin, owner, rows.start_s)
@@ -220,7 +221,8 @@ def _of_scene(request: Request, scene: Scenario, cut: Pieces, telescope: int, si
         start_tt_s=origin + begin,
         end_tt_s=origin + stop,
         observable_s=seconds,
-        shutter_s=np.bincount(owner, open_s, size).astype(np.float64),
+        shutter_s=np.bincount(owner, share * left_s, size).astype(np.float64),
+        calibration_s=np.bincount(owner, operation.calibration_share * left_s, size).astype(np.float64),
         cost=price,
         matrix=matrix,
         information=information,

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from coldglow.plan.demand import Demand
 from coldglow.plan.multicover import Candidates, Rules, allowed, obeys
-from coldglow.plan.nights import REACHED, Weather, drawn, success
+from coldglow.plan.nights import REACHED, Weather, drawn, success, yields_of
 
 Array: TypeAlias = NDArray[np.float64]
 Index: TypeAlias = NDArray[np.int64]
@@ -51,7 +51,8 @@ class _Histories:
             weather.clear_fraction, weather.correlation, min(weather.trials, SCORE_TRIALS), weather.seed
         )
         self.candidates, self.gain, self.demand, self.rules = candidates, gain, demand, rules
-        self.weight, self.chance, _ = drawn(day, few, CHOOSING, factors)
+        weight, self.chance, _ = drawn(day, few, CHOOSING, factors)
+        self.weight = yields_of(weight, demand)
 
     def total(self, chosen: Index) -> Array:
         return np.tensordot(self.weight[:, chosen], self.gain[chosen], axes=1)
@@ -88,6 +89,7 @@ def robust_set(
     base: Index | None = None,
     day: Array | None = None,
     factors: Array | None = None,
+    enough: float = np.inf,
 ) -> RobustSet:
     """Set within the rules (a limit on cost among them) with the highest probability of reaching all goals.
 
@@ -108,6 +110,7 @@ def robust_set(
         day: ndarray[candidate], of the weather, from `chain_day`; default: the candidates' nights.
         factors: ndarray[trial, candidate] from `scatter_factors`; the first half serves to choose, the
             second to judge.
+        enough: probability, in the histories that choose, at which no more candidates are added.
 
     """
     if not np.isfinite(rules.cost_max):
@@ -128,7 +131,7 @@ def robust_set(
     if sum(comb(free.size, size) for size in range(largest + 1)) <= BRUTE_SETS:
         added, method = _all_sets(histories, kept, free, largest), "all sets compared"
     else:
-        added, method = _grow(histories, kept, free), "greedy with exchanges"
+        added, method = _grow(histories, kept, free, enough), "greedy with exchanges"
     chosen = np.append(kept, added)
     chosen = chosen[np.lexsort((candidates.place[chosen], candidates.start_s[chosen]))]
     probability, error = 0.0, 0.0
@@ -151,7 +154,7 @@ def _all_sets(histories: _Histories, kept: Index, free: Index, largest: int) -> 
     return best
 
 
-def _grow(histories: _Histories, kept: Index, free: Index) -> Index:
+def _grow(histories: _Histories, kept: Index, free: Index, enough: float) -> Index:
     """Add the fixed, then what helps most; then exchange what was added freely while that helps."""
     rules, night = histories.rules, histories.candidates.night
     must = [np.flatnonzero(night == each) for each in rules.fixed_nights]
@@ -163,7 +166,10 @@ def _grow(histories: _Histories, kept: Index, free: Index) -> Index:
             found = histories.best_addition(np.append(kept, added), np.intersect1d(here, free))
             added = added if found is None else np.append(added, found[0])
     fixed = added.size
-    while (found := histories.best_addition(np.append(kept, added), np.setdiff1d(free, added))) is not None:
+    while histories.score(histories.total(np.append(kept, added))) < enough:
+        found = histories.best_addition(np.append(kept, added), np.setdiff1d(free, added))
+        if found is None:
+            break
         added = np.append(added, found[0])
     improved = True
     while improved:
