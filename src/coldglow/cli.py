@@ -170,6 +170,24 @@ def run_fade(words: argparse.Namespace) -> Result:
     return fade(words.word, tuple(words.years) if words.years else None, words.instrument)
 
 
+def add_compare(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `compare`."""
+    request_word(parser)
+    parser.add_argument(
+        "--instruments", nargs="+", action="extend", metavar="NAME", help="names or paths; default: all"
+    )
+    parser.add_argument("--jobs", type=int, default=1, metavar="N", help="work in N processes (default 1)")
+
+
+def run_compare(words: argparse.Namespace) -> Result:
+    """Run `compare`."""
+    from coldglow.answers import compare
+    from coldglow.answers.jobs import processes
+
+    with processes(words.jobs) as executor:
+        return compare(words.word, words.instruments, executor)
+
+
 def add_plan(parser: argparse.ArgumentParser) -> None:
     """Arguments of `plan`."""
     request_word(parser)
@@ -280,6 +298,13 @@ COMMANDS: dict[str, Command] = {
         add_fade,
         run_fade,
     ),
+    "compare": Command(
+        "Which instrument does it best?",
+        "coldglow compare examples/uranus-season.yaml --instruments echelle-8m ifu-8m --jobs 2",
+        "REQUEST.yaml",
+        add_compare,
+        run_compare,
+    ),
     "draft": Command(
         "Start a request of my own",
         "coldglow draft --target uranus --instrument echelle-4m > my.yaml",
@@ -366,8 +391,9 @@ def parse(arguments: Sequence[str]) -> tuple[Command, argparse.Namespace]:
     if command.word:
         found = words.word
         if not found:
+            yaml = next((word for word in rest if word.endswith(".yaml")), "")
             for value in vars(words).values():
-                if isinstance(value, list) and len(value) > 1 and value[-1] == rest[-1]:
+                if isinstance(value, list) and len(value) > 1 and str(value[-1]) in (rest[-1], yaml):
                     found = [value.pop()]
         if len(found) != 1:
             parser.error(f"give one {command.word}" + (f", not {len(found)}" if found else ""))

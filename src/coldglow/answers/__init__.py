@@ -1,5 +1,6 @@
 """One function per command: what the user asked in, a `Result` out."""
 
+from coldglow.answers.compare import compare
 from coldglow.answers.cover import cover
 from coldglow.answers.descriptions import check, draft, show
 from coldglow.answers.expose import expose
@@ -10,4 +11,17 @@ from coldglow.answers.nights import nights
 from coldglow.answers.plan import plan
 from coldglow.answers.sky import sky
 
-__all__ = ["check", "cover", "draft", "expose", "fade", "glow", "hours", "nights", "plan", "show", "sky"]
+__all__ = [
+    "check",
+    "compare",
+    "cover",
+    "draft",
+    "expose",
+    "fade",
+    "glow",
+    "hours",
+    "nights",
+    "plan",
+    "show",
+    "sky",
+]

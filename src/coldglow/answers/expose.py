@@ -347,11 +347,11 @@ def _errors(seen: Look, open_s: float) -> tuple[str, str]:
 
 def _limit_sentence(seen: Look, header: dict[str, Entry], occasion: str) -> str:
     snr, state = words.short(seen.request.fade.significance), seen.state
-    column_words = words.quantity(state.column_m2, "m-2")
+    given, kelvin = words.quantity(state.column_m2, "m-2"), words.quantity(state.temperature_k, "K")
     return (
-        f"Detection limits {occasion} (SNR {snr} expected): at a vertical column of {column_words} the "
-        f"coldest temperature is {header['coldest_temperature']}; at {words.quantity(state.temperature_k, 'K')} the "
-        f"smallest column is {header['smallest_column']}."
+        f"Detection limits {occasion} (SNR {snr} expected): at a vertical column of {given} the coldest "
+        f"temperature is {header['coldest_temperature']}; at {kelvin} the smallest column is "
+        f"{header['smallest_column']}."
     )
 
 
