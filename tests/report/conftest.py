@@ -16,6 +16,7 @@ from coldglow.report.figures import (
     disk,
     exposure,
     fade,
+    lightcurve,
     nights,
     season,
     spectrum,
@@ -189,6 +190,20 @@ def beam(diameter: float = 3.7, slit: float = 0.8) -> Figure:
     return disk.beam_on_disk(view, disk.OpeningView("slit", slit, 12.0, 262.0), 0.6, spots)
 
 
+def turning() -> Figure:
+    longitude = (100.0 + np.arange(73) * 5.0) % 360
+    share = np.clip(np.cos(np.radians(longitude - 200.0)), 0, None) * 0.2
+    return lightcurve.light_curve(longitude, 0.95 + share, share, "northern oval")
+
+
+def two_pixels() -> Figure:
+    wave = np.array([3.43, 3.5])
+    air, lines = np.linspace(3.43, 3.5, 50), np.linspace(3.44, 3.49, 9)
+    labels = ["", *(f"R({i},{i})" for i in range(8))]
+    level = np.array([1e6, 1e5])
+    return spectrum.spectrum(wave, level, 10 * level, 1e3 * level, air, air / 4, lines, labels, np.ones(9))
+
+
 FIGURES: dict[str, Callable[[], Figure]] = {
     "snr": snr_against_time,
     "season": season_chart,
@@ -201,6 +216,7 @@ FIGURES: dict[str, Callable[[], Figure]] = {
     "comparison": comparison,
     "spectrum": line_spectrum,
     "disk": beam,
+    "turn": turning,
 }
 
 
@@ -214,6 +230,7 @@ def figures() -> dict[str, Callable[[], Figure]]:
         "coverage-one": lambda: covered(1),
         "spectrum-space": lambda: line_spectrum(False),
         "spectrum-crowded": crowded_spectrum,
+        "spectrum-imager": two_pixels,
         "comparison-long": long_comparison,
         "disk-large": lambda: beam(46.0, 1.0),
     }

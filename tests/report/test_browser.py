@@ -89,7 +89,7 @@ def test_every_figure_is_seen_at_any_width_and_the_page_never_scrolls_sideways(p
     resize(page, width)
     assert page.value("document.documentElement.scrollWidth") <= width
     figures = page.value(FIGURES)
-    assert len(figures) == 11
+    assert len(figures) == 12
     for figure in figures:
         assert figure["seen"]
         assert figure["reachable"]

@@ -30,9 +30,9 @@ from coldglow.report.figures import (
 
 NAMES = (
     "snr", "season", "nights", "coverage", "probability", "fade", "map", "ellipse", "comparison", "spectrum",
-    "disk",
+    "disk", "turn",
     "season-short", "nights-many", "coverage-many", "coverage-one", "comparison-long", "spectrum-space",
-    "spectrum-crowded", "disk-large",
+    "spectrum-crowded", "spectrum-imager", "disk-large",
 )  # fmt: skip
 
 
@@ -86,11 +86,12 @@ def test_every_panel_names_its_axes_with_units_where_they_have_some(figures, nam
     expected = {
         "snr": "(h)", "season": "UTC", "nights": "UTC", "coverage": "(°)", "probability": "%", "fade": "(K)",
         "map": "(m⁻²)", "ellipse": "(m⁻²)", "comparison": " h", "spectrum": "(µm)", "disk": "(″)",
+        "turn": "(°)",
     }[name.split("-")[0]]  # fmt: skip
     assert expected in texts
 
 
-@pytest.mark.parametrize("name", NAMES[:11])
+@pytest.mark.parametrize("name", NAMES[:12])
 def test_the_same_numbers_give_the_same_bytes_whatever_the_users_settings(figures, name):
     first = figures[name]()
     svg, pdf, png = look.as_svg(first), look.as_pdf(first), look.as_png(first, 60)
@@ -299,6 +300,15 @@ def test_rates_that_hardly_differ_fill_the_scale_of_colours():
     steep = season.season_chart(evenings, hours, np.linspace(1.0, 10.0, 8).reshape(2, 4))
     assert flat.axes[0].images[0].get_clim() == (8.0, 10.0)
     assert steep.axes[0].images[0].get_clim() == (0.0, 10.0)
+
+
+def test_the_mark_stands_on_the_curve_where_the_goal_is_sure():
+    # an SNR of 5 with 90 % needs an expected SNR of 6.3: the mark belongs there, not on the line of the goal
+    clock = np.linspace(0.5, 8, 50)
+    figure = exposure.snr_against_time(clock, 5 * np.sqrt(clock / 2), {"sky": 1.0}, 5.0, 3.2, probability=0.9)
+    mark = next(line for line in figure.axes[0].lines if line.get_marker() == "o")
+    assert mark.get_ydata() == pytest.approx([5 * np.sqrt(1.6)], rel=1e-2)
+    assert figure.axes[0].get_title(loc="right") == "goal 5 after 3 h 12 min (with 90 %)"
 
 
 def test_frames_of_successive_nights_join_and_others_do_not():

@@ -13,6 +13,7 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.patches import Circle, Polygon
+from matplotlib.patheffects import withStroke
 from numpy.typing import NDArray
 
 from coldglow.report import words
@@ -171,6 +172,8 @@ def _draw_globe(axes: Axes, disk: DiskView) -> None:
         ha="center",
         va="center",
         fontsize=8,
+        zorder=7,
+        path_effects=[withStroke(linewidth=3, foreground=look.PAPER)],
     )
 
 

@@ -22,11 +22,13 @@ def snr_against_time(
     time_to_goal_h: float = np.inf,
     snr_low: NDArray[np.float64] | None = None,
     snr_high: NDArray[np.float64] | None = None,
+    probability: float | None = None,
 ) -> Figure:
     """Draw the SNR after a time on the clock, with the goal, above a bar of the variance shares.
 
     `clock_h`, `snr`, `snr_low`, `snr_high`: ndarray[time]; the latter two are the 1-sigma range that the
-    uncertain brightness allows. `shares` sum to 1. An infinite `time_to_goal_h` is said in words.
+    uncertain brightness allows. `shares` sum to 1. An infinite `time_to_goal_h` is said in words;
+    `probability` is the one with which the measured SNR reaches the goal by then (none: at expectation).
     """
     figure, ((main,), (bar,)) = look.panels(
         4.0, rows=(1, 0.1), gap_in=(0.95, 0), margins_in=(0.5, 0.25, 0.35, 0.75)
@@ -39,23 +41,33 @@ def snr_against_time(
     main.set_ylim(0, 1.12 * max(top, 0.0 if goal is None else goal, 1e-3))
     look.name_axes(main, "time on the clock, overheads included (h)", "SNR of the H₃⁺ lines")
     if goal is not None:
-        _mark_goal(main, goal, time_to_goal_h, float(clock_h[-1]))
+        _mark_goal(main, clock_h, snr, goal, time_to_goal_h, probability)
     _share_bar(bar, shares)
     return figure
 
 
-def _mark_goal(main: Axes, goal: float, time_to_goal_h: float, last_h: float) -> None:
+def _mark_goal(
+    main: Axes,
+    clock_h: NDArray[np.float64],
+    snr: NDArray[np.float64],
+    goal: float,
+    time_to_goal_h: float,
+    probability: float | None,
+) -> None:
+    """Draw the goal and mark the curve where it is reached: above the goal when a probability is wanted."""
     main.axhline(goal, color=look.BRICK, linewidth=1, linestyle=look.DASHES[1])
-    reached = time_to_goal_h <= last_h
-    if reached:
-        main.plot([time_to_goal_h] * 2, [0, goal], color=look.BRICK, linewidth=1)
-        main.plot(time_to_goal_h, goal, "o", color=look.BRICK, markersize=5)
-        when = f"after {words.duration(3600 * time_to_goal_h)}"
-    elif np.isinf(time_to_goal_h):
-        when = "is never reached"
+    after = words.duration(3600 * time_to_goal_h)
+    if time_to_goal_h <= clock_h[-1]:
+        height = float(np.interp(time_to_goal_h, clock_h, snr))
+        main.plot([time_to_goal_h] * 2, [0, height], color=look.BRICK, linewidth=1)
+        main.plot(time_to_goal_h, height, "o", color=look.BRICK, markersize=5)
+        says = f"after {after}"
     else:
-        when = f"needs {words.duration(3600 * time_to_goal_h)}"
-    main.set_title(f"goal {words.short(goal)} {when}", loc="right", color=look.BRICK)
+        says = "is never reached" if np.isinf(time_to_goal_h) else f"needs {after}"
+    sure = (
+        "" if probability is None or np.isinf(time_to_goal_h) else f" (with {words.probability(probability)})"
+    )
+    main.set_title(f"goal {words.short(goal)} {says}{sure}", loc="right", color=look.BRICK)
 
 
 def _share_bar(bar: Axes, shares: Mapping[str, float]) -> None:

@@ -11,6 +11,7 @@ from matplotlib.axes import Axes
 from matplotlib.cm import ScalarMappable
 from matplotlib.colors import BoundaryNorm, ListedColormap
 from matplotlib.figure import Figure
+from matplotlib.patheffects import withStroke
 from numpy.typing import NDArray
 
 from coldglow.report import words
@@ -50,13 +51,14 @@ def chosen_nights(
     if altitude_min_deg > 0:
         high.axhline(altitude_min_deg, color=look.BRICK, linewidth=1)
         high.annotate(
-            f"limit {words.number(altitude_min_deg, 2)}°",
-            (1, altitude_min_deg),
+            f"limit {words.short(altitude_min_deg)}°",
+            (0, altitude_min_deg),
             xycoords=("axes fraction", "data"),
-            xytext=(4, -3),
+            xytext=(4, 3),
             textcoords="offset points",
             color=look.BRICK,
             fontsize=8.5,
+            path_effects=[withStroke(linewidth=2.5, foreground=look.PAPER)],
         )
     high.set_ylim(0, 90)
     high.set_yticks(range(0, 91, 30), [f"{mark}°" for mark in range(0, 91, 30)])

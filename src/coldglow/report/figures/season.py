@@ -57,13 +57,14 @@ def season_chart(
     for edge in (dark_start_h, dark_end_h):
         if edge is not None:
             main.plot(index, edge, color=look.INK, linewidth=1, linestyle=look.DASHES[2])
+    width = min(1.3, 0.3 * 72 * look.WIDTH / len(nights))  # of a line, in points, against that of a night
     for outline in _outlines(chosen):
-        main.add_patch(Polygon(outline, fill=False, edgecolor=look.BRICK, linewidth=1.3))
+        main.add_patch(Polygon(outline, fill=False, edgecolor=look.BRICK, linewidth=width))
     main.set_xlim(-0.5, len(nights) - 0.5)
     main.set_ylim(top, bottom)
     _date_ticks(main, nights)
     _hour_ticks(main, bottom, top)
-    main.set_title("hour of the night (UTC)")
+    main.set_title("hour (UTC)" if dark_start_h is None else "hour of the night (UTC)")
     bar = figure.colorbar(image, cax=scale)
     bar.outline.set_visible(False)
     scale.tick_params(length=0)

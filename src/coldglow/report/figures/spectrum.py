@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from coldglow.report.figures import look
 
 _LABELS = 12
+_FEW = 4  # pixels; an imager's are marked, not joined
 _MAIN_IN, _LEADER_IN, _LETTER_IN = 1.9, 0.25, 0.067  # of the lower panel, of leaders, per letter of a name
 
 
@@ -31,20 +32,22 @@ def spectrum(
     """Draw the rates of lines, planet's continuum and background on the pixels, and the transmission.
 
     `wavelength_um`, `signal`, `continuum`, `background`: ndarray[pixel]; `transmission_um`,
-    `transmission`: ndarray[wavelength] (empty in space); the others ndarray[line]. The dozen lines of
-    largest weight are named, all are marked.
+    `transmission`: ndarray[wavelength] (empty in space); the others ndarray[line]. All lines are
+    marked, the dozen of largest weight that have a label are named.
     """
     in_air = len(transmission_um) > 0
     names_in = _LEADER_IN + 0.1 + _LETTER_IN * max(map(len, line_labels), default=0)
     air_in = 0.7 if in_air else 0.0
     figure, axes = look.panels(
-        _MAIN_IN + names_in + (air_in + 0.35 if in_air else 0.1) + 0.5,
+        _MAIN_IN + names_in + (air_in + 0.35 if in_air else 0.1) + 0.8,
         rows=(air_in, _MAIN_IN) if in_air else (1,),
         gap_in=(names_in, 0),
-        margins_in=(0.6, 0.25, 0.35 if in_air else names_in + 0.1, 0.5),
+        margins_in=(0.6, 0.25, 0.35 if in_air else names_in + 0.1, 0.8),
     )
     main = axes[-1, 0]
     span = (float(wavelength_um[0]), float(wavelength_um[-1]))
+    if len(wavelength_um) <= _FEW:
+        span = (span[0] - 0.1 * (span[1] - span[0]), span[1] + 0.1 * (span[1] - span[0]))
     if in_air:
         air = axes[0, 0]
         x, low, high = envelope(transmission_um, transmission, span)
@@ -67,15 +70,17 @@ def spectrum(
         x, low, high = envelope(wavelength_um, values, span)
         hidden = "" if high.max() > floor else " (off scale)"
         low, high = np.maximum(low, floor / 10), np.maximum(high, floor / 10)  # zero has no logarithm
-        main.fill_between(x, low, high, color=colour, linewidth=0, alpha=0.6)
-        main.plot(x, high, color=colour, linestyle=dash, linewidth=1, label=name + hidden)
+        if len(x) > _FEW:
+            main.fill_between(x, low, high, color=colour, linewidth=0, alpha=0.6)
+        shape = {"linestyle": dash} if len(x) > _FEW else {"linestyle": "none", "marker": "D"}
+        main.plot(x, high, color=colour, linewidth=1, label=name + hidden, **shape)
     main.set_yscale("log")
     look.powers_of_ten(main.yaxis)
     main.set_ylim(floor, (largest / floor) ** 0.25 * largest)
     main.set_xlim(*span)
     look.name_axes(main, "wavelength in vacuum, as observed (µm)", "")
     main.text(0.01, 0.88, rate_name, transform=main.transAxes, va="center")
-    main.legend(loc="center right", bbox_to_anchor=(1.0, 0.88), ncols=3, columnspacing=1.2)
+    main.legend(loc="upper center", bbox_to_anchor=(0.5, -0.24), ncols=3, columnspacing=1.5, borderaxespad=0)
     _name_lines(main, span, line_um, line_labels, line_weight)
     return figure
 
@@ -131,8 +136,12 @@ def _name_lines(
             [fraction[line]] * 2, [1, 1 - 0.05 * strength[line]], color=look.INK, linewidth=0.8,
             transform=axes.transAxes,
         )  # fmt: skip
-    strongest = inside[np.argsort(-weight[inside], kind="stable")[:_LABELS]]
-    named = strongest[np.argsort(line_um[strongest], kind="stable")]
+    strongest = [line for line in inside[np.argsort(-weight[inside], kind="stable")] if labels[line]][
+        :_LABELS
+    ]
+    named = np.array(sorted(strongest, key=lambda line: line_um[line]), int)
+    if not len(named):
+        return
     places = spread(fraction[named], 0.038, 0.0, 1.0)
     top = 1 + _LEADER_IN / _MAIN_IN
     across = axes.transAxes

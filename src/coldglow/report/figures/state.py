@@ -17,6 +17,7 @@ from coldglow.report import words
 from coldglow.report.figures import look
 
 _MOST = 1000.0  # nights; more is as good as never
+_FAR = 1000.0  # factor; ellipses that reach further are cut by the frame
 _HALO: list[AbstractPathEffect] = [withStroke(linewidth=2.2, foreground=look.PAPER)]
 
 
@@ -178,7 +179,8 @@ def error_ellipse(
     main.plot(temperature_k, 0, "+", color=look.INK, markersize=9)
     reach = np.maximum(2.6 * np.sqrt(np.diag(covariance)), 1.5 * np.asarray(systematic))
     reach = np.maximum(reach, (1e-6, 1e-6 * temperature_k))
-    main.set_xlim(temperature_k - reach[1], temperature_k + reach[1])
+    reach[0] = min(reach[0], np.log(_FAR))
+    main.set_xlim(max(temperature_k - reach[1], 0.0), min(temperature_k + reach[1], _FAR * temperature_k))
     main.set_ylim(-reach[0], reach[0])
     _column_ticks(main, column_m2)
     look.name_axes(main, "temperature (K)", column_name)
