@@ -11,9 +11,9 @@ from hypothesis import strategies as st
 from scipy.stats import norm
 
 from coldglow.plan.bins import (
+    BinSums,
     Interest,
     central_weights,
-    gather,
     interest_weights,
     resolution_rad,
     spot_gain,
@@ -108,7 +108,7 @@ def test_bins_add_to_the_night_before_marginalisation_and_lose_after():
     steps = night()
     first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night)
     weight = central_weights(steps.longitude_rad, 12, step_drift(steps), 10.0 * DEG)
-    found = gather(steps, weight, first, end, overhead_s=750.0)
+    found = BinSums(steps, weight).visits(first, end, overhead_s=750.0)
     seconds = np.full(steps.time_s.size, 0.7 * 300.0)
     seconds[:2], seconds[2] = 0.0, 0.7 * 150.0
     whole = np.tensordot(seconds, steps.matrix, axes=1)
@@ -126,14 +126,14 @@ def test_gains_do_not_depend_on_the_step():
         steps = replace(steps, matrix=flat, time_s=steps.time_s + step_s / 2.0)
         steps = replace(steps, longitude_rad=np.mod(2.0 * np.pi * steps.time_s / PERIOD_S, 2.0 * np.pi))
         weight = central_weights(steps.longitude_rad, 36, step_drift(steps))
-        gains.append(gather(steps, weight, np.array([0]), np.array([steps.time_s.size])).clock_s)
+        gains.append(BinSums(steps, weight).visits(np.array([0]), np.array([steps.time_s.size])).clock_s)
     np.testing.assert_allclose(gains[0], gains[1], atol=1e-3)
 
 
 def test_a_bin_not_served_has_no_visit():
     steps = night()
     weight = central_weights(steps.longitude_rad, 12, step_drift(steps))
-    found = gather(steps, weight, np.array([0]), np.array([12]))  # one hour, 20.9 deg from 167 deg
+    found = BinSums(steps, weight).visits(np.array([0]), np.array([12]))  # one hour, 20.9 deg from 167 deg
     assert found.visits.tolist() == [[0, 0, 0, 0, 0, 1, 1, 0, 0, 0, 0, 0]]
     assert np.all(found.matrix[0, 0] == 0.0)
 

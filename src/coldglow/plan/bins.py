@@ -165,11 +165,6 @@ class BinSums:
         return BinGains(matrix, seconds, served.astype(np.int64))
 
 
-def gather(steps: Steps, weight: Array, first: Index, end: Index, overhead_s: float = 0.0) -> BinGains:
-    """Sum what candidates (steps `first` ... `end`-1) bring to each bin: `BinSums` for a single use."""
-    return BinSums(steps, weight).visits(first, end, overhead_s)
-
-
 def spot_gain(
     steps: Steps, ratio: Array, first: Index, end: Index, overhead_s: float = 0.0, visit_floor: float = 0.0
 ) -> tuple[Array, Array]:

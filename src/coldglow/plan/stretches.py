@@ -196,14 +196,6 @@ def best_windows(
     return table(steps, chosen, chosen + size, overhead_s, visit_floor, prior)
 
 
-def halves(steps: Steps, first: Index, end: Index) -> tuple[Index, Index]:
-    """Cut stretches in the middle: returns first and end index of the halves, in order of time."""
-    middle = (np.asarray(first) + np.asarray(end)) // 2
-    begin = np.ravel(np.column_stack((first, middle)))
-    stop = np.ravel(np.column_stack((middle, end)))
-    return begin[stop > begin], stop[stop > begin]
-
-
 def season_chart(steps: Steps, value: Array, columns_per_day: int = 0) -> tuple[Array, Array]:
     """Lay a value out as night against hour for the season chart.
 

@@ -162,11 +162,9 @@ def probability_of_sum(
     if information.size == 0 or not np.isfinite(demand):
         return 0.0, 0.0
     if np.all(information == information[0]):  # equal units: count them, exactly
-        if information[0] <= 0.0:
+        if information.size * information[0] < demand * (1.0 - 1e-12):
             return 0.0, 0.0
         needed = int(np.ceil(demand / information[0] * (1.0 - 1e-12)))
-        if needed > information.size:
-            return 0.0, 0.0
         exact = float(count_distribution(day, clear_fraction, correlation)[needed:].sum())
         return exact, exact
     every = all_histories(day, clear_fraction, correlation)
