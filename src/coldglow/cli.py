@@ -188,6 +188,24 @@ def run_compare(words: argparse.Namespace) -> Result:
         return compare(words.word, words.instruments, executor)
 
 
+def add_fetch(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `fetch`."""
+    target_word(parser)
+    add_place(parser)
+    parser.add_argument("--from", dest="first", metavar="DATE", help="first instant (UTC, ISO date or time)")
+    parser.add_argument("--to", dest="last", metavar="DATE", help="last instant (UTC)")
+    parser.add_argument("--step", default="1h", metavar="DT", help="step (bare number: minutes; default 1h)")
+
+
+def run_fetch(words: argparse.Namespace) -> Result:
+    """Run `fetch`, which writes its file itself, in the form that a target's `body` takes."""
+    from coldglow.answers import fetch
+
+    *others, path = words.write or [None]
+    words.write = others
+    return fetch(words.word, words.instrument, words.site, words.first, words.last, words.step, path)
+
+
 def add_plan(parser: argparse.ArgumentParser) -> None:
     """Arguments of `plan`."""
     request_word(parser)
@@ -304,6 +322,13 @@ COMMANDS: dict[str, Command] = {
         "REQUEST.yaml",
         add_compare,
         run_compare,
+    ),
+    "fetch": Command(
+        "Get an online ephemeris into a file",
+        "coldglow fetch uranus --instrument echelle-8m --from 2027-09-01 --to 2028-03-02 --write uranus.ecsv",
+        "TARGET",
+        add_fetch,
+        run_fetch,
     ),
     "draft": Command(
         "Start a request of my own",

@@ -5,6 +5,7 @@ from coldglow.answers.cover import cover
 from coldglow.answers.descriptions import check, draft, show
 from coldglow.answers.expose import expose
 from coldglow.answers.fade import fade
+from coldglow.answers.fetch import fetch
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
 from coldglow.answers.nights import nights
@@ -18,6 +19,7 @@ __all__ = [
     "draft",
     "expose",
     "fade",
+    "fetch",
     "glow",
     "hours",
     "nights",

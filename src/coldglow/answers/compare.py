@@ -147,9 +147,7 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         float(np.sqrt(with_floor(given.information[best], common))),
         float(temperature_error(given.matrix[best])),
         seen.systematic.temperature_total_k,
-        NOISE_SOURCES[int(np.argmax(seen.detail.variance_share))]
-        if np.isfinite(open_s)
-        else "lines or floors",
+        _noisiest(seen) if np.isfinite(open_s) else "floors",
         feasible,
         "" if feasible else _why_not(wanted, planned, request),
         float(given.observable_s[best]),

@@ -91,7 +91,7 @@ def sky(
             place, limits, name = seen_from.place, seen_from.limits, seen_from.name
             meaning = f"within the limits of {seen_from.name}"
         elif site is not None:
-            place, limits, name = _site(site), BARE_LIMITS, "a bare site"
+            place, limits, name = site_of(site), BARE_LIMITS, "a bare site"
             meaning = "above the horizon with the Sun more than 12° below it"
         else:
             raise RangeError("give an instrument or a site")
@@ -111,7 +111,7 @@ def sky(
         {"sky": table(*_columns(track, isinstance(place, Orbit)), caption=f"{record.name} from {name}")},
         {
             "target": Entry(record.name),
-            "place": Entry(_place_words(place)),
+            "place": Entry(place_words(place)),
             "longitudes": Entry(system.name, text=f"{system.name} ({system.source})"),
             "ephemeris": Entry(ephemeris or "DE421 (packaged); planet-system barycentres"),
         },
@@ -120,7 +120,13 @@ def sky(
     )
 
 
-def _site(site: Sequence[Quantity] | Site) -> Site:
+def site_of(site: Sequence[Quantity] | Site) -> Site:
+    """Return a place on the Earth from its record or from longitude, latitude and height.
+
+    Raises:
+        RangeError: a number that no place has.
+
+    """
     if isinstance(site, Site):
         return site
     lon, lat, height = site
@@ -140,7 +146,8 @@ def _site(site: Sequence[Quantity] | Site) -> Site:
     return place
 
 
-def _place_words(place: Site | Orbit) -> str:
+def place_words(place: Site | Orbit) -> str:
+    """Return a place in words."""
     if isinstance(place, Orbit):
         return "space, Sun-Earth L2"
     longitude, latitude = np.degrees(place.longitude_rad), np.degrees(place.latitude_rad)

@@ -25,7 +25,7 @@ from coldglow.report import words
 
 Array = NDArray[np.float64]
 
-LONGEST_S = 1e12  # open shutter; what is not reached by then is never reached
+LONGEST_S = 1e15  # open shutter; what a prior alone holds back for so long is never reached
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,10 +65,12 @@ class Visit:
         `measure` takes ndarray[2, 2] and grows in proportion to it. Without a prior that is a proportion in
         time as well.
         """
-        if not np.isfinite(wanted) or not float(measure(self.yields(LONGEST_S))) >= wanted:
+        if not np.isfinite(wanted) or not float(measure(self.yields(1.0))) > 0.0:
             return np.inf
         if not self.prior.any():
             return float(wanted / measure(self.yields(1.0)))
+        if float(measure(self.yields(LONGEST_S))) < wanted:
+            return np.inf
 
         def lacking(log_s: float) -> float:
             return float(measure(self.yields(np.exp(log_s)))) / wanted - 1.0
