@@ -110,7 +110,7 @@ def expected_words(choice: Choice) -> str:
 
 def sentences_of(choice: Choice) -> list[str]:
     """Return the answer in sentences."""
-    return [*_answer(choice), *_missing(choice), *_budget(choice), *_longitudes(choice)]
+    return [*_answer(choice), *missing_words(choice), *_budget(choice), *_longitudes(choice)]
 
 
 def _answer(choice: Choice) -> Iterator[str]:
@@ -231,7 +231,8 @@ def bin_ranges(chosen: NDArray[np.bool_], width_deg: float) -> str:
     return words.listing(ranges)
 
 
-def _missing(choice: Choice) -> Iterator[str]:
+def missing_words(choice: Choice) -> Iterator[str]:
+    """Yield what is out of reach and why, and what is missing within the limits."""
     question, cover = choice.question, choice.cover
     spot, width = question.request.coverage.spot, float(np.degrees(question.width_rad))
     never = cover.most <= 0.0

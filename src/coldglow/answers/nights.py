@@ -2,49 +2,83 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from coldglow.answers.choice import Choice, choose
+from coldglow.answers.cover import chosen_table
 from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.offers import Offers, offers
-from coldglow.answers.scenes import conditions_words, scenes, unseen_words
+from coldglow.answers.nightswords import header_of, sentences_of, within_budget
+from coldglow.answers.offers import STRETCH, Offers, offers
+from coldglow.answers.scatter import factors_of
+from coldglow.answers.scenes import scenes, unseen_words
 from coldglow.describe.records import Request
+from coldglow.plan.account import time_account
 from coldglow.plan.demand import Amount, Demand, TemperatureError
 from coldglow.plan.goal import demanded_information, required_snr
-from coldglow.plan.nights import Curve, Weather, curve
+from coldglow.plan.insurance import robust_set
+from coldglow.plan.nights import REACHED, Curve, Weather, curve, joint_curve
 from coldglow.report import words
-from coldglow.report.results import Entry, Result, column, table
+from coldglow.report.results import Entry, Result, Table, column, table
 from coldglow.scenario import Scenario
 
+Array = NDArray[np.float64]
+Index = NDArray[np.int64]
 MOST = 60  # units of a curve
+BEYOND = 5  # printed rows beyond the answer
 CERTAIN = 0.999
+SPARE = 0.05  # insurance is looked for until so much above the wanted probability
 
 
 @dataclass(frozen=True, slots=True)
 class Wanted:
     """One goal as the planner sees it: what each offer yields, how much is needed, in words."""
 
-    gain: NDArray[np.float64]
+    gain: Array
     demand: Demand
     text: str
 
 
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """Offers in the order in which they are requested, and what the first few of them reach."""
+
+    request: Request
+    offers: Offers
+    order: Index  # offers, most wanted first
+    goals: tuple[Wanted, ...]
+    chances: Curve
+    chosen: int | None  # place in the order of the last one requested
+    needed: int  # so many of the order reach every goal when all is clear; 0 if all are too few
+    choice: Choice | None  # the cover that the request begins with
+    method: str  # how the insurance was found
+    factors: Array | None  # ndarray[trial, offer]
+
+    def nights_until(self, place: int) -> float:
+        """Return the nights of the order up to a place: their cost, or different nights of stretches."""
+        return float(self.nights[place])
+
+    @property
+    def nights(self) -> Array:
+        """Nights requested, ndarray[place in the order]."""
+        if not (self.offers.part == STRETCH).any():
+            return self.chances.cost
+        days = self.offers.day[self.order]
+        return np.array([np.unique(days[: n + 1]).size for n in range(days.size)], dtype=float)
+
+
 def goals_of(request: Request, given: Offers) -> list[Wanted]:
-    """Return the request's goals; an error goal is on the random error alone."""
+    """Return the goals on the whole disk; an error goal is on the random error alone."""
     goal, found = request.goal, []
     common = max(scene.use.instrument.operation.common_floor for scene in given.scenes)
     if goal.snr is not None:
-        needed = required_snr(goal.snr, goal.probability)
-        text = f"SNR {words.number(goal.snr)}"
-        found.append(
-            Wanted(
-                given.information[:, None], Amount(np.atleast_1d(demanded_information(needed, common))), text
-            )
-        )
+        needed = demanded_information(required_snr(goal.snr, goal.probability), common)
+        gain, text = given.information[:, None], f"SNR {words.short(goal.snr)}"
+        found.append(Wanted(gain, Amount(np.atleast_1d(needed)), text))
     if goal.temperature_error_k is not None:
-        text = f"temperature to ± {words.number(goal.temperature_error_k)} K"
+        text = f"temperature to ± {words.short(goal.temperature_error_k)} K"
         found.append(
             Wanted(given.matrix[:, None], TemperatureError(np.array([goal.temperature_error_k])), text)
         )
@@ -55,10 +89,39 @@ def goals_of(request: Request, given: Offers) -> list[Wanted]:
     return found
 
 
-def preference(given: Offers) -> NDArray[np.int64]:
-    """Return the offers in order of information per cost, most first; equal ones by date."""
+def coverage_goal(choice: Choice) -> Wanted:
+    """Return the goal of covering every bin that the choice covers."""
+    question, bins = choice.question, choice.cover.covered
+    demand = question.demand
+    if isinstance(demand, Amount):
+        demand = replace(demand, demand=demand.demand[bins])
+    else:
+        demand = TemperatureError(demand.goal_k[bins])
+    where = (
+        "" if question.request.coverage.spot else f" in {words.count(int(bins.sum()), 'bin')} of longitude"
+    )
+    return Wanted(question.gain[:, bins], demand, question.goal + where)
+
+
+def preference(given: Offers, first: Index | None = None) -> Index:
+    """Return offers in order of information per cost, most first; equal ones by date.
+
+    Those in `first` come first; none overlaps another one of the same telescope.
+    """
     worth = given.information / np.maximum(given.cost, 1e-9)
-    return np.lexsort((given.start_tt_s, -np.round(worth / max(float(worth.max(initial=0.0)), 1e-300), 9)))
+    worth = np.round(worth / max(float(worth.max(initial=0.0)), 1e-300), 9)
+    ranked = np.lexsort((given.start_tt_s, -worth))
+    if first is not None:
+        ranked = np.concatenate((first, ranked[~np.isin(ranked, first)]))
+    kept: list[int] = []
+    for i in ranked:
+        same = [k for k in kept if given.telescope[k] == given.telescope[i]]
+        apart = (given.end_tt_s[i] <= given.start_tt_s[same]) | (given.end_tt_s[same] <= given.start_tt_s[i])
+        if np.all(apart):
+            kept.append(int(i))
+        if len(kept) == MOST:
+            break
+    return np.array(kept, dtype=np.int64)
 
 
 def weather_of(request: Request) -> Weather:
@@ -71,10 +134,12 @@ def nights(request: NamePath | Request) -> Result:
     """Return the probability of success against the number of nights requested.
 
     Nights are requested best first; all goals of the request must be reached by the clear ones together.
+    Where the request asks for coverage, they begin with the smallest cover, and go on with the nights that
+    help most against the weather.
 
     Returns:
-        A result with table ``nights``: ``nights`` (their cost), ``probability``, ``probability_error``,
-        ``observable_time``.
+        A result with tables ``nights`` (``nights``, ``probability``, ``probability_error``),
+        ``requested`` (which nights) and ``account`` (where the time goes).
 
     """
     record = as_request(request)
@@ -82,103 +147,170 @@ def nights(request: NamePath | Request) -> Result:
         return nights_of(record, scenes(record))
 
 
-def nights_of(request: Request, found: tuple[Scenario, ...]) -> Result:
-    """Return `nights` for scenarios that are at hand."""
-    given = offers(request, found)
+def nights_of(request: Request, found: tuple[Scenario, ...], choice: Choice | None = None) -> Result:
+    """Return `nights` for scenarios, and a cover, that are at hand."""
+    if request.coverage.asked and choice is None:
+        choice = choose(request, found)
+    covered = choice is not None and request.coverage.asked and bool(choice.cover.covered.any())
+    given = choice.question.offers if covered and choice is not None else offers(request, found)
     if not given.size:
         empty = table(column("nights", []), column("probability", []), column("probability_error", []))
         sentences = [unseen_words(scene) for scene in found]
         return Result(
             "nights", {"nights": empty}, {"request": Entry(request.name)}, sentences, feasible=False
         )
-    order = preference(given)[:MOST]
-    weather = weather_of(request)
-    curves = [
-        curve(wanted.gain, wanted.demand, given.day, given.cost, order, weather)
-        for wanted in goals_of(request, given)
-    ]
-    joint = _weakest(curves)
-    chosen = joint.smallest(request.weather.probability)
-    shown = _interesting(joint, chosen)
-    hours = np.cumsum(given.observable_s[order]) / 3600.0
-    header, sentences = _words(request, given, order, joint, chosen)
+    plan = plan_of(request, given, choice if covered else None)
+    tables = {"nights": _chances_table(plan)}
+    if plan.chosen is not None:
+        tables |= {"requested": _requested_table(plan), "account": _account_table(plan)}
+    complete = not request.coverage.asked or (choice is not None and bool(choice.cover.covered.all()))
+    sentences = sentences_of(plan, choice)
     return Result(
         "nights",
-        {
-            "nights": table(
-                column("nights", joint.cost[:shown], digits=3, description="requested, best first"),
-                column("probability", joint.probability[:shown], decimals=3),
-                column("probability_error", joint.probability_error[:shown], digits=2),
-                column("observable_time", hours[:shown], "h", decimals=1),
-                column("added", [given.name(int(i)) for i in order[:shown]]),
-                caption="Probability that the clear ones among the nights requested reach every goal",
-            )
-        },
-        header,
+        tables,
+        header_of(plan),
         sentences,
         sorted({warning for scene in found for warning in scene.warnings}),
-        feasible=chosen is not None and _within(request, float(joint.cost[chosen])),
+        feasible=complete and plan.chosen is not None and within_budget(plan),
     )
 
 
-def _weakest(curves: list[Curve]) -> Curve:
-    """Return the curve of reaching all goals.
+def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
+    """Return the order of requesting, its chances, and how much of it is needed."""
+    weather = weather_of(request)
+    goals = goals_of(request, given)
+    factors = factors_of(request, given) if request.weather.scatter else None
+    method, fixed = "", np.flatnonzero(np.isin(given.date, [text[:10] for text in request.dates.fixed]))
+    if choice is None:
+        order = preference(given, fixed)
+    else:
+        goals = [coverage_goal(choice), *goals]
+        order, method = _with_insurance(choice, goals[0], weather, factors)
+        order = preference(given, order)
+    chances = _chances(goals, given, order, weather, factors)
+    chosen = chances.smallest(request.weather.probability)
+    if choice is not None and chosen is not None and chosen >= choice.cover.chosen.size:
+        better, how = _with_insurance(choice, goals[0], weather, factors, float(chances.cost[chosen]))
+        again = preference(given, np.concatenate((better, order[~np.isin(order, better)])))
+        other = _chances(goals, given, again, weather, factors)
+        place = other.smallest(request.weather.probability)
+        if place is not None and other.cost[place] <= chances.cost[chosen]:
+            order, chances, chosen, method = again, other, place, how
+    return Plan(
+        request,
+        given,
+        order,
+        tuple(goals),
+        chances,
+        chosen,
+        _needed(goals, order),
+        choice,
+        method,
+        factors,
+    )
 
-    The goals share their weather, so that the rarest success implies the others nearly always: the smallest
-    of the probabilities is taken.
-    """
-    probability = np.min([each.probability for each in curves], axis=0)
-    error = np.max([each.probability_error for each in curves], axis=0)
-    return Curve(curves[0].units, curves[0].cost, probability, error)
+
+def _with_insurance(
+    choice: Choice, goal: Wanted, weather: Weather, factors: Array | None, cost_max: float | None = None
+) -> tuple[Index, str]:
+    """Return the cover and what helps most against the weather, in the order of asking, and the method."""
+    question, cover, request = choice.question, choice.cover, choice.question.request
+    given, rules = question.offers, question.rules
+    if choice.stare:
+        return np.arange(given.size), ""
+    most = min(rules.cost_max, 3.0 * cover.cost + 3.0 * float(given.cost.max()))
+    found = robust_set(
+        given.candidates(),
+        goal.gain,
+        goal.demand,
+        replace(rules, cost_max=most if cost_max is None else cost_max),
+        weather,
+        cover.chosen,
+        given.weather_day,
+        factors,
+        enough=min(request.weather.probability + SPARE, CERTAIN),
+    )
+    return np.concatenate((cover.chosen, found.added)), found.method
 
 
-def _interesting(joint: Curve, chosen: int | None) -> int:
+def _chances(
+    goals: list[Wanted], given: Offers, order: Index, weather: Weather, factors: Array | None
+) -> Curve:
+    """Return the probability of reaching every goal; exact where there is one, on one amount."""
+    day = given.weather_day
+    if len(goals) == 1:
+        return curve(goals[0].gain, goals[0].demand, day, given.cost, order, weather, factors)
+    pairs = [(goal.gain, goal.demand) for goal in goals]
+    return joint_curve(pairs, day, given.cost, order, weather, factors)
+
+
+def _needed(goals: list[Wanted], order: Index) -> int:
+    """Return how many of the order reach every goal when all is clear; 0 if all are too few."""
+    reached = np.ones(order.size, dtype=bool)
+    for goal in goals:
+        share = goal.demand.share(np.cumsum(goal.gain[order], axis=0))
+        reached &= np.all(share >= REACHED, axis=1)
+    return int(np.argmax(reached)) + 1 if reached.any() else 0
+
+
+def _chances_table(plan: Plan) -> Table:
+    given, order, chances = plan.offers, plan.order, plan.chances
+    size = _rows(chances, plan.chosen)
+    kept = order[:size]
+    base = 0 if plan.choice is None else int(plan.choice.cover.chosen.size)
+    first = max(base - 1, 0)
+    return table(
+        column("nights", plan.nights[:size], digits=3, description="requested, best first"),
+        column("probability", chances.probability[:size], decimals=3),
+        column("probability_error", chances.probability_error[:size], digits=2),
+        column("observable_time", np.cumsum(given.observable_s[kept]) / 3600.0, "h", decimals=1),
+        column("cost", chances.cost[:size], "h" if given.cost_unit == "h" else "", digits=4, shown=False),
+        column("added", [given.name(int(i)) for i in kept]),
+        caption="Probability that the clear ones among the nights requested reach every goal"
+        + (", from the cover on" if base else ""),
+        rows=range(first, min(size, max((plan.chosen or 0) + BEYOND, first + 8))),
+    )
+
+
+def _rows(chances: Curve, chosen: int | None) -> int:
     """Return how many rows are worth showing: to near certainty, or some beyond the answer."""
-    certain = (
-        int(np.argmax(joint.probability >= CERTAIN))
-        if (joint.probability >= CERTAIN).any()
-        else joint.units.size
+    sure = chances.probability >= CERTAIN
+    certain = int(np.argmax(sure)) if sure.any() else chances.units.size
+    return min(max(certain + 1, (chosen or 0) + 3, 5), chances.units.size)
+
+
+def _requested_table(plan: Plan) -> Table:
+    """Return the nights requested in order of time, each with its purpose."""
+    given, chosen = plan.offers, plan.order[: (plan.chosen or 0) + 1]
+    science = set(plan.order[: plan.needed].tolist())
+    chosen = chosen[np.argsort(given.start_tt_s[chosen], kind="stable")]
+    rows = chosen_table(given, chosen, given.information[:, None])
+    purpose = ["goal" if int(i) in science else "insurance" for i in chosen]
+    columns = (*rows.columns, column("purpose", purpose, description="if every night were clear"))
+    return replace(rows, columns=columns, caption="What to request, in order of time")
+
+
+def _account_table(plan: Plan) -> Table:
+    """Return where the hours of the request go."""
+    given, chosen = plan.offers, plan.order[: (plan.chosen or 0) + 1]
+    account = time_account(
+        given.observable_s[chosen],
+        given.shutter_s[chosen],
+        given.calibration_s[chosen],
+        given.cost[chosen],
+        np.arange(chosen.size) < plan.needed,
     )
-    return min(max(certain + 1, (chosen or 0) + 3, 5), joint.units.size)
-
-
-def _within(request: Request, cost: float) -> bool:
-    return request.budget.nights is None or cost <= request.budget.nights + 1e-9
-
-
-def _words(
-    request: Request, given: Offers, order: NDArray[np.int64], joint: Curve, chosen: int | None
-) -> tuple[dict[str, Entry], list[str]]:
-    weather = request.weather
-    wanted = words.probability(weather.probability)
-    goal_text = words.listing([each.text for each in goals_of(request, given)])
-    climate = f"{words.percent(weather.clear_fraction)} of the nights clear"
-    if weather.correlation:
-        climate += f", correlation {words.number(weather.correlation, 2)} from one night to the next"
-    header = {
-        "request": Entry(request.name),
-        "goal": Entry(goal_text),
-        "weather": Entry(climate),
-        "conditions": Entry(conditions_words(given.scenes[0].use, given.scenes[0].air)),
-    }
-    if chosen is None:
-        most = joint.cost[-1]
-        return header, [
-            f"Even {words.count(float(most), 'night')} reach {goal_text} with a probability of only "
-            f"{words.probability(float(joint.probability[-1]))}; {wanted} was wanted ({climate})."
-        ]
-    cost, chance = float(joint.cost[chosen]), float(joint.probability[chosen])
-    header["nights"] = Entry(cost, text=words.count(cost, "night"))
-    header["probability"] = Entry(chance, text=words.probability(chance))
-    sentences = [
-        f"Request {words.count(cost, 'night')}: with {climate} they reach {goal_text} with probability "
-        f"{words.probability(chance)} (wanted {wanted})."
-    ]
-    if not _within(request, cost):
-        budget = words.count(float(request.budget.nights or 0.0), "night")
-        sentences.append(f"That is more than the budget of {budget}: not feasible as it stands.")
-    sentences.append(
-        f"Best first these are {words.listing([given.name(int(i)) for i in order[: chosen + 1]][:6])}"
-        + (" and so on." if chosen >= 6 else ".")
+    seconds = np.array([account.science_s, account.overhead_s, account.calibration_s, account.weather_s])
+    needed_s = max(float(seconds[:3].sum()), 1e-9)
+    spent = np.append(account.nights_needed * seconds[:3] / needed_s, account.nights_weather)
+    purpose = ["open shutter", "overheads (acquisition, nods, readout, standards)", "calibration"]
+    purpose += ["allowance for the weather", "in all"]
+    unit = "h" if given.cost_unit == "h" else "nights"
+    return table(
+        column("purpose", purpose),
+        column("time", np.append(seconds, account.total_s) / 3600.0, "h", decimals=1),
+        column("share", np.append(seconds, account.total_s) / account.total_s, decimals=2),
+        column("cost", np.append(spent, account.nights_total), digits=3, description=f"in {unit}"),
+        caption="Time account of the request (time in which the target can be observed)",
+        rows=range(5),
     )
-    return header, sentences

@@ -12,6 +12,7 @@ from coldglow.describe.records import Orbit, Request
 from coldglow.plan.goal import with_floor
 from coldglow.plan.multicover import Candidates
 from coldglow.plan.stretches import Stretches, runs, table
+from coldglow.plan.weather import chain_day
 from coldglow.report import words
 from coldglow.scenario import Scenario
 from coldglow.sky.clock import iso_from_tt
@@ -73,6 +74,11 @@ class Offers:
         """Sites in space, where no cloud comes."""
         orbits = [isinstance(scene.use.instrument.place, Orbit) for scene in self.scenes]
         return tuple(sorted({int(s) for s, k in zip(self.site, self.scene, strict=True) if orbits[k]}))
+
+    @property
+    def weather_day(self) -> NDArray[np.float64]:
+        """Days for the planner's weather: each site has its own, space has none."""
+        return chain_day(self.day, self.site, self.cloudless)
 
     def candidates(self) -> Candidates:
         """Return the offers as candidates of a cover."""

@@ -18,6 +18,7 @@ Array: TypeAlias = NDArray[np.float64]
 Index: TypeAlias = NDArray[np.int64]
 
 BRUTE_SETS = 3000  # up to so many sets all are compared, beyond that the heuristic
+TRIED = 8  # candidates per bin, those of the largest gain per cost, that are tried as an addition
 SCORE_TRIALS = 1000  # histories in which sets are compared; the chosen one is judged in fresh ones
 CHOOSING, JUDGING = 1, 2  # streams of random numbers
 
@@ -53,6 +54,8 @@ class _Histories:
         self.candidates, self.gain, self.demand, self.rules = candidates, gain, demand, rules
         weight, self.chance, _ = drawn(day, few, CHOOSING, factors)
         self.weight = yields_of(weight, demand)
+        worth = np.minimum(demand.rows(gain, gain.sum(axis=0)).T, 1.0)
+        self.worth = worth / np.maximum(candidates.cost, 1e-9)[:, None]
 
     def total(self, chosen: Index) -> Array:
         return np.tensordot(self.weight[:, chosen], self.gain[chosen], axes=1)
@@ -68,10 +71,15 @@ class _Histories:
         return obeys(self.candidates, self.rules, mask)
 
     def best_addition(self, chosen: Index, pool: Index) -> tuple[int, float] | None:
-        """Candidate of the pool that raises the score most per cost, and the score with it."""
+        """Candidate of the pool that raises the score most per cost, and the score with it.
+
+        Only those are tried that bring some bin most per cost.
+        """
         total = self.total(chosen)
         before, best = self.score(total), None
-        for each in pool:
+        worth = self.worth[pool]
+        tried = np.unique(np.argsort(-worth, axis=0, kind="stable")[:TRIED].ravel())
+        for each in pool[tried[worth[tried].any(axis=1)]]:
             after = self.score(total + np.multiply.outer(self.weight[:, each], self.gain[each]))
             rise = (after - before) / max(float(self.candidates.cost[each]), 1e-9)
             better = rise > 1e-12 and (best is None or rise > best[2] * (1.0 + 1e-9))
@@ -110,7 +118,8 @@ def robust_set(
         day: ndarray[candidate], of the weather, from `chain_day`; default: the candidates' nights.
         factors: ndarray[trial, candidate] from `scatter_factors`; the first half serves to choose, the
             second to judge.
-        enough: probability, in the histories that choose, at which no more candidates are added.
+        enough: probability, in the histories that choose, at which no more candidates are added (and none
+            exchanged): a quick look at how much is needed.
 
     """
     if not np.isfinite(rules.cost_max):
@@ -132,6 +141,7 @@ def robust_set(
         added, method = _all_sets(histories, kept, free, largest), "all sets compared"
     else:
         added, method = _grow(histories, kept, free, enough), "greedy with exchanges"
+    added = _by_help(histories, kept, added)
     chosen = np.append(kept, added)
     chosen = chosen[np.lexsort((candidates.place[chosen], candidates.start_s[chosen]))]
     probability, error = 0.0, 0.0
@@ -154,6 +164,15 @@ def _all_sets(histories: _Histories, kept: Index, free: Index, largest: int) -> 
     return best
 
 
+def _by_help(histories: _Histories, kept: Index, added: Index) -> Index:
+    """Put what was added in the order in which it helps most."""
+    ordered = kept[:0]
+    while (rest := np.setdiff1d(added, ordered)).size:
+        found = histories.best_addition(np.append(kept, ordered), rest)
+        ordered = np.append(ordered, rest if found is None else found[0])
+    return ordered
+
+
 def _grow(histories: _Histories, kept: Index, free: Index, enough: float) -> Index:
     """Add the fixed, then what helps most; then exchange what was added freely while that helps."""
     rules, night = histories.rules, histories.candidates.night
@@ -171,7 +190,7 @@ def _grow(histories: _Histories, kept: Index, free: Index, enough: float) -> Ind
         if found is None:
             break
         added = np.append(added, found[0])
-    improved = True
+    improved = not np.isfinite(enough)
     while improved:
         improved = False
         for i in range(fixed, added.size):
