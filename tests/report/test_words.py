@@ -131,7 +131,7 @@ def test_dates_and_counts():
     assert words.days("2027-12-30", "2028-01-02") == "30 Dec 2027 to 2 Jan 2028"
     assert words.moment("2027-11-25T04:15:30.000") == "2027-11-25 04:15 UTC"
     assert words.count(1, "night") == "1 night"
-    assert words.count(2.5, "night") == "2.50 nights"
+    assert words.count(2.5, "night") == "2.5 nights"
     assert words.count(0, "visit") == "0 visits"
     assert words.listing(["a", "b", "c"]) == "a, b and c"
     assert words.listing(["a"]) == "a"

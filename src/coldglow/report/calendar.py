@@ -7,6 +7,7 @@ identifier is made from its contents, so the same plan gives the same bytes.
 from __future__ import annotations
 
 import hashlib
+import math
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
@@ -27,7 +28,10 @@ class Event:
 
 @dataclass(frozen=True, slots=True)
 class StretchFacts:
-    """What an observer wants to read in an event; angles in degrees, rates in arcsec per hour."""
+    """What an observer wants to read in an event; angles in degrees, rates in arcsec per hour.
+
+    In space the airmasses are nan.
+    """
 
     airmass_start: float
     airmass_end: float
@@ -46,9 +50,13 @@ class StretchFacts:
 
 def describe_stretch(facts: StretchFacts) -> tuple[str, ...]:
     """Return the lines of an event's description."""
-    lines = [
-        f"Airmass {facts.airmass_start:.2f} at the start, {facts.airmass_end:.2f} at the end, "
-        f"least {facts.airmass_min:.2f}",
+    lines = []
+    if math.isfinite(facts.airmass_min):
+        lines.append(
+            f"Airmass {facts.airmass_start:.2f} at the start, {facts.airmass_end:.2f} at the end, "
+            f"least {facts.airmass_min:.2f}"
+        )
+    lines += [
         f"Central longitude {facts.longitude_start_deg:.0f} to {facts.longitude_end_deg:.0f} deg "
         f"(system {facts.longitude_system})",
         f"Set-up: {facts.setting}, integrations of {facts.integration_s:.4g} s, {facts.coadds} co-added",

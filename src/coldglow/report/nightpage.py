@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from coldglow.report.page import render, view
-from coldglow.report.results import Entry, Table
+from coldglow.report.tables import Entry, Table
 
 _ROWS = 60
 

@@ -13,7 +13,7 @@ from markupsafe import Markup
 from coldglow.report import words
 from coldglow.report.figures import look
 from coldglow.report.record import Report
-from coldglow.report.results import Column, Table
+from coldglow.report.tables import Column, Table
 
 ROWS = 30
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 from coldglow.report import tex, words
 from coldglow.report.references import METHODS, Reference
-from coldglow.report.results import Column, Entry, Table
+from coldglow.report.tables import Column, Entry, Table
 
 _CITATION = re.compile(r"\[(@[\w:-]+(?:;\s*@[\w:-]+)*)\]")
 

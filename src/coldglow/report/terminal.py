@@ -8,7 +8,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 from coldglow.report import words
-from coldglow.report.results import Column, Result, Table
+from coldglow.report.tables import Column, Findings, Table
 
 WIDTH = 100
 ROWS = 40
@@ -16,7 +16,7 @@ _GAP = "  "
 _HTML_ROWS = 60
 
 
-def result_text(result: Result, width: int = WIDTH, rows: int = ROWS) -> str:
+def result_text(result: Findings, width: int = WIDTH, rows: int = ROWS) -> str:
     """Return sentences, tables, header values and warnings, in this order, folded to `width`."""
     blocks = [textwrap.fill(sentence, width) for sentence in result.sentences]
     blocks += [table_text(table, width, rows) for table in result.tables.values() if _printed_rows(table, 1)]
@@ -31,7 +31,7 @@ def result_text(result: Result, width: int = WIDTH, rows: int = ROWS) -> str:
     return "\n\n".join(blocks)
 
 
-def _header_lines(result: Result, width: int) -> Iterator[str]:
+def _header_lines(result: Findings, width: int) -> Iterator[str]:
     labels = {key: entry.label or words.sentence_case(key) for key, entry in result.header.items()}
     indent = min(max(len(label) for label in labels.values()), width // 2) + 2
     for key, entry in result.header.items():
@@ -102,7 +102,7 @@ def _panels(blocks: list[_Block], width: int) -> Iterator[list[_Block]]:
         yield panel
 
 
-def result_html(result: Result) -> str:
+def result_html(result: Findings) -> str:
     """Return the result for a notebook: sentences, tables with scoped headings, header values, warnings."""
     parts = [f"<p>{html.escape(sentence)}</p>" for sentence in result.sentences]
     parts += [table_html(table) for table in result.tables.values() if _printed_rows(table, 1)]

@@ -6,7 +6,7 @@ import unicodedata
 from collections.abc import Callable, Sequence
 
 from coldglow.report import words
-from coldglow.report.results import Column
+from coldglow.report.tables import Column
 
 _GREEK = {
     "α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ε": "epsilon", "θ": "theta",

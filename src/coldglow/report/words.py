@@ -216,7 +216,7 @@ def moment(iso: str) -> str:
 
 def count(amount: float, noun: str, plural: str = "") -> str:
     """Return a count with its noun: ``1 night``, ``3 nights``, ``2.5 nights``."""
-    text = number(amount, 3) if amount != round(amount) else f"{round(amount)}"
+    text = short(amount) if amount != round(amount) else f"{round(amount)}"
     return f"{text} {noun if amount == 1 else plural or noun + 's'}"
 
 

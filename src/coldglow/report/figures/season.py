@@ -15,6 +15,7 @@ from coldglow.report import words
 from coldglow.report.figures import look
 
 _NARROW = 0.4  # rates that differ by less than this fill the scale of colours; others start at zero
+_WIDE = 6.0  # points; of a run of nights that can carry a frame
 
 
 @look.styled
@@ -57,9 +58,7 @@ def season_chart(
     for edge in (dark_start_h, dark_end_h):
         if edge is not None:
             main.plot(index, edge, color=look.INK, linewidth=1, linestyle=look.DASHES[2])
-    width = min(1.3, 0.3 * 72 * look.WIDTH / len(nights))  # of a line, in points, against that of a night
-    for outline in _outlines(chosen):
-        main.add_patch(Polygon(outline, fill=False, edgecolor=look.BRICK, linewidth=width))
+    _frame(main, chosen, 72 * look.WIDTH / len(nights))
     main.set_xlim(-0.5, len(nights) - 0.5)
     main.set_ylim(top, bottom)
     _date_ticks(main, nights)
@@ -70,6 +69,17 @@ def season_chart(
     scale.tick_params(length=0)
     scale.set_title(rate_name, loc="right")
     return figure
+
+
+def _frame(axes: Axes, chosen: Sequence[tuple[int, float, float]], night_points: float) -> None:
+    """Frame each run of chosen nights; one too narrow for a frame is marked at start and end alone."""
+    for outline in _outlines(chosen):
+        left, right = outline[0][0], max(corner[0] for corner in outline)
+        if (right - left) * night_points > _WIDE:
+            axes.add_patch(Polygon(outline, fill=False, edgecolor=look.BRICK, linewidth=1.3))
+        else:
+            for end in (outline[0][1], outline[-1][1]):
+                axes.hlines(end, left, right, color=look.BRICK, linewidth=2.2)
 
 
 def _outlines(chosen: Sequence[tuple[int, float, float]]) -> list[list[tuple[float, float]]]:
