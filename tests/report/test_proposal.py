@@ -68,10 +68,9 @@ def test_tex_specials_are_escaped():
 @given(st.text(max_size=40))
 def test_escaped_text_holds_no_active_character(text):
     escaped = tex.escape(text)
-    bare = re.sub(
-        r"\\textbackslash\{\}|\\text[a-z]+\{\}|\\ldots\{\}|\$\^\{[^}]*\}\$|\$_\{\d\}\$|\$[^$]*\$", "", escaped
-    )
-    bare = re.sub(r"\\[{}$&#%_,]", "", bare)
+    bare = re.sub(r"\\[{}$&#%_,]", "", escaped)
+    bare = re.sub(r"\\(text[a-z]+|ldots)\{\}", "", bare)
+    bare = re.sub(r"\$[^$]*\$", "", bare)
     assert not set(bare) & set("\\{}$&#%_^")
     assert "\n" not in escaped
 
