@@ -151,25 +151,33 @@ def nights_of(request: Request, found: tuple[Scenario, ...], choice: Choice | No
     """Return `nights` for scenarios, and a cover, that are at hand."""
     if request.coverage.asked and choice is None:
         choice = choose(request, found)
+    return told(request, found, planned(request, found, choice), choice)
+
+
+def planned(request: Request, found: tuple[Scenario, ...], choice: Choice | None) -> Plan | None:
+    """Return what to request, best first, for a cover that is at hand; None where nothing can be observed."""
     covered = choice is not None and request.coverage.asked and bool(choice.cover.covered.any())
     given = choice.question.offers if covered and choice is not None else offers(request, found)
-    if not given.size:
+    return plan_of(request, given, choice if covered else None) if given.size else None
+
+
+def told(request: Request, found: tuple[Scenario, ...], plan: Plan | None, choice: Choice | None) -> Result:
+    """Return `nights` for a plan that is at hand."""
+    if plan is None:
         empty = table(column("nights", []), column("probability", []), column("probability_error", []))
         sentences = [unseen_words(scene) for scene in found]
         return Result(
             "nights", {"nights": empty}, {"request": Entry(request.name)}, sentences, feasible=False
         )
-    plan = plan_of(request, given, choice if covered else None)
     tables = {"nights": _chances_table(plan)}
     if plan.chosen is not None:
         tables |= {"requested": _requested_table(plan), "account": _account_table(plan)}
     complete = not request.coverage.asked or (choice is not None and bool(choice.cover.covered.all()))
-    sentences = sentences_of(plan, choice)
     return Result(
         "nights",
         tables,
         header_of(plan),
-        sentences,
+        sentences_of(plan, choice),
         sorted({warning for scene in found for warning in scene.warnings}),
         feasible=complete and plan.chosen is not None and within_budget(plan),
     )
