@@ -32,7 +32,7 @@ from coldglow.light.emission import optical_depth_warnings, validity_warnings
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import path_factor
 from coldglow.plan.stretches import Steps, runs
-from coldglow.sky.clock import TimeGrid, season_grid
+from coldglow.sky.clock import DAY_S, TimeGrid, night_numbers, season_grid
 from coldglow.sky.track import Track, make_track
 
 Array = NDArray[np.float64]
@@ -123,17 +123,23 @@ def follow(request: Request, use: Use, grid: TimeGrid) -> Track:
 
 
 def usable_steps(request: Request, track: Track) -> NDArray[np.bool_]:
-    """Return ndarray[time]: observable, on an offered night, not on a forbidden one."""
+    """Return ndarray[time]: observable, on an offered night (or half of one), not on a forbidden one."""
     dates = request.dates
-    allowed = np.array(
-        [
-            (not dates.offered or day in dates.offered) and day not in dates.forbidden
-            for day in track.night_dates
-        ],
-        dtype=bool,
-    )
+
+    def allows(day: str, half: str) -> bool:
+        named = {day, f"{day} {half}"}
+        return (not dates.offered or bool(named & {*dates.offered})) and not named & {*dates.forbidden}
+
+    allowed = np.array([[allows(day, half) for half in ("first", "second")] for day in track.night_dates])
     on_a_night = track.night >= 0
-    return np.asarray(track.observable & on_a_night & allowed[np.where(on_a_night, track.night, 0)])
+    half = second_half(track).astype(np.int64)
+    return np.asarray(track.observable & on_a_night & allowed[np.where(on_a_night, track.night, 0), half])
+
+
+def second_half(track: Track) -> NDArray[np.bool_]:
+    """Return ndarray[time]: after local mean midnight, so that twelve hours before it was the same night."""
+    tt_s = track.grid.tt_s
+    return np.asarray(night_numbers(track.place, tt_s - 0.5 * DAY_S) == night_numbers(track.place, tt_s))
 
 
 @dataclass(frozen=True, slots=True)

@@ -113,7 +113,8 @@ def bins_table(choice: Choice) -> Table:
     ]
     if coverage.spot or coverage.latitude_rad is not None:
         columns = [each for each in columns if each.name != "seen"]
-    return table(*columns, caption=f"Goal of each bin: {question.goal}", rows=range(question.bins))
+    caption = f"Goal: {question.goal}" if coverage.spot else f"Goal in each bin: {question.goal}"
+    return table(*columns, caption=caption, rows=range(question.bins))
 
 
 def nights_table(choice: Choice) -> Table:

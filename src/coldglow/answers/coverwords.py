@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.choice import Choice
+from coldglow.answers.offers import STRETCH, WHOLE
 from coldglow.describe.records import LongitudeSystem
 from coldglow.plan.goal import required_snr
 from coldglow.plan.rotation import advance_per_day_rad, closest_resonance
@@ -82,7 +83,7 @@ def _phase_words(system: LongitudeSystem, error_rad: float) -> str:
     if system.period_uncertainty_s == 0.0:
         return "unknown, the period has no stated uncertainty"
     if error_rad >= np.pi:
-        return f"± {words.quantity(np.degrees(error_rad), 'deg', 2)} (lost)"
+        return f"± {words.number(error_rad / (2.0 * np.pi), 2)} turns"
     return f"± {words.quantity(np.degrees(error_rad), 'deg', 2)}"
 
 
@@ -127,7 +128,8 @@ def _answer(choice: Choice) -> Iterator[str]:
             f"No choice within the limits covers everything. The one that covers most ({price}) gives {what}."
         )
     else:
-        yield f"{_parts_words(choice)} ({price}) give {what}" + (
+        verb = "gives" if cover.chosen.size == 1 else "give"
+        yield f"{_parts_words(choice)} ({price}) {verb} {what}" + (
             ", and no choice of lower cost does: proven."
             if cover.proven
             else f". The proof was stopped at the time limit of "
@@ -141,7 +143,7 @@ def _answer(choice: Choice) -> Iterator[str]:
     rest = len(names) - PARTS_LISTED
     tail = "" if rest <= 0 else f" and {rest} more (table below)"
     if not choice.stare:
-        yield f"They are {words.listing(names) if rest <= 0 else '; '.join(names[:PARTS_LISTED]) + tail}."
+        yield f"{'It is' if len(names) == 1 else 'They are'} {'; '.join(names[:PARTS_LISTED]) + tail}."
     if not any(k in given.cloudless for k in given.site[cover.chosen]):
         yield "This takes every night as clear; `coldglow nights` says which ones to add against the weather."
 
@@ -185,7 +187,7 @@ def _stare_words(choice: Choice) -> Iterator[str]:
         f"A stare of {words.duration(length_s)} ({words.number(turns, 3)} turns) from {begin}, {visits}, "
         f"gives {covered_words(choice)}"
         + (
-            "; no shorter one does, whenever it begins."
+            "; no shorter one that sees a full turn does, whenever it begins."
             if cover.kind == "full"
             else ": the longest there is."
         )
@@ -218,17 +220,17 @@ def _nothing(choice: Choice) -> str:
 
 
 def bin_ranges(chosen: NDArray[np.bool_], width_deg: float) -> str:
-    """Return the longitudes of the chosen bins in words, neighbours joined: ``30° to 90°``."""
+    """Return the longitudes of the chosen bins in words, neighbours joined: ``longitudes 30° to 90°``."""
     count = chosen.size
     if chosen.all():
-        return "all longitudes"
+        return "at all longitudes"
     starts = [b for b in range(count) if chosen[b] and not chosen[b - 1]]
     ranges = []
     for b in starts:
         length = next(n for n in range(1, count + 1) if not chosen[(b + n) % count])
         low, high = b * width_deg, ((b + length) % count) * width_deg or 360.0
         ranges.append(f"{words.short(low, 4)}° to {words.short(high, 4)}°")
-    return words.listing(ranges)
+    return f"longitudes {words.listing(ranges)}"
 
 
 def missing_words(choice: Choice) -> Iterator[str]:
@@ -240,20 +242,41 @@ def missing_words(choice: Choice) -> Iterator[str]:
     late = cover.reachable & ~cover.covered
 
     def where(chosen: NDArray[np.bool_]) -> str:
-        return f"the {spot}" if spot else f"longitudes {bin_ranges(chosen, width)}"
+        return f"the {spot}" if spot else bin_ranges(chosen, width)
 
     if never.any():
         yield f"Out of reach, {where(never)}: {_why_never(choice)}."
     if short.any():
-        best = float(cover.most[short].max())
-        yield (
-            f"Out of reach, {where(short)}: even all that is offered together gathers at most "
-            f"{words.percent(best)} of what the goal asks; {_rotation_words(choice)}."
-        )
+        yield f"Out of reach, {where(short)}: {_why_short(choice, short)}."
     if late.any() and cover.chosen.size:
         low, high = float(cover.share[late].min()), float(cover.share[late].max())
         got = words.percent(low) if high - low < 0.01 else f"{words.percent(low)} to {words.percent(high)}"
         yield f"Missing within the limits, {where(late)}: {got} of what the goal asks."
+
+
+def _why_short(choice: Choice, short: NDArray[np.bool_]) -> str:
+    """Return why bins get something, but not enough: seen too little, or too faint."""
+    question, most = choice.question, choice.cover.most
+    parts = question.offers.part
+    apart = parts == (
+        STRETCH if (parts == STRETCH).any() else WHOLE
+    )  # that share no time, or share all of it
+    hours = question.clock_s[apart].sum(axis=0) / 3600.0
+    if (parts == STRETCH).any():
+        hours *= 0.5  # stretches overlap by a half
+    best, worst = float(most[short].max()), float(most[short].min())
+    share = (
+        words.percent(best)
+        if best - worst < 0.05 * best
+        else f"{words.percent(worst)} to {words.percent(best)}"
+    )
+    seen = f"{words.number(float(hours[short].min()), 2)} to {words.number(float(hours[short].max()), 2)} h"
+    text = f"all that is offered gathers {share} of what the goal asks there, in {seen}"
+    if hours[short].mean() < 0.5 * hours.mean() or hours.size == 1:
+        return f"{text}; {_rotation_words(choice)}"
+    need = float(np.median(hours[short] / most[short]))
+    need_words = f"it would take some {words.number(need, 2)} h on each bin"
+    return f"{text}; the goal is too deep for this target: {need_words}"
 
 
 def _why_never(choice: Choice) -> str:
@@ -282,7 +305,8 @@ def _deg(angle_rad: float) -> str:
 
 def _rotation_words(choice: Choice) -> str:
     """Return how the rotation meets the nights of each instrument, in words with numbers."""
-    return "; ".join(_rotation_of(scene) for scene in choice.question.offers.scenes if scene.usable.any())
+    seen = [scene for scene in choice.question.offers.scenes if scene.usable.any()]
+    return "; ".join(dict.fromkeys(_rotation_of(scene) for scene in seen))
 
 
 def _rotation_of(scene: Scenario) -> str:

@@ -14,7 +14,7 @@ from coldglow.plan.multicover import Candidates
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.plan.weather import chain_day
 from coldglow.report import words
-from coldglow.scenario import Scenario
+from coldglow.scenario import Scenario, second_half
 from coldglow.sky.clock import iso_from_tt
 
 Index = NDArray[np.int64]
@@ -162,9 +162,7 @@ def pieces(scene: Scenario, unit: str, stretch_s: float, wholes: bool = False) -
         kind = np.full(first.size, STRETCH)
         return Pieces(first, end, np.arange(first.size), steps.night[first], kind)
     on_ground = not isinstance(scene.use.instrument.place, Orbit)
-    # a grid begins at the first whole step after local mean noon; noon of a night lies within a step of it
-    hour = np.mod(steps.time_s, 86400.0) / 3600.0
-    half = np.where(hour < 12.0, FIRST, SECOND)
+    half = np.where(second_half(scene.track), SECOND, FIRST)
     families = []
     if unit == "half-night" and on_ground:
         families.append(half)

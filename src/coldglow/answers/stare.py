@@ -99,7 +99,8 @@ def _seen(request: Request, scene: Scenario, edges: Index) -> NDArray[np.bool_]:
     seen = np.zeros((edges.shape[0], POINTS), dtype=bool)
     for begin, end in zip(turn.T[:-1] + lost, turn.T[1:], strict=True):
         seen |= np.mod(place - begin[:, None], 1.0) <= (end - begin)[:, None]
-    return np.asarray(seen.all(axis=1))
+    every: NDArray[np.bool_] = seen.all(axis=1)
+    return every
 
 
 def _visits(scene: Scenario, start: int, end: int, length: float) -> Pieces:
