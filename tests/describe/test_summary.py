@@ -35,9 +35,9 @@ def test_a_goal_without_snr(repository):
 
 
 def test_a_request(repository):
-    rows = summary(load_request(repository / "examples" / "uranus-two-sites.yaml"))
+    rows = summary(load_request(repository / "examples" / "neptune-two-sites.yaml"))
     assert [label for label, _ in rows].count("instrument") == 2
-    assert ("goal", "SNR 10 in all lines of the setting; with probability 0.9") in rows
+    assert ("goal", "SNR 3 in all lines of the setting; with probability 0.9") in rows
 
 
 @settings(deadline=None, suppress_health_check=[HealthCheck.too_slow, HealthCheck.data_too_large])
