@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from coldglow import cli
-from coldglow.report.files import read_result
+from coldglow.report.reading import read_result
 
 ROOT = Path(__file__).parent.parent
 SEASON = str(ROOT / "examples" / "uranus-season.yaml")

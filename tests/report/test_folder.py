@@ -9,8 +9,8 @@ from pathlib import Path
 import pytest
 
 from coldglow.errors import OutputError
-from coldglow.report.files import read_result
 from coldglow.report.folder import check_free, report_files, write_folder
+from coldglow.report.reading import read_result
 
 CONTENTS = {"report.html": "<p>é</p>", "figures/a.pdf": b"%PDF\x00", "tables/x.ecsv": "a\n"}
 

@@ -13,7 +13,8 @@ from hypothesis import strategies as st
 from hypothesis.extra import numpy as arrays
 
 from coldglow.errors import OutputError
-from coldglow.report.files import csv_text, ecsv_text, json_text, read_result
+from coldglow.report.files import csv_text, ecsv_text, json_text
+from coldglow.report.reading import read_result
 from coldglow.report.results import Column, Entry, Result, Table, column, table
 
 
