@@ -7,15 +7,12 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from coldglow.report import words
-
-if TYPE_CHECKING:
-    pass
 
 Scalar = float | int | bool | str
 
