@@ -103,6 +103,7 @@ def fetch(
         },
         [
             f"Stored {words.count(len(times), 'row')} from {words.moment(times[0])} to "
-            f"{words.moment(times[-1])}; write `body: {path.name}` in a target description to use them (for this place only)."
+            f"{words.moment(times[-1])}; write `body: {path.name}` in a target description to use them "
+            "(for this place only)."
         ],
     )
