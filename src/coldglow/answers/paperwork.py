@@ -8,6 +8,9 @@ from importlib.metadata import version
 import numpy as np
 
 from coldglow import __version__
+from coldglow.answers.fadewords import law_words
+from coldglow.answers.findings import Findings
+from coldglow.answers.scenes import conditions_words
 from coldglow.describe.records import Instrument, Request, Site, Target
 from coldglow.describe.resolved import assumed
 from coldglow.describe.summary import summary
@@ -39,19 +42,70 @@ def inputs_of(request: Request) -> dict[str, str]:
     return dict(summary(request))
 
 
-def assumptions_of(request: Request) -> list[Assumption]:
-    """Return every value that nobody wrote, and where it comes from."""
+def assumptions_of(found: Findings, standards: str = "") -> list[Assumption]:
+    """Return everything that was taken for granted: what the program decides, then what nobody wrote."""
+    request = found.request
+    listed = list(_decided(found, standards))
     records: list[Request | Target | Instrument] = [request, request.target]
     records += [use.instrument for use in request.uses]
-    found, seen = [], set()
+    seen = set()
     for record in records:
         kind = type(record).__name__.lower()
         for key, value in assumed(record):
-            what = f"{kind} {record.name}: {key}" if kind != "request" else key
+            what = f"{kind}{'' if record is request else f' {record.name}'}, {_spoken(key)}"
             if what not in seen:
                 seen.add(what)
-                found.append(Assumption(what, value, f"default of the {kind} format"))
-    return found
+                listed.append(Assumption(what, value, f"default of the {kind} format (`{key}`)"))
+    return listed
+
+
+def _spoken(key: str) -> str:
+    """Return a key path in words: ``weather.clear_fraction`` becomes ``weather: clear fraction``."""
+    return ": ".join(part.replace("_", " ") for part in key.split("."))
+
+
+def _decided(found: Findings, standards: str) -> Iterator[Assumption]:
+    request, target = found.request, found.request.target
+    emission, cooling = target.emission, target.cooling
+    state = words.with_error(emission.temperature_k.value, emission.temperature_k.uncertainty, "K")
+    column = words.with_error(emission.column_m2.value, emission.column_m2.uncertainty, "m-2")
+    yield Assumption(
+        "state of the ionosphere",
+        f"{state}, vertical column {column} (given as {emission.given_as})",
+        f"target {target.name}, block `emission`",
+    )
+    if found.fading is not None:
+        law = f"{law_words(emission, cooling)}; applied in the outlook only"
+        yield Assumption("cooling", law, f"target {target.name}, block `cooling`")
+    for scene in found.scenes:
+        use = scene.use
+        yield Assumption(
+            f"night assumed at {use.instrument.name}",
+            conditions_words(use, scene.air),
+            f"request, `conditions`: {request.conditions.name} quartile of the site, or as stated",
+        )
+    rotation = {system.name: system for system in target.rotation.systems}
+    default = request.longitudes == target.rotation.systems[0].name
+    system = rotation[request.longitudes]
+    yield Assumption(
+        "longitudes",
+        f"system {system.name}, period {words.number(system.period_s / 3600.0, 8)} h, growing {system.grows}",
+        f"the target's default: {target.rotation.reason}"
+        if default and target.rotation.reason
+        else "request",
+    )
+    yield Assumption(
+        "ephemeris", request.ephemeris or "JPL DE421, packaged", "request" if request.ephemeris else "default"
+    )
+    for each in found.exposed:
+        moment = each.result.header["moment"]
+        yield Assumption(
+            f"moment of the exposure figures, {each.seen.use.instrument.name}",
+            str(moment),
+            "chosen by the program",
+        )
+    yield Assumption("list of standard stars", standards or "packaged list", "option `standards`")
+    yield Assumption("random numbers", f"seed {request.weather.seed}", "request, `weather.seed`")
 
 
 def sources_of(request: Request) -> list[str]:

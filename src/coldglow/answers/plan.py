@@ -3,38 +3,52 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Iterator
 from pathlib import Path
 
-import numpy as np
-
+from coldglow.answers.chapters.comparison import comparison_chapter, worth_comparing
 from coldglow.answers.chapters.exposure import exposure_chapter
 from coldglow.answers.chapters.nights import nights_chapter
+from coldglow.answers.chapters.outlook import outlook_chapter
 from coldglow.answers.chapters.season import season_chapter
-from coldglow.answers.expose import expose_of, look, median_moment
-from coldglow.answers.hours import hours_of
+from coldglow.answers.chapters.turn import turn_chapter
+from coldglow.answers.findings import Findings, Tell, find_out
+from coldglow.answers.headline import answer, merit, verdict
 from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.nights import nights_of
+from coldglow.answers.justification import justification_of
 from coldglow.answers.paperwork import assumptions_of, cautions_of, inputs_of, sources_of, versions_of
-from coldglow.answers.scenes import scenes
+from coldglow.answers.telescope import calendar_of, pages_of
 from coldglow.describe.records import Request
 from coldglow.describe.resolved import resolved_text
-from coldglow.report import words
 from coldglow.report.folder import check_free, report_files, write_folder
+from coldglow.report.proposal import bibliography, justification_markdown, justification_tex
 from coldglow.report.record import Report, Section
 from coldglow.report.results import Entry, Result, column, table
-from coldglow.scenario import Scenario
+from coldglow.sky.stars import load_standards
 
 
-def plan(request: NamePath | Request, out: str | os.PathLike[str], force: bool = False) -> Result:
+def plan(
+    request: NamePath | Request,
+    out: str | os.PathLike[str],
+    force: bool = False,
+    standards: str = "",
+    tell: Tell = lambda step: None,
+) -> Result:
     """Answer everything the request asks and write it into a folder.
+
+    The folder holds ``report.html``, ``nights.html`` (a sheet for each night), ``observing.ics``,
+    ``justification.tex`` and ``.md`` with ``references.bib``, ``request.yaml`` as resolved, and the figures
+    and tables one by one. The same request gives the same bytes.
 
     Args:
         request: path or record.
         out: folder to be made; nothing half-written is left when the run is interrupted.
         force: move an existing folder aside first.
+        standards: path of a list of standard stars; default: the packaged one.
+        tell: called with a few words at the beginning of each step.
 
     Returns:
-        The headline numbers and the tables of the report, as a result.
+        The headline numbers and the names of the files, as a result.
 
     Raises:
         OutputError: the folder exists, or cannot be written.
@@ -42,10 +56,13 @@ def plan(request: NamePath | Request, out: str | os.PathLike[str], force: bool =
     """
     record, place = as_request(request), Path(out)
     check_free(place, force)
+    stars = load_standards(standards)
     with place_errors(*described(record)):
-        report = make_report(record)
-    contents = report_files(report)
-    contents["request.yaml"] = _resolved(record, report)
+        found = find_out(record, stars, tell)
+        tell("figures")
+        report = report_of(found, standards)
+        contents = report_files(report) | papers_of(found, report)
+    tell("writing")
     write_folder(place, contents, force)
     return Result(
         "plan",
@@ -57,64 +74,49 @@ def plan(request: NamePath | Request, out: str | os.PathLike[str], force: bool =
     )
 
 
-def make_report(request: Request) -> Report:
-    """Return the report of a request as a record, nothing written."""
-    found = scenes(request)
-    hours, nights = hours_of(request, found), nights_of(request, found)
-    requested = nights.header["nights"].value if "nights" in nights.header else 3
-    sections, sentences, exposed = [], [], []
-    for i, scene in enumerate(found):
-        if not scene.usable.any():
-            continue
-        seen = look(request, scene.use, scene.track.take([median_moment(scene)]))
-        result = expose_of(seen, "the median of the observable steps")
-        exposed.append(result)
-        sections.append(exposure_chapter(seen, result, f"-{i + 1}" if i else ""))
-        sentences += [*result.sentences[:1]]
-    feasible = bool(exposed) and nights.feasible and any(result.feasible for result in exposed)
-    sections = [
-        season_chapter(found, hours, int(np.ceil(float(requested)))),
-        *sections,
-        nights_chapter(request, nights),
-    ]
+def report_of(found: Findings, standards: str = "") -> Report:
+    """Return the report on what was found."""
+    request = found.request
     return Report(
         title=request.name,
-        verdict=_verdict(request, found, nights, feasible),
-        feasible=feasible,
-        answer=[*sentences, *nights.sentences, *hours.sentences],
-        figures_of_merit=_merit(exposed, nights),
-        sections=[section for section in sections if isinstance(section, Section)],
+        verdict=verdict(found),
+        feasible=found.feasible,
+        answer=answer(found),
+        figures_of_merit=merit(found),
+        sections=list(_chapters(found)),
         inputs=inputs_of(request),
-        assumptions=assumptions_of(request),
+        assumptions=assumptions_of(found, standards),
         sources=sources_of(request),
-        cautions=cautions_of(found),
+        cautions=cautions_of(found.scenes),
         versions=versions_of(),
         seed=request.weather.seed,
     )
 
 
-def _verdict(request: Request, found: tuple[Scenario, ...], nights: Result, feasible: bool) -> str:
-    name = request.target.name
-    if not any(scene.usable.any() for scene in found):
-        return f"Not feasible: {name} cannot be observed on these nights"
-    if feasible:
-        return f"Feasible: ask for {nights.header['nights']}"
-    return f"Not feasible as it stands: {name} does not reach the goal within the budget"
+def _chapters(found: Findings) -> Iterator[Section]:
+    for i, each in enumerate(found.exposed):
+        yield exposure_chapter(each.seen, each.result, each.brightness, f"-{i + 1}" if i else "")
+    if found.visible and worth_comparing(found.comparison):
+        yield comparison_chapter(found.comparison)
+    why = "the stretches to ask for" if "nights" in found.nights.header else "the best within the budget"
+    yield season_chapter(found.scenes, found.hours, found.stretches, why)
+    if found.cover is not None:
+        yield turn_chapter(found.choice, found.cover)
+    yield nights_chapter(found.request, found.nights)
+    if found.fading is not None and found.fade is not None:
+        yield outlook_chapter(found.fading, found.fade)
 
 
-def _merit(exposed: list[Result], nights: Result) -> dict[str, Entry]:
-    """Return the headline numbers of the first instrument and of the request."""
-    wanted = ("time_to_goal", "time_to_temperature_error", "time_to_column_error")
-    merit = {name: entry for result in exposed[:1] for name, entry in result.header.items() if name in wanted}
-    for name in ("nights", "probability", "weather"):
-        if name in nights.header:
-            merit[name] = nights.header[name]
-    for result in exposed[:1]:
-        merit |= {name: result.header[name] for name in ("temperature", "column", "conditions")}
-    return merit
-
-
-def _resolved(request: Request, report: Report) -> str:
-    """Return the resolved request, with versions and seed in comments on top."""
+def papers_of(found: Findings, report: Report) -> dict[str, str]:
+    """Return the files beside the page: for the proposal, for the telescope, and the request as resolved."""
+    text = justification_of(found)
+    pairs = list(zip(found.stretches, found.standards, strict=True))
     versions = ", ".join(f"{name} {number}" for name, number in report.versions.items())
-    return f"# resolved by {versions}\n# seed {words.number(report.seed or 0, 10)}\n{resolved_text(request)}"
+    return {
+        "justification.tex": justification_tex(text),
+        "justification.md": justification_markdown(text),
+        "references.bib": bibliography(text.cited()),
+        "observing.ics": calendar_of(found.request, pairs),
+        "nights.html": pages_of(found.request, pairs),
+        "request.yaml": f"# resolved by {versions}\n# seed {report.seed}\n{resolved_text(found.request)}",
+    }

@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coldglow.answers.expose import Look
+from coldglow.answers.findings import Brightness
 from coldglow.detect.beam import Disk, point_spread, slit_angle
 from coldglow.detect.season import longitude_for_spots_rad, spot_system
 from coldglow.light.shell import view_of
@@ -19,12 +21,13 @@ from coldglow.report.results import Result
 from coldglow.scenario import air_over
 
 ARCSEC_PER_RAD = 206264.80624709636
+POINTS = 150  # of a curve
 
 
-def exposure_chapter(seen: Look, result: Result, tag: str = "") -> Section:
+def exposure_chapter(seen: Look, result: Result, light: Brightness, tag: str = "") -> Section:
     """Return the chapter of one instrument; `tag` ends the names of its files."""
     name = f"{seen.use.instrument.name}, {seen.use.setting.name}"
-    pictures = [_spectrum(seen, result, tag), _against_time(seen, result, tag), _disk(seen, tag)]
+    pictures = [_spectrum(seen, result, tag), _against_time(seen, result, light, tag), _disk(seen, tag)]
     ellipse = _ellipse(seen, result, tag)
     tables = {
         f"exposure-time{tag}": result.table("time"),
@@ -77,22 +80,37 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
     )
 
 
-def _against_time(seen: Look, result: Result, tag: str) -> Picture:
-    table, noise = result.table("time"), result.table("noise")
+def _against_time(seen: Look, result: Result, light: Brightness, tag: str) -> Picture:
+    noise, goal = result.table("noise"), seen.request.goal
     shares = {str(s): float(v) for s, v in zip(noise["source"], noise["variance_share"], strict=True)}
-    goal = seen.request.goal.snr
     need = result.header.get("time_to_goal")
     time_h = float(need.value) if need is not None else np.inf
-    within = table["clock_time"] <= max(2.5 * time_h if np.isfinite(time_h) else 12.0, 2.0)
-    count = max(int(within.sum()), 4)
-    clock, snr = table["clock_time"][:count], table["snr"][:count]
-    fine = np.linspace(clock[0], clock[-1], 200)
+    last_s = 3600.0 * max(2.2 * time_h if np.isfinite(time_h) else 12.0, 1.0)
+    clock_s = np.linspace(0.0, last_s, POINTS)
+
+    def snr(factor: float) -> NDArray[np.float64]:
+        visit = seen.visit_in(seen.state.temperature_k, factor * seen.state.column_m2)
+        return visit.snr(visit.open_s(clock_s))
+
+    brighter, fainter = np.exp(light.random), np.exp(-light.random)
+    expected = snr(1.0)
+    figure = snr_against_time(
+        clock_s / 3600.0,
+        expected,
+        shares,
+        goal.snr,
+        time_h,
+        snr(fainter),
+        snr(brighter),
+        goal.probability if goal.probability != 0.5 else None,
+    )
     return Picture(
         f"snr-time{tag}",
-        snr_against_time(fine, np.interp(np.sqrt(fine), np.sqrt(clock), snr), shares, goal, time_h),
-        f"SNR against clock time, rising to {snr[-1]:.3g} after {clock[-1]:.3g} hours.",
+        figure,
+        f"SNR against clock time, rising to {expected[-1]:.3g} after {last_s / 3600.0:.3g} hours.",
         "How the signal-to-noise ratio of all the goal's lines together grows with time on the clock; the "
-        "bar below says where the noise comes from.",
+        f"band is a planet 1σ brighter or fainter (± {words.percent(light.random)}). The bar below says where "
+        "the noise comes from.",
     )
 
 

@@ -15,7 +15,7 @@ def nights_chapter(request: Request, result: Result) -> Section:
     """Return the chapter of the request's size."""
     table = result.table()
     pictures = []
-    if len(table) > 1:
+    if len(table) > 1 and float(table["nights"][-1]) > float(table["nights"][0]):
         weather = request.weather
         requested = result.header["nights"].value if "nights" in result.header else None
         curve = ChanceCurve(
@@ -37,4 +37,6 @@ def nights_chapter(request: Request, result: Result) -> Section:
                 f"smallest request that reaches the wanted {wanted}.",
             )
         ]
-    return Section("How many nights to request", result.sentences, pictures, dict(result.tables))
+    names = {"nights": "nights", "requested": "requested", "account": "time-account"}
+    tables = {names[name]: each for name, each in result.tables.items()}
+    return Section("How many nights to request", result.sentences, pictures, tables)

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from coldglow.answers.chosen import Stretch, stretches_table
 from coldglow.answers.scenes import information_rate
 from coldglow.plan.stretches import Steps
 from coldglow.plan.stretches import season_chart as lay_out
@@ -18,47 +20,50 @@ from coldglow.report.results import Result
 from coldglow.scenario import Scenario
 from coldglow.sky.clock import tt_from_iso
 
-MOST_NIGHTS = 9
+LISTED = 9  # nights named in a caption
 
 
-def season_chapter(scenes: tuple[Scenario, ...], result: Result, best: int) -> Section:
-    """Return the chapter; `best` is how many of the best stretches are framed and drawn one by one."""
+def season_chapter(
+    scenes: tuple[Scenario, ...], hours: Result, chosen: Sequence[Stretch], why: str
+) -> Section:
+    """Return the chapter; `chosen` are framed and drawn one by one, `why` says in a few words why these."""
     pictures = []
     for i, scene in enumerate(scenes):
         if not scene.usable.any():
             continue
         tag = f"-{i + 1}" if i else ""
-        mine = np.flatnonzero(result["instrument"] == scene.use.instrument.name)[: min(best, MOST_NIGHTS)]
-        pictures += [_chart(scene, result, mine, tag)]
-        if mine.size and np.isfinite(scene.track.altitude_rad).any():
-            pictures += [_nights(scene, result, mine, tag)]
-    return Section("Which hours are best", result.sentences, pictures, {"hours": result.table()})
+        mine = [stretch for stretch in chosen if stretch.scene is scene]
+        pictures += [_chart(scene, mine, tag, why)]
+        if mine and np.isfinite(scene.track.altitude_rad).any():
+            pictures += [_nights(scene, mine, tag)]
+    tables = {"stretches": stretches_table(chosen)} if chosen else {}
+    return Section("Which hours are best", hours.sentences, pictures, {**tables, "hours": hours.table()})
 
 
-def _hour(scene: Scenario, iso: str, night: str) -> float:
+def _hours_from(night: str, tt_s: NDArray[np.float64] | float) -> NDArray[np.float64]:
     """Return hours from 0 UTC of an evening date."""
-    return (tt_from_iso(iso) - tt_from_iso(night)) / 3600.0
+    return np.asarray((np.asarray(tt_s) - tt_from_iso(night)) / 3600.0)
 
 
-def _chart(scene: Scenario, result: Result, rows: NDArray[np.int64], tag: str) -> Picture:
+def _chart(scene: Scenario, chosen: Sequence[Stretch], tag: str, why: str) -> Picture:
     steps, track = scene.steps, scene.track
     snr_hour = np.sqrt(3600.0 * information_rate(scene) * steps.shutter_share)
     hours, chart = lay_out(steps, snr_hour)
     first = track.night_dates[0]
-    offset = _hour(scene, track.grid.start_utc, first) - steps.time_s[0] / 3600.0
+    offset = float(_hours_from(first, track.grid.tt_s[0])) - steps.time_s[0] / 3600.0
     dates = [str(np.datetime64(first) + day) for day in range(chart.shape[0])]
     dark = np.where(track.limited_by["daylight"], np.nan, 1.0)
     _, night = lay_out(_everywhere(scene), dark)
     begin, end = _edges(hours, night)
     columns = np.flatnonzero(np.isfinite(chart).any(axis=0) | np.isfinite(night).any(axis=0))
     part = slice(max(columns[0] - 1, 0), columns[-1] + 2) if columns.size else slice(None)
-    chosen = [
+    frames = [
         (
-            dates.index(str(result["night"][row])),
-            _hour(scene, str(result["start"][row]), str(result["night"][row])),
-            _hour(scene, str(result["end"][row]), str(result["night"][row])),
+            dates.index(stretch.night),
+            float(_hours_from(stretch.night, stretch.start_tt_s)),
+            float(_hours_from(stretch.night, stretch.end_tt_s)),
         )
-        for row in rows
+        for stretch in chosen
     ]
     in_space = not np.isfinite(track.altitude_rad).any()
     figure = season_chart(
@@ -67,16 +72,18 @@ def _chart(scene: Scenario, result: Result, rows: NDArray[np.int64], tag: str) -
         chart[:, part],
         None if in_space else begin + offset,
         None if in_space else end + offset,
-        chosen,
+        frames,
     )
     name = scene.use.instrument.name
+    outline = "" if in_space else "the outline is the dark part of the night, "
+    frame = f"{outline}the frames are {why}" if frames else outline.removesuffix(", ")
     return Picture(
         f"season{tag}",
         figure,
         f"Hours of the night against date from {dates[0]} to {dates[-1]} for {name}, coloured by the SNR of "
         "one hour.",
         f"Every observable hour of the season with {name}, coloured by the SNR that one hour of clock time "
-        "would bring; the outline is the dark part of the night, the frames are the best stretches.",
+        f"would bring{'; ' if frame else ''}{frame}.",
     )
 
 
@@ -97,40 +104,39 @@ def _edges(
     return first, last
 
 
-def _nights(scene: Scenario, result: Result, rows: NDArray[np.int64], tag: str) -> Picture:
+def _nights(scene: Scenario, chosen: Sequence[Stretch], tag: str) -> Picture:
     track = scene.track
-    hour = track.grid.time_s / 3600.0
     curves = []
-    for row in sorted(rows, key=lambda r: str(result["night"][r])):
-        night = str(result["night"][row])
+    for night in list(dict.fromkeys(stretch.night for stretch in chosen)):
         index = np.flatnonzero(
             (track.night == track.night_dates.index(night))
             & ~track.limited_by["daylight"]
             & (track.altitude_rad > 0.0)
         )
-        origin = _hour(scene, track.grid.start_utc, night) - hour[0]
-        at = hour[index] + origin
-        start, end = (_hour(scene, str(result[name][row]), night) for name in ("start", "end"))
+        picked = np.zeros(track.grid.time_s.size, dtype=bool)
+        for stretch in chosen:
+            if stretch.night == night:
+                picked[stretch.first : stretch.end] = True
         curves.append(
             NightCurve(
                 night,
-                at,
+                _hours_from(night, track.grid.tt_s[index]),
                 np.degrees(track.altitude_rad[index]),
                 np.degrees(track.sub_observer_longitude_rad[index]),
-                (at >= start) & (at <= end),
+                picked[index],
             )
         )
-    system = track.system.name
     figure = chosen_nights(
         curves,
         float(np.degrees(scene.use.instrument.limits.altitude_min_rad)),
-        f"central longitude, system {system}",
+        f"central longitude, system {track.system.name}",
     )
-    dates = words.listing([words.day(curve.night) for curve in curves])
+    shown = [words.day(curve.night) for curve in curves]
+    dates = words.listing(shown) if len(shown) <= LISTED else f"{len(shown)} nights from {shown[0]}"
     return Picture(
         f"nights-one-by-one{tag}",
         figure,
         f"Altitude and central longitude against the hour on {dates}.",
-        "The best nights one by one: how high the planet stands (above) and which longitude faces us "
-        "(below); the thick parts are the stretches that can be observed.",
+        "The chosen nights one by one: how high the planet stands (above) and which longitude faces us "
+        "(below); the thick parts are the stretches to observe.",
     )
