@@ -248,22 +248,36 @@ def missing_words(choice: Choice) -> Iterator[str]:
         yield f"Out of reach, {where(never)}: {_why_never(choice)}."
     if short.any():
         yield f"Out of reach, {where(short)}: {_why_short(choice, short)}."
+    if turned_away(choice).any():
+        yield f"The reason: {_rotation_words(choice)}."
     if late.any() and cover.chosen.size:
         low, high = float(cover.share[late].min()), float(cover.share[late].max())
         got = words.percent(low) if high - low < 0.01 else f"{words.percent(low)} to {words.percent(high)}"
         yield f"Missing within the limits, {where(late)}: {got} of what the goal asks."
 
 
+def offered_hours(choice: Choice) -> NDArray[np.float64]:
+    """Return the hours on each bin of all that is offered, without counting any twice."""
+    question = choice.question
+    part, clock_s = question.offers.part, question.clock_s
+    if (part == STRETCH).any():
+        overlap = 1.0 if choice.stare else 0.5  # stretches begin every half of their length
+        return np.asarray(overlap * clock_s.sum(axis=0) / 3600.0)
+    return np.asarray(clock_s[part == WHOLE].sum(axis=0) / 3600.0)
+
+
+def turned_away(choice: Choice) -> NDArray[np.bool_]:
+    """Return the bins that cannot be reached because they are seen far less than others, if at all."""
+    coverage, hours = choice.question.request.coverage, offered_hours(choice)
+    if coverage.latitude_rad is not None:
+        return np.zeros(hours.size, dtype=bool)
+    seldom = np.asarray((hours < 0.5 * hours.mean()) | (hours <= 0.0), dtype=bool)
+    return ~choice.cover.reachable & seldom
+
+
 def _why_short(choice: Choice, short: NDArray[np.bool_]) -> str:
     """Return why bins get something, but not enough: seen too little, or too faint."""
-    question, most = choice.question, choice.cover.most
-    parts = question.offers.part
-    apart = parts == (
-        STRETCH if (parts == STRETCH).any() else WHOLE
-    )  # that share no time, or share all of it
-    hours = question.clock_s[apart].sum(axis=0) / 3600.0
-    if (parts == STRETCH).any():
-        hours *= 0.5  # stretches overlap by a half
+    most, hours = choice.cover.most, offered_hours(choice)
     best, worst = float(most[short].max()), float(most[short].min())
     share = (
         words.percent(best)
@@ -272,8 +286,8 @@ def _why_short(choice: Choice, short: NDArray[np.bool_]) -> str:
     )
     seen = f"{words.number(float(hours[short].min()), 2)} to {words.number(float(hours[short].max()), 2)} h"
     text = f"all that is offered gathers {share} of what the goal asks there, in {seen}"
-    if hours[short].mean() < 0.5 * hours.mean() or hours.size == 1:
-        return f"{text}; {_rotation_words(choice)}"
+    if turned_away(choice)[short].any():
+        return text
     need = float(np.median(hours[short] / most[short]))
     need_words = f"it would take some {words.number(need, 2)} h on each bin"
     return f"{text}; the goal is too deep for this target: {need_words}"
@@ -283,7 +297,7 @@ def _why_never(choice: Choice) -> str:
     request, scenes = choice.question.request, choice.question.offers.scenes
     latitude = request.coverage.latitude_rad
     if request.coverage.spot:
-        return "it is never in view while the target can be observed; " + _rotation_words(choice)
+        return "it is never in view while the target can be observed"
     if latitude is not None:
         seen = np.concatenate([s.track.sub_observer_latitude_rad[s.usable] for s in scenes])
         nearest = float(np.abs(seen - latitude).min())
@@ -296,7 +310,7 @@ def _why_never(choice: Choice) -> str:
             )
         if request.coverage.lit != "any":
             return f"they are never in view by {request.coverage.lit} within the angle asked"
-    return "they never face us while the target can be observed; " + _rotation_words(choice)
+    return "they never face us while the target can be observed"
 
 
 def _deg(angle_rad: float) -> str:

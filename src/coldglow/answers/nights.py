@@ -19,6 +19,7 @@ from coldglow.plan.account import time_account
 from coldglow.plan.demand import Amount, Demand, TemperatureError
 from coldglow.plan.goal import demanded_information, required_snr
 from coldglow.plan.insurance import robust_set
+from coldglow.plan.multicover import Rules
 from coldglow.plan.nights import REACHED, Curve, Weather, curve, joint_curve
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, Table, column, table
@@ -194,12 +195,13 @@ def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
     else:
         goals = [coverage_goal(choice), *goals]
         order, method = _with_insurance(choice, goals[0], weather, factors)
-        order = preference(given, order)
+        order = preference(given, order) if choice.question.rules == Rules() else order[:MOST]
     chances = _chances(goals, given, order, weather, factors)
     chosen = chances.smallest(request.weather.probability)
     if choice is not None and chosen is not None and chosen >= choice.cover.chosen.size:
         better, how = _with_insurance(choice, goals[0], weather, factors, float(chances.cost[chosen]))
-        again = preference(given, np.concatenate((better, order[~np.isin(order, better)])))
+        again = np.concatenate((better, order[~np.isin(order, better)]))
+        again = preference(given, again) if choice.question.rules == Rules() else better
         other = _chances(goals, given, again, weather, factors)
         place = other.smallest(request.weather.probability)
         if place is not None and other.cost[place] <= chances.cost[chosen]:

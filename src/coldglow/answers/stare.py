@@ -65,27 +65,33 @@ def _shortest(
 ) -> tuple[int, int] | None:
     """Return start and length of the shortest stare of so many visits; None where none reaches the goals."""
 
-    def reaches(chosen: Index, length: Index) -> NDArray[np.bool_]:
-        edges = np.round(chosen[:, None] + length[:, None] * np.arange(visits + 1) / visits).astype(np.int64)
-        owner = np.repeat(np.arange(chosen.size), visits)
-        total = gathered(
-            request, scene, view, edges[:, :-1].ravel(), edges[:, 1:].ravel(), owner, chosen.size
+    def reaches(length: int) -> NDArray[np.bool_]:
+        fits = np.flatnonzero(room >= length)
+        edges = np.round(starts[fits, None] + length * np.arange(visits + 1) / visits).astype(np.int64)
+        first, end = edges[:, :-1].ravel(), edges[:, 1:].ravel()
+        owner = np.repeat(np.arange(fits.size), visits)
+        gain, demand, _ = goal_of(
+            request, (scene,), *gathered(request, scene, view, first, end, owner, fits.size)
         )
-        gain, demand, _ = goal_of(request, (scene,), *total)
-        return np.all(demand.share(gain) >= REACHED, axis=1) & _seen(request, scene, edges)
+        good = np.zeros(starts.size, dtype=bool)
+        good[fits] = np.all(demand.share(gain) >= REACHED, axis=1) & _seen(request, scene, edges)
+        return good
 
-    high = np.minimum(room, visits * most)
-    good = reaches(starts, high)
+    low, high = visits - 1, min(visits * most, int(room.max()))
+    good = reaches(high)
     if not good.any():
         return None
-    starts, high = starts[good], high[good]
-    low = np.full_like(high, visits - 1)
-    while np.any(high - low > 1):
+    start = int(starts[np.argmax(good)])
+    while high - low > 1:
         middle = (low + high) // 2
-        enough = reaches(starts, np.maximum(middle, visits))
-        low, high = np.where(enough, low, middle), np.where(enough, middle, high)
-    best = int(np.argmin(high))
-    return int(starts[best]), int(high[best])
+        good = reaches(middle)
+        if good.any():
+            high, start = middle, int(starts[np.argmax(good)])
+            still = good | (room < middle)  # what fails at one length fails at a shorter one
+            starts, room = starts[still], room[still]
+        else:
+            low = middle
+    return start, high
 
 
 def _seen(request: Request, scene: Scenario, edges: Index) -> NDArray[np.bool_]:
@@ -99,8 +105,7 @@ def _seen(request: Request, scene: Scenario, edges: Index) -> NDArray[np.bool_]:
     seen = np.zeros((edges.shape[0], POINTS), dtype=bool)
     for begin, end in zip(turn.T[:-1] + lost, turn.T[1:], strict=True):
         seen |= np.mod(place - begin[:, None], 1.0) <= (end - begin)[:, None]
-    every: NDArray[np.bool_] = seen.all(axis=1)
-    return every
+    return np.asarray(np.all(seen, axis=1), dtype=bool)
 
 
 def _visits(scene: Scenario, start: int, end: int, length: float) -> Pieces:
