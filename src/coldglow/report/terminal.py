@@ -12,6 +12,7 @@ from coldglow.report.tables import Column, Findings, Table
 
 WIDTH = 100
 ROWS = 40
+FOLDED = 28  # no text is folded to less
 _GAP = "  "
 _HTML_ROWS = 60
 
@@ -41,20 +42,30 @@ def _header_lines(result: Findings, width: int) -> Iterator[str]:
 
 
 def table_text(table: Table, width: int = WIDTH, rows: int = ROWS) -> str:
-    """Return one table; columns that do not fit go into a further panel that repeats the first column."""
+    """Return one table.
+
+    Long texts are folded; columns that still do not fit go into a further panel that repeats the first.
+    """
     chosen = list(_printed_rows(table, rows))
     shown = [column for column in table.columns if column.shown]
     with_units = any(column.unit for column in shown)
     blocks = [_Block.of(column, chosen, with_units) for column in shown]
+    excess = sum(block.size for block in blocks) + len(_GAP) * (len(blocks) - 1) - width
+    widest = max(range(len(blocks)), key=lambda i: (not blocks[i].right, blocks[i].size), default=0)
+    if blocks and excess > 0 and not blocks[widest].right and blocks[widest].size > FOLDED:
+        fold = max(blocks[widest].size - excess, FOLDED)
+        blocks[widest] = _Block.of(shown[widest], chosen, with_units, fold)
     lines = [textwrap.fill(table.caption, width), ""] if table.caption else []
     for number, panel in enumerate(_panels(blocks, width)):
         if number:
             lines.append("")
         height = max(len(block.heading) for block in panel)
         lines += [
-            _GAP.join(block.line(index, height) for block in panel).rstrip()
-            for index in range(height + 1 + len(chosen))
+            _GAP.join(block.head(index, height) for block in panel).rstrip() for index in range(height + 1)
         ]
+        for row in range(len(chosen)):
+            tall = max(len(block.cells[row]) for block in panel)
+            lines += [_GAP.join(block.cell(row, part) for block in panel).rstrip() for part in range(tall)]
     if len(chosen) < len(table):
         lines.append(f"({len(chosen)} of {len(table)} rows; a file written with --write holds them all)")
     return "\n".join(lines)
@@ -67,26 +78,35 @@ def _printed_rows(table: Table, rows: int) -> range | tuple[int, ...]:
 
 @dataclass(frozen=True, slots=True)
 class _Block:
-    """Heading lines (words folded to the width of the values, then the unit) and cells of one column."""
+    """Heading lines (words folded to the width of the values, then the unit) and cells of one column.
+
+    A cell is a list of lines, more than one where a long text was folded.
+    """
 
     heading: list[str]
-    cells: list[str]
+    cells: list[list[str]]
     size: int
     right: bool
 
     @classmethod
-    def of(cls, column: Column, rows: list[int], with_units: bool) -> _Block:
-        cells = [column.text(row) for row in rows]
-        widest = max(map(len, cells), default=0)
+    def of(cls, column: Column, rows: list[int], with_units: bool, fold: int = 10_000) -> _Block:
+        cells = [textwrap.wrap(text, fold) if len(text) > fold else [text] for text in map(column.text, rows)]
+        widest = max((len(line) for cell in cells for line in cell), default=0)
         heading = textwrap.wrap(column.name.replace("_", " "), max(widest, 9), break_long_words=False)
         if with_units:
             heading.append(words.unit(column.unit))
-        return cls(heading, cells, max(map(len, heading + cells)), column.numeric)
+        return cls(heading, cells, max(widest, *map(len, heading)), column.numeric)
 
-    def line(self, index: int, height: int) -> str:
-        """Return a line of the column: heading lines flush with the rule below them, rule, cells."""
-        lines = [""] * (height - len(self.heading)) + self.heading + ["─" * self.size] + self.cells
-        return lines[index].rjust(self.size) if self.right else lines[index].ljust(self.size)
+    def head(self, index: int, height: int) -> str:
+        """Return a line of the heading, flush with the rule below it, or the rule."""
+        return self._set(([""] * (height - len(self.heading)) + self.heading + ["─" * self.size])[index])
+
+    def cell(self, row: int, part: int) -> str:
+        """Return one of the lines of a cell."""
+        return self._set(self.cells[row][part] if part < len(self.cells[row]) else "")
+
+    def _set(self, text: str) -> str:
+        return text.rjust(self.size) if self.right else text.ljust(self.size)
 
 
 def _panels(blocks: list[_Block], width: int) -> Iterator[list[_Block]]:
