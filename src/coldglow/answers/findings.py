@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coldglow.answers.choice import Choice, choose
 from coldglow.answers.chosen import Stretch, asked_for
@@ -15,11 +16,14 @@ from coldglow.answers.expose import Look, expose_of, look, median_moment
 from coldglow.answers.fade import fade_of
 from coldglow.answers.fading import Fading, fading
 from coldglow.answers.hours import hours_of
-from coldglow.answers.nights import Plan, planned, told
+from coldglow.answers.nights import Plan, Wanted, chances_of, planned, told, weather_of
 from coldglow.answers.scenes import scenes
 from coldglow.answers.standards import Standard, standards_for
-from coldglow.answers.visit import Need, needs
+from coldglow.answers.visit import Need, Visit, needs
 from coldglow.describe.records import Request
+from coldglow.detect.systematics import CAUSES
+from coldglow.light.lines import EINSTEIN_A_ERROR
+from coldglow.plan.demand import Amount
 from coldglow.report.results import Result
 from coldglow.scenario import Scenario
 from coldglow.sky.stars import Stars
@@ -39,17 +43,27 @@ class Exposed:
 
 @dataclass(frozen=True, slots=True)
 class Brightness:
-    """Relative 1-sigma uncertainty of the light of the goal's lines, and what it does to the times.
+    """Relative 1-sigma uncertainty of the light of the goal's lines, and what it does to times and gains.
 
-    `random` comes from the uncertain temperature and column of the description, `systematic` from the
-    systematic errors of a measurement. The times are those of `needs`, in clock seconds, for a planet that
-    is 1 sigma brighter (`short_s`) and 1 sigma fainter (`long_s`).
+    `random` comes from the uncertain temperature and column of the description, `systematic` from the scale
+    of the Einstein coefficients and the table of the air's transmission. The pairs hold the clock
+    times of each of the `needs`, in seconds, for a planet brighter and fainter by that much; `gain` the
+    information it brings over that of the planet as described.
     """
 
     random: float
     systematic: float
-    short_s: tuple[float, ...]
-    long_s: tuple[float, ...]
+    random_s: tuple[tuple[float, float], ...]
+    systematic_s: tuple[tuple[float, float], ...]
+    gain: tuple[float, float]
+
+
+@dataclass(frozen=True, slots=True)
+class Range:
+    """What a planet 1 sigma brighter and 1 sigma fainter makes of a plan."""
+
+    place: tuple[int | None, int | None]  # in the order of the plan, of the last night to request
+    probability: tuple[float, float]  # of the nights that the plan requests
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,6 +78,7 @@ class Findings:
     cover: Result | None
     plan: Plan | None
     nights: Result
+    range: Range | None
     stretches: tuple[Stretch, ...]
     standards: tuple[tuple[Standard, ...], ...]  # of each stretch
     fading: Fading | None
@@ -93,6 +108,7 @@ def find_out(request: Request, stars: Stars, tell: Tell) -> Findings:
     plan = planned(request, found, choice)
     nights = told(request, found, plan, choice)
     stretches = asked_for(request, plan)
+    spread = None if plan is None or plan.chosen is None else range_of(plan, exposed)
     forecast = None
     if exposed and _changes(request):
         tell("outlook")
@@ -107,6 +123,7 @@ def find_out(request: Request, stars: Stars, tell: Tell) -> Findings:
         cover_of(request, found, choice) if request.coverage.asked else None,
         plan,
         nights,
+        spread,
         stretches,
         tuple(standards_for(stretch, stars) for stretch in stretches),
         forecast,
@@ -133,11 +150,42 @@ def brightness_of(seen: Look) -> Brightness:
         )
     )
 
-    def times(factor: float) -> tuple[float, ...]:
-        visit = seen.visit_in(seen.state.temperature_k, factor * seen.state.column_m2)
-        return tuple(need.clock_s for need in needs(seen.request.goal, visit, seen.systematic))
+    def visits(error: float) -> list[Visit]:
+        columns = [factor * seen.state.column_m2 for factor in (np.exp(error), np.exp(-error))]
+        return [seen.visit_in(seen.state.temperature_k, column) for column in columns]
 
-    return Brightness(random, seen.systematic.fixed_total, times(np.exp(random)), times(np.exp(-random)))
+    def times(pair: list[Visit]) -> tuple[tuple[float, float], ...]:
+        bright, faint = (needs(seen.request.goal, visit, seen.systematic) for visit in pair)
+        return tuple((one.clock_s, other.clock_s) for one, other in zip(bright, faint, strict=True))
+
+    air = seen.systematic.fixed[CAUSES.index("telluric table")]
+    fixed = float(np.hypot(air, EINSTEIN_A_ERROR))
+    pair, planned_rate = visits(random), float(seen.visit.yields(3600.0)[0, 0])
+    bright, faint = (float(visit.yields(3600.0)[0, 0]) / planned_rate for visit in pair)
+    return Brightness(random, fixed, times(pair), times(visits(fixed)), (bright, faint))
+
+
+def range_of(plan: Plan, exposed: Sequence[Exposed]) -> Range:
+    """Return what the uncertain light makes of a plan, its order of requesting kept."""
+    weather = weather_of(plan.request)
+    gains = {each.seen.use: each.brightness.gain for each in exposed}
+    found = []
+    for side in (0, 1):
+        factor = np.array(
+            [gains[scene.use][side] if scene.use in gains else 1.0 for scene in plan.offers.scenes]
+        )
+        goals = [scaled(goal, factor[plan.offers.scene]) for goal in plan.goals]
+        chances = chances_of(goals, plan.offers, plan.order, weather, plan.factors)
+        at = 0.0 if plan.chosen is None else float(chances.probability[plan.chosen])
+        found.append((chances.smallest(plan.request.weather.probability), at))
+    return Range((found[0][0], found[1][0]), (found[0][1], found[1][1]))
+
+
+def scaled(goal: Wanted, factor: NDArray[np.float64]) -> Wanted:
+    """Return a goal whose offers bring so many times the information, ndarray[offer]; time stays time."""
+    if isinstance(goal.demand, Amount) and goal.demand.by_clock:
+        return goal
+    return replace(goal, gain=goal.gain * factor.reshape(-1, *[1] * (goal.gain.ndim - 1)))
 
 
 def _changes(request: Request) -> bool:

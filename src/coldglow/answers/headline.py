@@ -7,6 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from coldglow.answers.findings import Exposed, Findings
+from coldglow.answers.nights import Plan
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.scenes import conditions_words, unseen_words
 from coldglow.detect.exposure import NOISE_SOURCES
@@ -40,11 +41,10 @@ def answer(found: Findings) -> list[str]:
     return [
         _how_long(found),
         _how_many(found),
-        *_which(found),
-        *_coverage(found),
         _limits(found),
-        *_outlook(found),
         _assumed(found),
+        *_coverage(found),
+        *_outlook(found),
     ]
 
 
@@ -56,36 +56,55 @@ def best_of(found: Findings) -> Exposed:
 def time_entry(each: Exposed, index: int, label: str = "") -> Entry:
     """Return the clock time to one goal with what the uncertain light makes of it."""
     need, light = each.needs[index], each.brightness
-    name = label or need.name.replace("_", " ")
+    name = label or words.sentence_case(need.name)
     if not np.isfinite(need.clock_s):
         return Entry(np.inf, "h", text="never", label=name)
-    low, high = light.short_s[index], light.long_s[index]
     text = (
-        f"{words.duration(need.clock_s)} ({words.duration(low)} to {words.duration(high)} for a planet 1σ "
-        f"brighter or fainter, ± {words.percent(light.random)}; the light is measured to ± "
-        f"{words.percent(light.systematic)}, systematic)"
+        f"{words.duration(need.clock_s)} ({_span(light.random_s[index])} random, "
+        f"{_span(light.systematic_s[index])} systematic)"
     )
     return Entry(need.clock_s / 3600.0, "h", text=text, label=name)
 
 
+def _span(pair: tuple[float, float]) -> str:
+    """Return a range of times, the shorter first."""
+    return f"{words.duration(pair[0])} to {words.duration(pair[1])}"
+
+
 def merit(found: Findings) -> dict[str, Entry]:
     """Return the headline numbers, with their random and systematic errors where they have any."""
-    header = found.nights.header
     numbers: dict[str, Entry] = {}
-    if found.visible:
-        best = best_of(found)
-        for index, need in enumerate(best.needs):
-            numbers[need.name] = time_entry(best, index)
-    if "nights" in header:
-        numbers["nights"] = Entry(
-            header["nights"].value, text=str(header["nights"]), label="nights to request"
-        )
-        numbers["probability"] = Entry(
-            header["probability"].value, text=str(header["probability"]), label="probability of success"
-        )
-    if found.visible:
-        numbers |= measured(best)
-    return numbers
+    if not found.visible:
+        return numbers
+    best = best_of(found)
+    for index, need in enumerate(best.needs):
+        numbers[need.name] = time_entry(best, index)
+    return numbers | request_entries(found) | measured(best)
+
+
+def request_entries(found: Findings) -> dict[str, Entry]:
+    """Return nights and probability, each with what a planet 1 sigma brighter or fainter makes of it."""
+    header, plan, spread = found.nights.header, found.plan, found.range
+    if "nights" not in header or plan is None:
+        return {}
+    nights, trailing = str(header["nights"]), ""
+    chance = words.probability(float(header["probability"].value))
+    if spread is not None:
+        few, many = (_nights(plan, place) for place in spread.place)
+        trailing = f" ({few} if the planet is 1σ brighter, {many} if fainter)" if few != many else ""
+        bright, faint = (words.probability(each) for each in spread.probability)
+        chance += f" ({bright} if the planet is 1σ brighter, {faint} if fainter)" if bright != faint else ""
+    return {
+        "nights": Entry(header["nights"].value, text=f"{nights}{trailing}", label="nights to request"),
+        "probability": Entry(header["probability"].value, text=chance, label="probability of success"),
+    }
+
+
+def _nights(plan: Plan, place: int | None) -> str:
+    """Return how many nights end at a place of the order; None: more than all of it."""
+    if place is None:
+        return f"more than {words.short(float(plan.nights[-1]))}"
+    return words.short(float(plan.nights[place]))
 
 
 def measured(each: Exposed) -> dict[str, Entry]:
@@ -126,36 +145,44 @@ def measured(each: Exposed) -> dict[str, Entry]:
 
 def _how_long(found: Findings) -> str:
     best = best_of(found)
-    use, parts = best.seen.use, []
+    goal, use, parts = found.request.goal, best.seen.use, []
+    sure = f" with probability {words.probability(goal.probability)}" if goal.probability != 0.5 else ""
+    names = {
+        "time_to_goal": f"SNR {words.short(goal.snr or 0.0)}{sure}",
+        "time_to_temperature_error": f"the temperature to ± {words.short(goal.temperature_error_k or 0.0)} K",
+        "time_to_column_error": f"the column to ± {words.short(100.0 * (goal.column_error or 0.0))} %",
+    }
     for index, need in enumerate(best.needs):
-        text = need.text
         if np.isfinite(need.clock_s):
-            low, high = (
-                words.duration(each[index]) for each in (best.brightness.short_s, best.brightness.long_s)
+            parts.append(
+                f"{names[need.name]} takes {words.duration(need.clock_s)} of clock time "
+                f"({_span(best.brightness.random_s[index])} if the planet is 1σ brighter or fainter)"
             )
-            text += f" ({low} to {high} if the planet is 1σ brighter or fainter than assumed)"
-        parts.append(text)
-    where = f"{use.instrument.name}, {use.setting.name}"
-    more = "" if len(found.exposed) == 1 else ", the quickest of those asked about"
-    return f"How long ({where}{more}): {'. '.join(parts)}."
+        else:
+            parts.append(f"{names[need.name]} is never reached")
+    quickest = "" if len(found.exposed) == 1 else ", the quickest of those asked about"
+    return f"How long: {words.listing(parts)}, with {use.instrument.name}, {use.setting.name}{quickest}."
 
 
 def _how_many(found: Findings) -> str:
-    return f"How many nights: {found.nights.sentences[0]}"
-
-
-def _which(found: Findings) -> Iterator[str]:
-    if not found.stretches:
-        return
-    days = list(dict.fromkeys(stretch.night for stretch in found.stretches))
+    header, plan, days = (
+        found.nights.header,
+        found.plan,
+        list(dict.fromkeys(s.night for s in found.stretches)),
+    )
+    if "nights" not in header or plan is None:
+        return f"How many nights: {found.nights.sentences[0]}"
     if len(days) <= DATES_NAMED:
-        text = words.listing([words.day(day) for day in days])
+        which = words.listing([words.day(day) for day in days])
     else:
-        text = f"{len(days)} evenings from {words.day(days[0])} to {words.day(days[-1])}"
-    if "nights" in found.nights.header:
-        yield f"Which nights: {text}; their stretches stand below, in nights.html and in observing.ics."
-    else:
-        yield f"The best that the budget allows: {text}; their stretches stand below."
+        which = f"{len(days)} evenings from {words.day(days[0])} to {words.day(days[-1])}"
+    text = (
+        f"How many nights: {header['nights']} ({which}) reach {header['goal']} with probability "
+        f"{words.probability(float(header['probability'].value))}"
+    )
+    if plan.chosen is not None and 0 < plan.needed <= plan.chosen:
+        text += f"; if all were clear, {words.short(float(plan.nights[plan.needed - 1]))} would do"
+    return f"{text}."
 
 
 def _coverage(found: Findings) -> Iterator[str]:
@@ -165,26 +192,16 @@ def _coverage(found: Findings) -> Iterator[str]:
 
 def _limits(found: Findings) -> str:
     best = best_of(found)
-    share = best.seen.detail.variance_share
+    share, fixed = best.seen.detail.variance_share, best.seen.systematic
     order = np.argsort(-share, kind="stable")[:2]
-    sources = words.listing(
-        [
-            f"{NOISE_SOURCES[i]} ({words.percent(float(share[i]))} of the noise)"
-            for i in order
-            if share[i] > 0.05
-        ]
+    noise = words.listing(
+        [f"{NOISE_SOURCES[i]} ({words.percent(float(share[i]))})" for i in order if share[i] > 0.05]
     )
-    systematic = best.seen.systematic
-    text = f"What limits: {sources}"
-    if np.isfinite(systematic.temperature_total_k):
-        text += (
-            "; systematic errors that no exposure lowers leave "
-            f"± {words.quantity(systematic.temperature_total_k, 'K', 2)} in the temperature and "
-            f"± {words.percent(systematic.column_total)} in the column"
-        )
-    else:
-        text += f"; systematic errors leave ± {words.percent(systematic.fixed_total)} in the column"
-    return f"{text}."
+    known = f"± {words.percent(fixed.fixed_total)} in the column"
+    if np.isfinite(fixed.temperature_total_k):
+        kelvin = words.quantity(fixed.temperature_total_k, "K", 2)
+        known = f"± {kelvin} in temperature and ± {words.percent(fixed.column_total)} in column"
+    return f"What limits: noise of {noise}; systematic errors of {known}, which no exposure lowers."
 
 
 def _outlook(found: Findings) -> Iterator[str]:
@@ -195,10 +212,10 @@ def _outlook(found: Findings) -> Iterator[str]:
 def _assumed(found: Findings) -> str:
     best = best_of(found)
     state, emission = best.seen.state, found.request.target.emission
-    kelvin = f"{words.with_error(state.temperature_k, emission.temperature_k.uncertainty, 'K')}"
-    column = f"{words.with_error(state.column_m2, emission.column_m2.uncertainty, 'm-2')}"
+    kelvin = words.with_error(state.temperature_k, emission.temperature_k.uncertainty, "K")
+    column = words.with_error(state.column_m2, emission.column_m2.uncertainty, "m-2")
     climate = "" if found.plan is None else f"; {climate_words(found.request, found.plan.offers)}"
     return (
-        f"Assumed: {kelvin} and a vertical column of {column} (1σ of what is known of the planet); "
-        f"{conditions_words(best.seen.use, best.seen.air)}{climate}. Every default stands under Assumptions."
+        f"Assumed: {kelvin} and a vertical column of {column}; "
+        f"{conditions_words(best.seen.use, best.seen.air)}{climate}; all defaults stand below."
     )

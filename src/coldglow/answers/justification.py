@@ -8,7 +8,7 @@ import numpy as np
 
 from coldglow.answers.chosen import stretches_table
 from coldglow.answers.findings import Exposed, Findings
-from coldglow.answers.headline import best_of, measured, time_entry
+from coldglow.answers.headline import best_of, measured, request_entries, time_entry
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.scenes import conditions_words, unseen_words
 from coldglow.describe.records import Orbit
@@ -86,7 +86,7 @@ def _sensitivity(each: Exposed) -> str:
     for index, need in enumerate(each.needs):
         text = need.text
         if np.isfinite(need.clock_s):
-            low, high = (words.duration(t[index]) for t in (each.brightness.short_s, each.brightness.long_s))
+            low, high = (words.duration(time_s) for time_s in each.brightness.random_s[index])
             text += (
                 f" on the clock, all overheads included ({low} to {high} for a planet 1σ brighter or fainter)"
             )
@@ -150,10 +150,7 @@ def _numbers(found: Findings) -> Iterator[tuple[str, Entry]]:
             yield f"{words.sentence_case(need.name)}{tail}", time_entry(each, index)
         for name, entry in measured(each).items():
             yield f"{words.sentence_case(entry.label or name)}{tail}", entry
-    for name, label in (
-        ("nights", "Nights asked for"),
-        ("probability", "Probability of success"),
-        ("weather", ""),
-    ):
-        if name in found.nights.header:
-            yield label or words.sentence_case(name), found.nights.header[name]
+    for name, entry in request_entries(found).items():
+        yield words.sentence_case(entry.label or name), entry
+    if "weather" in found.nights.header:
+        yield "Weather", found.nights.header["weather"]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -196,13 +197,13 @@ def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
         goals = [coverage_goal(choice), *goals]
         order, method = _with_insurance(choice, goals[0], weather, factors)
         order = preference(given, order) if choice.question.rules == Rules() else order[:MOST]
-    chances = _chances(goals, given, order, weather, factors)
+    chances = chances_of(goals, given, order, weather, factors)
     chosen = chances.smallest(request.weather.probability)
     if choice is not None and chosen is not None and chosen >= choice.cover.chosen.size:
         better, how = _with_insurance(choice, goals[0], weather, factors, float(chances.cost[chosen]))
         again = np.concatenate((better, order[~np.isin(order, better)]))
         again = preference(given, again) if choice.question.rules == Rules() else better
-        other = _chances(goals, given, again, weather, factors)
+        other = chances_of(goals, given, again, weather, factors)
         place = other.smallest(request.weather.probability)
         if place is not None and other.cost[place] <= chances.cost[chosen]:
             order, chances, chosen, method = again, other, place, how
@@ -243,8 +244,8 @@ def _with_insurance(
     return np.concatenate((cover.chosen, found.added)), found.method
 
 
-def _chances(
-    goals: list[Wanted], given: Offers, order: Index, weather: Weather, factors: Array | None
+def chances_of(
+    goals: Sequence[Wanted], given: Offers, order: Index, weather: Weather, factors: Array | None
 ) -> Curve:
     """Return the probability of reaching every goal; exact where there is one, on one amount."""
     day = given.weather_day

@@ -86,26 +86,25 @@ def standards_table(stretches: Sequence[tuple[Stretch, tuple[Standard, ...]]]) -
         return None
     return table(
         column("star", [row.designation for row in rows]),
-        column("when", [row.when for row in rows]),
-        column("time", [row.time for row in rows], description="UTC"),
+        column("when", [f"{row.time[11:16]}, {row.when}" for row in rows]),
         column("type", [row.spectral_type for row in rows]),
-        column("v_magnitude", [row.magnitude for row in rows], decimals=1),
-        column("ra", [sexagesimal(row.ra_rad, hours=True) for row in rows], "h m s", description="ICRS"),
+        column("V", [row.magnitude for row in rows], decimals=1),
+        column("ra", [sexagesimal(row.ra_rad, hours=True) for row in rows], description="ICRS"),
         column("dec", [sexagesimal(row.dec_rad) for row in rows], description="ICRS"),
         column("airmass", [row.airmass for row in rows], decimals=2),
-        column("airmass_difference", [row.airmass_difference for row in rows], decimals=2),
-        column("separation", np.degrees([row.separation_rad for row in rows]), "deg", decimals=0),
+        column("difference", [row.airmass_difference for row in rows], decimals=2, description="of airmass"),
+        column("apart", np.degrees([row.separation_rad for row in rows]), "deg", decimals=0),
         caption="Standard stars, nearest in airmass and on the sky; the second of a pair to fall back upon",
         rows=range(len(rows)),
     )
 
 
 def sexagesimal(angle_rad: float, hours: bool = False) -> str:
-    """Return an angle as ``03 51 20.1`` (hours, minutes, seconds) or ``+19 40 12`` (degrees)."""
+    """Return an angle as ``03:51:20.1`` (hours, minutes, seconds) or ``+19:40:12`` (degrees)."""
     size = np.degrees(angle_rad) / (15.0 if hours else 1.0)
     if hours:
         tenths = round((size % 24.0) * 36000.0) % 864000
-        return f"{tenths // 36000:02d} {tenths // 600 % 60:02d} {tenths % 600 / 10.0:04.1f}"
+        return f"{tenths // 36000:02d}:{tenths // 600 % 60:02d}:{tenths % 600 / 10.0:04.1f}"
     seconds = round(abs(size) * 3600.0)
     sign = "−" if angle_rad < 0 else "+"
-    return f"{sign}{seconds // 3600:02d} {seconds // 60 % 60:02d} {seconds % 60:02d}"
+    return f"{sign}{seconds // 3600:02d}:{seconds // 60 % 60:02d}:{seconds % 60:02d}"

@@ -201,12 +201,13 @@ def _track_table(stretches: Sequence[Stretch]) -> Table:
     track = scene.track.take(index)
     rate = 3600.0 * ARCSEC_PER_RAD
     in_space = isinstance(scene.use.instrument.place, Orbit)
+    times = [str(text) for text in iso_from_tt(track.grid.tt_s, "m")]
     columns = [
-        column("time", [text.replace("T", " ") for text in iso_from_tt(track.grid.tt_s, "m")]),
+        column("time", [text[11:] for text in times]),
         column("airmass", track.airmass, decimals=2, shown=not in_space),
         column("altitude", np.degrees(track.altitude_rad), "deg", decimals=0, shown=not in_space),
         column("longitude", np.degrees(track.sub_observer_longitude_rad), "deg", decimals=0),
-        column("ra", [sexagesimal(float(angle), hours=True) for angle in track.ra_icrs_rad], "h m s"),
+        column("ra", [sexagesimal(float(angle), hours=True) for angle in track.ra_icrs_rad]),
         column("dec", [sexagesimal(float(angle)) for angle in track.dec_icrs_rad]),
         column("ra_rate", rate * track.ra_rate_rad_s, "arcsec h-1", decimals=2),
         column("dec_rate", rate * track.dec_rate_rad_s, "arcsec h-1", decimals=2),
@@ -217,7 +218,9 @@ def _track_table(stretches: Sequence[Stretch]) -> Table:
     ]
     if scene.use.instrument.opening.kind == "slit":
         columns.append(column("slit_angle", _slit_angles(scene, track), "deg", decimals=0))
-    return table(*columns, caption="Through the night (UTC)", rows=range(index.size))
+    return table(
+        *columns, caption=f"Hour by hour, UTC of {words.days(times[0], times[-1])}", rows=range(index.size)
+    )
 
 
 def _slit_angles(scene: Scenario, track: Track) -> list[float]:

@@ -109,8 +109,8 @@ def _against_time(seen: Look, result: Result, light: Brightness, tag: str) -> Pi
         figure,
         f"SNR against clock time, rising to {expected[-1]:.3g} after {last_s / 3600.0:.3g} hours.",
         "How the signal-to-noise ratio of all the goal's lines together grows with time on the clock; the "
-        f"band is a planet 1σ brighter or fainter (± {words.percent(light.random)}). The bar below says where "
-        "the noise comes from.",
+        f"band is a planet 1σ brighter or fainter (± {words.percent(light.random)}). The bar below says "
+        "where the noise comes from.",
     )
 
 
