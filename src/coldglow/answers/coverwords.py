@@ -272,7 +272,8 @@ def turned_away(choice: Choice) -> NDArray[np.bool_]:
     if coverage.latitude_rad is not None:
         return np.zeros(hours.size, dtype=bool)
     seldom = np.asarray((hours < 0.5 * hours.mean()) | (hours <= 0.0), dtype=bool)
-    return ~choice.cover.reachable & seldom
+    away: NDArray[np.bool_] = ~choice.cover.reachable & seldom
+    return away
 
 
 def _why_short(choice: Choice, short: NDArray[np.bool_]) -> str:

@@ -71,6 +71,8 @@ def asked_words(plan: Plan, place: int) -> str:
     nights = words.count(plan.nights_until(place), "night")
     if plan.offers.cost_unit == "night":
         return nights
+    if set(plan.offers.site.tolist()) <= set(plan.offers.cloudless):
+        nights = words.count(place + 1, "visit")
     return f"{plan.offers.price(float(plan.chances.cost[place]))} in {nights}"
 
 
@@ -147,6 +149,8 @@ def _coverage(plan: Plan, choice: Choice | None) -> Iterator[str]:
         yield from missing_words(choice)
     if plan.method == "all sets compared":
         yield "The insurance is the best there is at this cost: all sets were compared."
+    elif plan.method and plan.request.coverage.block_nights > 1:
+        yield "Nights come in blocks, for which no insurance is worked out: these are those of the cover."
     elif plan.method:
         yield (
             "The insurance was added to the smallest cover one by one, the most helpful first, and each "
