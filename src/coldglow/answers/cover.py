@@ -91,7 +91,7 @@ def bins_table(choice: Choice) -> Table:
     information = with_floor(question.information[chosen].sum(axis=0), common)
     seen = longitudes_seen(question.offers, chosen, SEEN_POINTS * question.bins)
     seen = seen.reshape(question.bins, SEEN_POINTS).mean(axis=1)
-    edges = np.degrees(np.arange(question.bins + 1) * question.width_rad)
+    edges = np.arange(question.bins + 1) * 360.0 / question.bins
     if coverage.spot:
         place = {spot.name: spot.longitude_rad for spot in request.target.emission.spots}[coverage.spot]
         edges = np.degrees([place, place])
