@@ -10,7 +10,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.lib.stride_tricks import as_strided
 from numpy.typing import NDArray
-from scipy.interpolate import BarycentricInterpolator
 from scipy.special import ndtr
 
 Floats = NDArray[np.float64]
@@ -51,7 +50,21 @@ def nodes_and_weights(value: Floats, count: int) -> tuple[Floats, Floats]:
     angle = np.pi * (np.arange(count) + 0.5) / count
     middle, half = 0.5 * (distinct[0] + distinct[-1]), 0.5 * (distinct[-1] - distinct[0])
     node = middle - half * np.cos(angle)
-    return node, BarycentricInterpolator(node, np.eye(count))(value)
+    return node, lagrange_weights(node, value)
+
+
+def lagrange_weights(node: Floats, value: Floats) -> Floats:
+    """Return the weights ndarray[value, node] of the polynomial through the nodes, by Lagrange's formula.
+
+    (The interpolator of the large library orders its nodes by chance, so its last digits change from run to
+    run; at a handful of nodes the plain products are as good.)
+    """
+    apart = node[:, np.newaxis] - node
+    np.fill_diagonal(apart, 1.0)
+    factors = (value[:, np.newaxis, np.newaxis] - node) / apart  # [value, node j, node k]
+    own = np.arange(node.size)
+    factors[:, own, own] = 1.0
+    return factors.prod(axis=2)
 
 
 def window(start: float, width: float, shifts: Shifts) -> NDArray[np.int_]:
