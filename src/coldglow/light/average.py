@@ -64,7 +64,8 @@ def lagrange_weights(node: Floats, value: Floats) -> Floats:
     factors = (value[:, np.newaxis, np.newaxis] - node) / apart  # [value, node j, node k]
     own = np.arange(node.size)
     factors[:, own, own] = 1.0
-    return factors.prod(axis=2)
+    weights: Floats = factors.prod(axis=2)
+    return weights
 
 
 def window(start: float, width: float, shifts: Shifts) -> NDArray[np.int_]:
