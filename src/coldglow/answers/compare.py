@@ -41,6 +41,7 @@ class Verdict:
     setting: str
     time_to_goal_s: float
     nights_needed: float
+    asked: str  # what is to be requested, in words
     snr_one_night: float
     temperature_error_k: float
     systematic_temperature_k: float
@@ -59,7 +60,8 @@ def compare(
     """Return the request's answer for a list of instruments in all their settings, best first.
 
     Args:
-        request: path or record; its own limits are laid over those of every instrument on the ground.
+        request: path or record; its own limits are laid over those of every instrument on the ground. Its
+            coverage is left out: the goals on the whole disk are compared.
         instruments: names, paths or records; default: all that ship, and those of the request.
         executor: any executor of `concurrent.futures` (a dask client's too), to which the instruments are
             handed; the answer is the same as without.
@@ -75,13 +77,19 @@ def compare(
     """
     record = as_request(request)
     chosen = rivals(record, instruments)
+    whole = on_the_disk(record)
     if executor is None:
-        answers: Iterator[tuple[Verdict, ...]] = (judge(record, uses) for uses in chosen)
+        answers: Iterator[tuple[Verdict, ...]] = (judge(whole, uses) for uses in chosen)
     else:
-        futures = [executor.submit(judge, record, uses) for uses in chosen]
+        futures = [executor.submit(judge, whole, uses) for uses in chosen]
         answers = (future.result() for future in futures)
     told = progress(answers, len(chosen), "instruments")
     return compare_of(record, [verdict for verdicts in told for verdict in verdicts])
+
+
+def on_the_disk(request: Request) -> Request:
+    """Return the request without its coverage: instruments are compared for the goals on the whole disk."""
+    return replace(request, coverage=replace(request.coverage, asked=False))
 
 
 def rivals(
@@ -144,12 +152,13 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         use.setting.name,
         max(need.clock_s for need in wanted),
         nights,
+        str(planned.header.get("nights", "")),
         float(np.sqrt(with_floor(given.information[best], common))),
         float(temperature_error(given.matrix[best])),
         seen.systematic.temperature_total_k,
         _noisiest(seen) if np.isfinite(open_s) else "floors",
         feasible,
-        "" if feasible else _why_not(wanted, planned, request),
+        "" if feasible else _why_not(wanted, planned),
         float(given.observable_s[best]),
         conditions_words(use, scene.air),
     )
@@ -160,13 +169,12 @@ def _noisiest(seen: Look) -> str:
     return NOISE_SOURCES[int(np.argmax(seen.detail.variance_share))].removeprefix("planet ")
 
 
-def _why_not(wanted: tuple[Need, ...], planned: Result, request: Request) -> str:
+def _why_not(wanted: tuple[Need, ...], planned: Result) -> str:
     never = [need.text for need in wanted if not np.isfinite(need.open_s)]
     if never:
         return f"{never[0]}."
-    if "nights" in planned.header and request.budget.nights is not None:
-        budget = words.count(request.budget.nights, "night")
-        return f"{planned.header['nights']} to request, more than the budget of {budget}."
+    if "nights" in planned.header:
+        return f"{planned.header['nights']} to request, more than the budget allows."
     return planned.sentences[0]
 
 
@@ -186,7 +194,19 @@ def _refusal(use: Use, error: Exception) -> Verdict:
 def _no(use: Use, limit: str, reason: str) -> Verdict:
     never = np.inf
     return Verdict(
-        use.instrument.name, use.setting.name, never, never, 0.0, never, never, limit, False, reason, 0.0, ""
+        use.instrument.name,
+        use.setting.name,
+        never,
+        never,
+        "",
+        0.0,
+        never,
+        never,
+        limit,
+        False,
+        reason,
+        0.0,
+        "",
     )
 
 
@@ -241,11 +261,10 @@ def _sentences(request: Request, best: list[Verdict]) -> Iterator[str]:
         yield f"None of the {words.count(len(best), 'setting')} does it."
     for place, verdict in enumerate(good[:SPOKEN]):
         name = f"{verdict.instrument} ({verdict.setting})"
-        needed = (
-            f"{words.duration(verdict.time_to_goal_s)} on the clock, "
-            f"{words.count(verdict.nights_needed, 'night')} to request"
-        )
+        needed = f"{words.duration(verdict.time_to_goal_s)} on the clock, {verdict.asked} to request"
         yield f"{'Best is' if not place else 'Next is'} {name}: {needed}; limited by {verdict.limited_by}."
+    if request.coverage.asked:
+        yield "These are the goals on the whole disk; `cover` answers how to cover the rotation."
     for verdict in best:
         if not verdict.feasible:
             yield f"Not {verdict.instrument} ({verdict.setting}): {verdict.reason}"

@@ -124,8 +124,8 @@ def glow_of(kelvin: Array) -> Array:
 
 def tabulated_glow(kelvin: Array) -> Array:
     """Return the same for many temperatures from a spline, within 1e-6 (tests/answers/test_fade.py)."""
-    nodes = np.linspace(1.0 / HOTTEST_K, 1.0 / COLDEST_K, GLOW_NODES)
-    return np.asarray(np.exp(CubicSpline(nodes, np.log(glow_of(1.0 / nodes)))(1.0 / kelvin)))
+    nodes = np.geomspace(COLDEST_K, HOTTEST_K, GLOW_NODES)
+    return np.asarray(np.exp(CubicSpline(np.log(nodes), np.log(glow_of(nodes)))(np.log(kelvin))))
 
 
 def _grid(
