@@ -254,7 +254,7 @@ def test_neptune_in_radio_longitudes_is_relative_and_says_so():
 
 
 def test_phase_uncertainty_by_hand():
-    # 17.24 h +- 0.01 h, phase known on 1986-01-24 (Archinal et al. 2018; Voyager epoch): 360 dt sigma_P / P^2
+    # 17.24 h +- 0.01 h, phase known on 1986-01-24 (Archinal et al. 2018, table 1 and its notes): 360 dt sigma_P / P^2
     asked = replace(request(snr=20.0), longitudes="iau2015")
     result, choice = answer(asked)
     hours = (

@@ -144,8 +144,28 @@ def _answer(choice: Choice) -> Iterator[str]:
     tail = "" if rest <= 0 else f" and {rest} more (table below)"
     if not choice.stare:
         yield f"{'It is' if len(names) == 1 else 'They are'} {'; '.join(names[:PARTS_LISTED]) + tail}."
+    if question.request.coverage.spot:
+        yield _pass_words(choice)
     if not any(k in given.cloudless for k in given.site[cover.chosen]):
         yield "This takes every night as clear; `coldglow nights` says which ones to add against the weather."
+
+
+def _pass_words(choice: Choice) -> str:
+    """Return how often a spot passes on the nights in question, and what a pass is worth."""
+    question = choice.question
+    given, spot = question.offers, question.request.coverage.spot
+    night = 1000 * given.day + given.scene
+    best = np.array([question.information[night == each, 0].max() for each in np.unique(night)])
+    snr = np.sqrt(best[best > 0.0])
+    low, middle, high = np.quantile(snr, [0.0, 0.5, 1.0]) if snr.size else (0.0, 0.0, 0.0)
+    passes = int((question.clock_s[choice.cover.chosen, 0] > 0.0).sum())
+    noun = {0: "whole night", STRETCH: "stretch"}.get(int(given.part[0]), "visit")
+    return (
+        f"The {spot} shows on {words.count(snr.size, 'night')} of those in question; the best {noun} of a "
+        f"night knows its brightness against the rest of the disk to SNR {words.number(float(low), 2)} to "
+        f"{words.number(float(high), 2)} (median {words.number(float(middle), 2)}). Here "
+        f"{words.count(passes, 'pass', 'passes')} {'is' if passes == 1 else 'are'} used."
+    )
 
 
 def _parts_words(choice: Choice) -> str:
