@@ -141,6 +141,7 @@ def test_dates_and_counts():
 def test_units_as_people_write_them():
     assert words.unit("W m-2 sr-1") == "W m⁻² sr⁻¹"
     assert words.unit("arcsec / h") == "″ /h"
+    assert words.unit("electron2 s-1") == "(e⁻)² s⁻¹"  # not "e to the minus two"
     assert words.quantity(12.34, "deg") == "12.3°"
     assert words.quantity(3.4, "um", 2) == "3.4 µm"
     assert words.quantity(3.4, "", 2) == "3.4"

@@ -108,6 +108,7 @@ def sentences(found: Fading) -> list[str]:
             else "."
         )
     )
+    said += _since_epoch(found)
     said.append(_dropout_sentence(found, nights))
     said.append(
         f"Chance of a detection with the budget ({found.budget.text}): {_chance(found, 0)} in {first}"
@@ -119,6 +120,18 @@ def sentences(found: Fading) -> list[str]:
         f"Each year stands for its best {noun}, taken from every {EVERY}th, with that year's geometry."
     )
     return said
+
+
+def _since_epoch(found: Fading) -> list[str]:
+    """Return what the law has made of the description's state by the first year, where that matters."""
+    emission, epoch = found.request.target.emission, found.request.target.cooling.epoch
+    then, now = emission.temperature_k.value, float(found.law.temperature_k.median[0])
+    if abs(then - now) < 1.0:
+        return []
+    return [
+        f"By the law the {then:.0f} K of {words.day(epoch)} are {now:.0f} K on {words.day(found.date[0])}; "
+        "the other answers take the state of the description as it stands."
+    ]
 
 
 def _chance(found: Fading, year: int) -> str:

@@ -82,7 +82,8 @@ def unit(name: str) -> str:
         slash = "/" if part.startswith("/") else ""
         part = part.removeprefix("/")
         base = part.rstrip("0123456789-")
-        parts.append(slash + _UNIT_WORDS.get(base, base) + part[len(base) :].translate(_RAISED))
+        word, power = _UNIT_WORDS.get(base, base), part[len(base) :].translate(_RAISED)
+        parts.append(slash + (f"({word}){power}" if power and word.endswith("⁻") else word + power))
     return " ".join(parts)
 
 
