@@ -227,7 +227,11 @@ def expose_of(seen: Look, chosen: str = "", clock_s: float | None = None) -> Res
         {
             "time": _times_table(seen, times_s, edges),
             "lines": _lines_table(detail),
-            "noise": table(column("source", NOISE_SOURCES), column("variance_share", detail.variance_share)),
+            "noise": table(
+                column("source", NOISE_SOURCES),
+                column("variance_share", detail.variance_share, digits=2),
+                caption="Where the noise comes from",
+            ),
             "systematics": _systematics_table(seen.systematic),
             "spectrum": _spectrum_table(detail),
         },

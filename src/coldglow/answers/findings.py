@@ -112,7 +112,7 @@ def find_out(request: Request, stars: Stars, tell: Tell) -> Findings:
     forecast = None
     if exposed and _changes(request):
         tell("outlook")
-        forecast = fading(request, exposed[0].seen.use)
+        forecast = fading(request, quickest(exposed).seen.use)
     tell("comparison of settings")
     return Findings(
         request,
@@ -179,6 +179,11 @@ def range_of(plan: Plan, exposed: Sequence[Exposed]) -> Range:
         at = 0.0 if plan.chosen is None else float(chances.probability[plan.chosen])
         found.append((chances.smallest(plan.request.weather.probability), at))
     return Range((found[0][0], found[1][0]), (found[0][1], found[1][1]))
+
+
+def quickest(exposed: Sequence[Exposed]) -> Exposed:
+    """Return the use that reaches its goals soonest; the first of equal ones."""
+    return min(exposed, key=lambda each: max(need.clock_s for need in each.needs))
 
 
 def scaled(goal: Wanted, factor: NDArray[np.float64]) -> Wanted:

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from coldglow.answers.findings import Exposed, Findings
+from coldglow.answers.findings import Exposed, Findings, quickest
 from coldglow.answers.nights import Plan
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.scenes import conditions_words, unseen_words
@@ -48,27 +48,23 @@ def answer(found: Findings) -> list[str]:
     ]
 
 
-def best_of(found: Findings) -> Exposed:
-    """Return the use that reaches its goals soonest; the first of equal ones."""
-    return min(found.exposed, key=lambda each: max(need.clock_s for need in each.needs))
-
-
 def time_entry(each: Exposed, index: int, label: str = "") -> Entry:
     """Return the clock time to one goal with what the uncertain light makes of it."""
     need, light = each.needs[index], each.brightness
     name = label or words.sentence_case(need.name)
     if not np.isfinite(need.clock_s):
         return Entry(np.inf, "h", text="never", label=name)
-    text = (
-        f"{words.duration(need.clock_s)} ({_span(light.random_s[index])} random, "
-        f"{_span(light.systematic_s[index])} systematic)"
-    )
+    text = words.duration(need.clock_s)
+    random, fixed = span(light.random_s[index]), span(light.systematic_s[index])
+    if random:
+        text += f" ({random} random, {fixed or 'no more'} systematic)"
     return Entry(need.clock_s / 3600.0, "h", text=text, label=name)
 
 
-def _span(pair: tuple[float, float]) -> str:
-    """Return a range of times, the shorter first."""
-    return f"{words.duration(pair[0])} to {words.duration(pair[1])}"
+def span(pair: tuple[float, float]) -> str:
+    """Return a range of times, the shorter first; empty where both read alike."""
+    short, long = (words.duration(time_s) for time_s in pair)
+    return f"{short} to {long}" if short != long else ""
 
 
 def merit(found: Findings) -> dict[str, Entry]:
@@ -76,7 +72,7 @@ def merit(found: Findings) -> dict[str, Entry]:
     numbers: dict[str, Entry] = {}
     if not found.visible:
         return numbers
-    best = best_of(found)
+    best = quickest(found.exposed)
     for index, need in enumerate(best.needs):
         numbers[need.name] = time_entry(best, index)
     return numbers | request_entries(found) | measured(best)
@@ -144,7 +140,7 @@ def measured(each: Exposed) -> dict[str, Entry]:
 
 
 def _how_long(found: Findings) -> str:
-    best = best_of(found)
+    best = quickest(found.exposed)
     goal, use, parts = found.request.goal, best.seen.use, []
     sure = f" with probability {words.probability(goal.probability)}" if goal.probability != 0.5 else ""
     names = {
@@ -154,14 +150,13 @@ def _how_long(found: Findings) -> str:
     }
     for index, need in enumerate(best.needs):
         if np.isfinite(need.clock_s):
-            parts.append(
-                f"{names[need.name]} takes {words.duration(need.clock_s)} of clock time "
-                f"({_span(best.brightness.random_s[index])} if the planet is 1σ brighter or fainter)"
-            )
+            text = f"{names[need.name]} takes {words.duration(need.clock_s)} of clock time"
+            random = span(best.brightness.random_s[index])
+            parts.append(f"{text} ({random} if the planet is 1σ brighter or fainter)" if random else text)
         else:
             parts.append(f"{names[need.name]} is never reached")
-    quickest = "" if len(found.exposed) == 1 else ", the quickest of those asked about"
-    return f"How long: {words.listing(parts)}, with {use.instrument.name}, {use.setting.name}{quickest}."
+    rank = "" if len(found.exposed) == 1 else ", the quickest of those asked about"
+    return f"How long: {words.listing(parts)}, with {use.instrument.name}, {use.setting.name}{rank}."
 
 
 def _how_many(found: Findings) -> str:
@@ -191,7 +186,7 @@ def _coverage(found: Findings) -> Iterator[str]:
 
 
 def _limits(found: Findings) -> str:
-    best = best_of(found)
+    best = quickest(found.exposed)
     share, fixed = best.seen.detail.variance_share, best.seen.systematic
     order = np.argsort(-share, kind="stable")[:2]
     noise = words.listing(
@@ -210,7 +205,7 @@ def _outlook(found: Findings) -> Iterator[str]:
 
 
 def _assumed(found: Findings) -> str:
-    best = best_of(found)
+    best = quickest(found.exposed)
     state, emission = best.seen.state, found.request.target.emission
     kelvin = words.with_error(state.temperature_k, emission.temperature_k.uncertainty, "K")
     column = words.with_error(state.column_m2, emission.column_m2.uncertainty, "m-2")

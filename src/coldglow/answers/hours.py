@@ -54,17 +54,18 @@ def hours_of(request: Request, found: tuple[Scenario, ...], wanted_s: float | No
     snr, begins = join("snr"), join("start_s")
     order = np.lexsort((begins, -np.round(snr, 9)))
     several = len(found) > 1
+    in_air = bool(np.isfinite(join("airmass_min")).any()) or not snr.size
     columns = [
         column("night", night[order], description="evening date"),
         column("start", start[order], description="UTC"),
         column("end", end[order], description="UTC"),
         column("duration", join("duration_s")[order] / 3600.0, "h", decimals=2),
-        column("airmass_min", join("airmass_min")[order], decimals=2),
-        column("airmass_max", join("airmass_max")[order], decimals=2),
+        column("airmass_min", join("airmass_min")[order], decimals=2, shown=in_air),
+        column("airmass_max", join("airmass_max")[order], decimals=2, shown=in_air),
         column("longitude_start", np.degrees(join("longitude_start_rad"))[order], "deg", decimals=1),
         column("longitude_end", np.degrees(join("longitude_end_rad"))[order], "deg", decimals=1),
         column("range_rate", 1e-3 * join("range_rate_m_s")[order], "km s-1", decimals=2),
-        column("line_transmission", join("line_transmission")[order], decimals=3),
+        column("line_transmission", join("line_transmission")[order], decimals=3, shown=in_air),
         column("snr", snr[order], digits=3),
         column("rank", np.arange(1, snr.size + 1)),
         column("instrument", names("instrument")[order], shown=several),

@@ -7,8 +7,8 @@ from collections.abc import Iterator
 import numpy as np
 
 from coldglow.answers.chosen import stretches_table
-from coldglow.answers.findings import Exposed, Findings
-from coldglow.answers.headline import best_of, measured, request_entries, time_entry
+from coldglow.answers.findings import Exposed, Findings, quickest
+from coldglow.answers.headline import measured, request_entries, span, time_entry
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.scenes import conditions_words, unseen_words
 from coldglow.describe.records import Orbit
@@ -54,7 +54,7 @@ def _request(found: Findings) -> str:
 
 
 def _state(found: Findings) -> str:
-    target, best = found.request.target, best_of(found)
+    target, best = found.request.target, quickest(found.exposed)
     emission, cooling = target.emission, target.cooling
     kelvin = words.with_error(emission.temperature_k.value, emission.temperature_k.uncertainty, "K")
     column = words.with_error(emission.column_m2.value, emission.column_m2.uncertainty, "m-2")
@@ -86,10 +86,9 @@ def _sensitivity(each: Exposed) -> str:
     for index, need in enumerate(each.needs):
         text = need.text
         if np.isfinite(need.clock_s):
-            low, high = (words.duration(time_s) for time_s in each.brightness.random_s[index])
-            text += (
-                f" on the clock, all overheads included ({low} to {high} for a planet 1σ brighter or fainter)"
-            )
+            text += " on the clock, all overheads included"
+            random = span(each.brightness.random_s[index])
+            text += f" ({random} for a planet 1σ brighter or fainter)" if random else ""
         parts.append(f"{text}.")
     parts.append(_precision(each))
     share = seen.detail.variance_share

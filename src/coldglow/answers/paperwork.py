@@ -141,14 +141,16 @@ def cautions_of(scenes: tuple[Scenario, ...]) -> list[str]:
 
 
 def _dangers(scenes: tuple[Scenario, ...]) -> Iterator[str]:
+    told: set[str] = set()
     for scene in scenes:
         name, place, limits = (
             scene.use.instrument.name,
             scene.use.instrument.place,
             scene.use.instrument.limits,
         )
-        if not scene.usable.any():
+        if not scene.usable.any() or name in told:
             continue
+        told.add(name)
         nearest = float(np.degrees(scene.track.solar_elongation_rad[scene.usable].min()))
         if nearest < np.degrees(NEAR_SUN_RAD) or limits.daytime:
             yield (

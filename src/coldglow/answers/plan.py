@@ -95,7 +95,7 @@ def report_of(found: Findings, standards: str = "") -> Report:
 
 def _chapters(found: Findings) -> Iterator[Section]:
     for i, each in enumerate(found.exposed):
-        yield exposure_chapter(each.seen, each.result, each.brightness, f"-{i + 1}" if i else "")
+        yield exposure_chapter(each, f"-{i + 1}" if i else "")
     if found.visible and worth_comparing(found.comparison):
         yield comparison_chapter(found.comparison)
     why = "the stretches to ask for" if "nights" in found.nights.header else "the best within the budget"

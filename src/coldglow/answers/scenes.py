@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from coldglow.answers.inputs import described, place_errors
 from coldglow.describe.records import Orbit, Request, Use
 from coldglow.errors import NotFoundError
-from coldglow.plan.goal import marginalise
+from coldglow.plan.goal import marginalise, with_floor
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.report import words
 from coldglow.scenario import Air, Scenario, State, scenario, watch
@@ -50,6 +50,13 @@ def information_rate(scene: Scenario) -> NDArray[np.float64]:
     """Return 1/sigma² of ln N per second of open shutter, ndarray[time], each step marginalised by itself."""
     rate: NDArray[np.float64] = marginalise(scene.steps.matrix)[:, 0, 0]
     return rate
+
+
+def hour_snr(scene: Scenario) -> NDArray[np.float64]:
+    """Return the SNR that one hour on the clock at each step would bring, floors applied, ndarray[time]."""
+    operation, share = scene.use.instrument.operation, scene.steps.shutter_share
+    visit = with_floor(3600.0 * information_rate(scene) * share, operation.visit_floor)
+    return np.asarray(np.sqrt(with_floor(visit, operation.common_floor)))
 
 
 def conditions_words(use: Use, air: Air) -> str:

@@ -60,11 +60,16 @@ def render(template: str, **context: Any) -> str:
 
 
 def view(table: Table, file: str = "", rows: int = ROWS) -> TableView:
-    """Return a table for a template: at most `rows` rows, and where the others are."""
+    """Return a table for a template: at most `rows` rows, and where the others are.
+
+    One without rows, because it is empty or meant for files only, becomes a line of text.
+    """
     shown = [column for column in table.columns if column.shown]
     chosen = range(min(len(table), rows)) if table.rows is None else table.rows
     note = ""
-    if len(chosen) < len(table):
+    if not chosen:
+        note = f"{len(table)} rows, in {file}" if file and len(table) else "no rows"
+    elif len(chosen) < len(table):
         note = f"{len(chosen)} of {len(table)} rows" + (f"; all of them are in {file}" if file else "")
     return TableView(
         table.caption or "Table",

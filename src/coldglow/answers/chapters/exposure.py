@@ -6,11 +6,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.expose import Look
-from coldglow.answers.findings import Brightness
+from coldglow.answers.findings import Exposed
 from coldglow.detect.beam import Disk, point_spread, slit_angle
 from coldglow.detect.season import longitude_for_spots_rad, spot_system
 from coldglow.light.shell import view_of
-from coldglow.plan.goal import correlation, marginalise
+from coldglow.plan.goal import column_error, correlation, temperature_error
 from coldglow.report import words
 from coldglow.report.figures.disk import DiskView, OpeningView, SpotView, beam_on_disk
 from coldglow.report.figures.exposure import snr_against_time
@@ -24,11 +24,12 @@ ARCSEC_PER_RAD = 206264.80624709636
 POINTS = 150  # of a curve
 
 
-def exposure_chapter(seen: Look, result: Result, light: Brightness, tag: str = "") -> Section:
+def exposure_chapter(each: Exposed, tag: str = "") -> Section:
     """Return the chapter of one instrument; `tag` ends the names of its files."""
+    seen, result = each.seen, each.result
     name = f"{seen.use.instrument.name}, {seen.use.setting.name}"
-    pictures = [_spectrum(seen, result, tag), _against_time(seen, result, light, tag), _disk(seen, tag)]
-    ellipse = _ellipse(seen, result, tag)
+    pictures = [_spectrum(seen, result, tag), _against_time(each, tag), _disk(seen, tag)]
+    ellipse = _ellipse(each, tag)
     tables = {
         f"exposure-time{tag}": result.table("time"),
         f"exposure-lines{tag}": result.table("lines"),
@@ -49,8 +50,13 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
     wavelength = table["wavelength"]
     atmosphere = air_over(seen.use.instrument)
     where, clear = np.empty(0), np.empty(0)
+    span = float(wavelength.min()), float(wavelength.max())
+    setting = seen.use.setting
+    if seen.use.instrument.opening.kind == "imager":
+        edges = [1e6 * edge for band in (setting.band_m, setting.off_band_m) if band for edge in band]
+        span = min(edges), max(edges)
     if atmosphere is not None:
-        where = np.linspace(wavelength.min(), wavelength.max(), 4000)
+        where = np.linspace(*span, 4000)
         clear = atmosphere.transmission(
             1e-6 * where, float(seen.moment.airmass[0]), float(seen.moment.water_m[0])
         )
@@ -68,25 +74,31 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
         [str(label) for label in lines["label"]],
         lines["snr_one_hour"],
         "electrons s⁻¹ per pixel",
+        span,
     )
     best = f"{lines['label'][strongest]} at {lines['wavelength'][strongest]:.4f} µm"
     return Picture(
         f"spectrum{tag}",
         figure,
-        f"Forecast spectrum between {wavelength.min():.3f} and {wavelength.max():.3f} micron with the "
+        f"Forecast spectrum between {span[0]:.3f} and {span[1]:.3f} micron with the "
         f"transmission of the air; the line that counts most is {best}.",
         f"The H₃⁺ lines as the detector sees them, with the background under them and the transmission of "
         f"the air above; the lines stand where the planet's motion puts them. {best} counts most.",
     )
 
 
-def _against_time(seen: Look, result: Result, light: Brightness, tag: str) -> Picture:
+def _against_time(each: Exposed, tag: str) -> Picture:
+    seen, result, light = each.seen, each.result, each.brightness
     noise, goal = result.table("noise"), seen.request.goal
     shares = {str(s): float(v) for s, v in zip(noise["source"], noise["variance_share"], strict=True)}
     need = result.header.get("time_to_goal")
     time_h = float(need.value) if need is not None else np.inf
     last_s = 3600.0 * max(2.2 * time_h if np.isfinite(time_h) else 12.0, 1.0)
-    clock_s = np.linspace(0.0, last_s, POINTS)
+    begin_s = float(seen.visit.clock_s(0.0))  # the curve is steepest where the first exposure begins
+    last_s = max(last_s, 1.5 * begin_s)
+    clock_s = np.append(0.0, begin_s + (last_s - begin_s) * np.linspace(0.0, 1.0, POINTS) ** 2)
+    if np.isfinite(time_h):
+        clock_s = np.sort(np.append(clock_s, 3600.0 * time_h))
 
     def snr(factor: float) -> NDArray[np.float64]:
         visit = seen.visit_in(seen.state.temperature_k, factor * seen.state.column_m2)
@@ -167,28 +179,27 @@ def _disk(seen: Look, tag: str) -> Picture:
     )
 
 
-def _ellipse(seen: Look, result: Result, tag: str) -> list[Picture]:
-    """Return the error ellipse after the time to the goal (or one hour); nothing where T is not measured."""
-    times, systematic = result.table("time"), seen.systematic
-    kelvin = times["temperature_error"]
-    if not np.isfinite(kelvin[0]):
+def _ellipse(each: Exposed, tag: str) -> list[Picture]:
+    """Return the error ellipse when the goals are reached (or after an hour of open shutter).
+
+    Nothing where these lines give no temperature.
+    """
+    seen = each.seen
+    open_s = max((need.open_s for need in each.needs if np.isfinite(need.open_s)), default=3600.0)
+    matrix = seen.visit.yields(open_s)
+    kelvin, fraction = float(temperature_error(matrix)), float(column_error(matrix))
+    if not np.isfinite(kelvin):
         return []
-    need = result.header.get("time_to_goal")
-    wanted_h = float(need.value) if need is not None and np.isfinite(float(need.value)) else 1.0
-    row = int(np.clip(np.searchsorted(times["clock_time"], wanted_h), 0, kelvin.size - 1))
-    fraction = float(times["column_error"][row])
-    rho = float(correlation(marginalise(seen.detail.matrix + seen.detail.prior)))
-    sigma = np.array([fraction, float(kelvin[row])])
-    covariance = np.outer(sigma, sigma) * np.array([[1.0, rho], [rho, 1.0]])
+    rho, sigma = float(correlation(matrix)), np.array([fraction, kelvin])
     figure = error_ellipse(
         seen.state.temperature_k,
         seen.state.column_m2,
-        covariance,
-        (systematic.column_total, systematic.temperature_total_k),
+        np.outer(sigma, sigma) * np.array([[1.0, rho], [rho, 1.0]]),
+        (seen.systematic.column_total, seen.systematic.temperature_total_k),
     )
-    hours = words.duration(3600.0 * float(times["clock_time"][row]))
+    hours = words.duration(float(seen.visit.clock_s(open_s)))
     text = (
-        f"After {hours} of one visit the temperature is known to ± {words.number(float(kelvin[row]), 2)} K "
-        f"and the column to ± {words.percent(fraction)} (random); the two trade against each other."
+        f"After {hours} of one visit the temperature is known to ± {words.number(kelvin, 2)} K and the "
+        f"column to ± {words.percent(fraction)} (random); the two trade against each other."
     )
     return [Picture(f"errors{tag}", figure, text, f"{text} The box shows the systematic errors.")]

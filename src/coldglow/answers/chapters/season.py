@@ -8,8 +8,8 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.chosen import Stretch, stretches_table
-from coldglow.answers.scenes import information_rate
+from coldglow.answers.chosen import Stretch
+from coldglow.answers.scenes import hour_snr
 from coldglow.plan.stretches import Steps
 from coldglow.plan.stretches import season_chart as lay_out
 from coldglow.report import words
@@ -36,8 +36,7 @@ def season_chapter(
         pictures += [_chart(scene, mine, tag, why)]
         if mine and np.isfinite(scene.track.altitude_rad).any():
             pictures += [_nights(scene, mine, tag)]
-    tables = {"stretches": stretches_table(chosen)} if chosen else {}
-    return Section("Which hours are best", hours.sentences, pictures, {**tables, "hours": hours.table()})
+    return Section("Which hours are best", hours.sentences, pictures, {"hours": hours.table()})
 
 
 def _hours_from(night: str, tt_s: NDArray[np.float64] | float) -> NDArray[np.float64]:
@@ -47,8 +46,7 @@ def _hours_from(night: str, tt_s: NDArray[np.float64] | float) -> NDArray[np.flo
 
 def _chart(scene: Scenario, chosen: Sequence[Stretch], tag: str, why: str) -> Picture:
     steps, track = scene.steps, scene.track
-    snr_hour = np.sqrt(3600.0 * information_rate(scene) * steps.shutter_share)
-    hours, chart = lay_out(steps, snr_hour)
+    hours, chart = lay_out(steps, hour_snr(scene))
     first = track.night_dates[0]
     offset = float(_hours_from(first, track.grid.tt_s[0])) - steps.time_s[0] / 3600.0
     dates = [str(np.datetime64(first) + day) for day in range(chart.shape[0])]

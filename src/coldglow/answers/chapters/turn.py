@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from coldglow.answers.choice import Choice
 from coldglow.answers.chosen import Stretch, stretches_of
-from coldglow.answers.scenes import information_rate
+from coldglow.answers.scenes import hour_snr
 from coldglow.plan.goal import required_snr
 from coldglow.report import words
 from coldglow.report.figures.coverage import VisitTrack, coverage
@@ -62,7 +62,8 @@ def _measure(choice: Choice, result: Result) -> tuple[NDArray[np.float64], float
     if request.coverage.minutes is not None:
         return 60.0 * bins["clock_time"], request.coverage.minutes, "minutes of clock time per bin"
     if request.coverage.temperature_error_k is not None:
-        return bins["share_of_goal"], 1.0, "information per bin, over what the goal asks"
+        goal = 1.0 / request.coverage.temperature_error_k
+        return 1.0 / bins["temperature_error"], goal, "precision of the temperature per bin, 1/σ (K⁻¹)"
     needed = required_snr(float(request.coverage.snr or 0.0), request.goal.probability)
     return bins["snr"], float(needed), "expected SNR per bin"
 
@@ -72,12 +73,11 @@ def _track(stretch: Stretch, several: bool) -> VisitTrack:
     scene = stretch.scene
     lost = int((stretch.exposing_tt_s - stretch.start_tt_s) / scene.steps.step_s)
     inside = slice(min(stretch.first + lost, stretch.end - 1), stretch.end)
-    rate = information_rate(scene)[inside] * scene.steps.shutter_share[inside]
     label = words.day(stretch.night)
     if several:
         label += f", {scene.use.instrument.name}"
     longitude = np.degrees(scene.track.sub_observer_longitude_rad[inside])
-    return VisitTrack(label, longitude, np.sqrt(3600.0 * rate))
+    return VisitTrack(label, longitude, hour_snr(scene)[inside])
 
 
 def _light(result: Result) -> Iterator[Picture]:

@@ -15,6 +15,7 @@ from coldglow.report.figures import look
 
 _ROW_IN = 0.36
 _LETTERS = 34
+_DECADES = 4  # named along the axis
 
 
 @look.styled
@@ -64,6 +65,8 @@ def comparison(
             fontsize=8.5,
         )
     main.set_yticks(range(count), labels)
+    decades = np.arange(round(np.log10(low)), round(np.log10(high)) + 1)
+    main.set_xticks(10.0 ** decades[:: -(-len(decades) // _DECADES)])
     main.xaxis.set_major_formatter(lambda value, _: words.duration(3600 * value))
     main.xaxis.set_minor_formatter(NullFormatter())
     main.set_xlabel("time on the clock to the goal")

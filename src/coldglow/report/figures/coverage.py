@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from coldglow.report.figures import look
 
 _PIECES = 40
+_FAR = 12.0  # times the goal
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -67,7 +68,9 @@ def coverage(
         color=look.AMBER,
         edgecolor=look.PAPER,
     )
-    top = 1.25 * max(float(reached.max()), goal)
+    most = max(float(reached.max()), goal)
+    far = most > _FAR * goal  # the goal would be lost at the foot of an even scale
+    top = 2.5 * most if far else 1.25 * most
     bins.bar(
         bin_edges_deg[:-1][~reachable], np.full((~reachable).sum(), top), width[~reachable], align="edge",
         facecolor="none", edgecolor=look.STONE, hatch="////", linewidth=0,
@@ -77,7 +80,10 @@ def coverage(
         "goal", (1, goal), xycoords=("axes fraction", "data"), xytext=(4, -3), textcoords="offset points",
         color=look.BRICK,
     )  # fmt: skip
-    bins.set_ylim(0, top)
+    if far:
+        bins.set_yscale("log")
+        look.powers_of_ten(bins.yaxis)
+    bins.set_ylim(0.3 * goal if far else 0.0, top)
     look.name_axes(bins, "", reached_name)
     handles = [
         (met, look.BLUE, "", "goal met"),

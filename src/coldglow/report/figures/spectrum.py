@@ -28,12 +28,14 @@ def spectrum(
     line_labels: Sequence[str],
     line_weight: NDArray[np.float64],
     rate_name: str = "electrons per second and pixel",
+    span_um: tuple[float, float] | None = None,
 ) -> Figure:
     """Draw the rates of lines, planet's continuum and background on the pixels, and the transmission.
 
     `wavelength_um`, `signal`, `continuum`, `background`: ndarray[pixel]; `transmission_um`,
     `transmission`: ndarray[wavelength] (empty in space); the others ndarray[line]. All lines are
-    marked, the dozen of largest weight that have a label are named.
+    marked, the dozen of largest weight that have a label are named. `span_um` is what the axis shows, if
+    that is more than the pixels' middles (the bands of an imager).
     """
     in_air = len(transmission_um) > 0
     names_in = _LEADER_IN + 0.1 + _LETTER_IN * max(map(len, line_labels), default=0)
@@ -45,9 +47,7 @@ def spectrum(
         margins_in=(0.6, 0.25, 0.35 if in_air else names_in + 0.1, 0.8),
     )
     main = axes[-1, 0]
-    span = (float(wavelength_um[0]), float(wavelength_um[-1]))
-    if len(wavelength_um) <= _FEW:
-        span = (span[0] - 0.1 * (span[1] - span[0]), span[1] + 0.1 * (span[1] - span[0]))
+    span = span_um or (float(wavelength_um[0]), float(wavelength_um[-1]))
     if in_air:
         air = axes[0, 0]
         x, low, high = envelope(transmission_um, transmission, span)
