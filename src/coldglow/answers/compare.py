@@ -74,6 +74,10 @@ def compare(
         NotFoundError: an instrument of no such name.
         DateError: the dates lie outside the ephemeris.
 
+    >>> result = compare("examples/uranus-season.yaml", ["echelle-8m"])
+    >>> result["setting"].tolist()
+    ['q-branch', 'r-branch', 'overtone']
+
     """
     record = as_request(request)
     chosen = rivals(record, instruments)
@@ -144,7 +148,7 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
     given = offers(request, (scene,), "night")
     best = int(np.argmax(given.information))
     common = use.instrument.operation.common_floor
-    open_s = max(need.open_s for need in wanted)
+    open_s, fixed_k = max(need.open_s for need in wanted), seen.systematic.temperature_total_k
     nights = float(planned.header["nights"].value) if "nights" in planned.header else np.inf
     feasible = bool(np.isfinite(open_s)) and planned.feasible
     return Verdict(
@@ -154,8 +158,8 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         nights,
         str(planned.header.get("nights", "")),
         float(np.sqrt(with_floor(given.information[best], common))),
-        float(temperature_error(given.matrix[best])),
-        seen.systematic.temperature_total_k,
+        float(temperature_error(given.matrix[best])) if np.isfinite(fixed_k) else np.inf,
+        fixed_k,
         _noisiest(seen) if np.isfinite(open_s) else "floors",
         feasible,
         "" if feasible else _why_not(wanted, planned),
@@ -258,13 +262,40 @@ def compare_of(request: Request, verdicts: Sequence[Verdict]) -> Result:
 def _sentences(request: Request, best: list[Verdict]) -> Iterator[str]:
     good = [verdict for verdict in best if verdict.feasible]
     if not good:
-        yield f"None of the {words.count(len(best), 'setting')} does it."
+        yield "None of these settings does it." if len(best) > 1 else f"{_name(best[0])} does not do it."
     for place, verdict in enumerate(good[:SPOKEN]):
-        name = f"{verdict.instrument} ({verdict.setting})"
+        first = "Next is" if place else "Best is"
         needed = f"{words.duration(verdict.time_to_goal_s)} on the clock, {verdict.asked} to request"
-        yield f"{'Best is' if not place else 'Next is'} {name}: {needed}; limited by {verdict.limited_by}."
+        wanted_k = request.goal.temperature_error_k or np.inf
+        beyond = (
+            f", and its systematic error of ± {words.number(verdict.systematic_temperature_k, 2)} K is larger "
+            "than what is wanted"
+            if verdict.systematic_temperature_k > wanted_k
+            else ""
+        )
+        yield f"{first} {_name(verdict)}: {needed}; limited by {verdict.limited_by}{beyond}."
     if request.coverage.asked:
         yield "These are the goals on the whole disk; `cover` answers how to cover the rotation."
-    for verdict in best:
-        if not verdict.feasible:
-            yield f"Not {verdict.instrument} ({verdict.setting}): {verdict.reason}"
+    bad = [verdict for verdict in best if not verdict.feasible]
+    costly = [f"{_name(verdict)} with {verdict.asked}" for verdict in bad if verdict.asked]
+    if costly:
+        yield f"More than the budget allows: {words.listing(costly)}."
+    deep = [_name(verdict) for verdict in bad if not verdict.asked and np.isfinite(verdict.time_to_goal_s)]
+    if deep:
+        yield (
+            f"Not with all the nights on offer, or not with the wanted probability: {words.listing(deep)}."
+        )
+    yield from _refusals([verdict for verdict in bad if not np.isfinite(verdict.time_to_goal_s)])
+
+
+def _name(verdict: Verdict) -> str:
+    return f"{verdict.instrument} ({verdict.setting})"
+
+
+def _refusals(verdicts: list[Verdict]) -> Iterator[str]:
+    """Yield one sentence for each instrument and kind of refusal, with the words for the first setting."""
+    kinds = dict.fromkeys((verdict.instrument, verdict.limited_by) for verdict in verdicts)
+    for kind in kinds:
+        same = [each for each in verdicts if (each.instrument, each.limited_by) == kind]
+        settings = ", ".join(each.setting for each in same)
+        yield f"Not {kind[0]} ({settings}): {same[0].reason}"
