@@ -28,7 +28,7 @@ from coldglow.detect.exposure import Exposure, Moments, expose_moments
 from coldglow.detect.season import beams
 from coldglow.light.atmosphere import Atmosphere, load_atmosphere
 from coldglow.light.atmosphere import validity_warnings as atmosphere_warnings
-from coldglow.light.emission import optical_depth_warnings, validity_warnings
+from coldglow.light.emission import equilibrium_warnings, optical_depth_warnings, validity_warnings
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import path_factor
 from coldglow.plan.stretches import Steps, runs
@@ -275,6 +275,7 @@ def _warnings(
     target: Target, setting: Setting, state: State, atmosphere: Atmosphere | None, airmass: Array, air: Air
 ) -> Iterator[str]:
     yield from validity_warnings(state.temperature_k)
+    yield from equilibrium_warnings(state.lte_fraction)
     if isinstance(atmosphere, Atmosphere) and airmass.size:
         yield from atmosphere_warnings(atmosphere, float(airmass.max()), air.water_m)
     bands = [setting.band_m, *([setting.off_band_m] if setting.off_band_m else [])]

@@ -9,6 +9,7 @@ import numpy as np
 from coldglow.answers.inputs import NamePath, Quantity, as_target, in_si, place_errors
 from coldglow.describe.records import Target
 from coldglow.light.emission import (
+    equilibrium_warnings,
     line_radiance_w_m2_sr,
     optical_depth_warnings,
     partition_function,
@@ -46,6 +47,12 @@ def glow(
     Raises:
         RangeError: a band without lines, or a temperature or column that is not positive.
 
+    >>> result = glow("uranus", temperature="500 K", column_density="2e15 m-2", band=("3.9 um", "4.0 um"))
+    >>> print(result["label"][result["radiance"].argmax()])
+    Q(1,0)
+    >>> print(f"{result.header['partition_function'].value:.1f}")
+    80.6
+
     """
     record = as_target(target)
     emission = record.emission
@@ -55,10 +62,12 @@ def glow(
         else in_si(temperature, "temperature", "temperature")
     )
     if column_density is None:
-        shining = emission.column_m2.value * emission.lte_fraction.value
+        fraction = emission.lte_fraction.value
+        shining = emission.column_m2.value * fraction
         along_m2 = float(line_of_sight_column_m2(record.figure, shining))
         kind = "along the line of sight, mean over the visible disk"
     else:
+        fraction = 1.0
         along_m2, kind = in_si(column_density, "column", "column"), "along the line of sight, as asked"
     low_m, high_m = (in_si(edge, "wavelength", "band") for edge in band) if band else (1.9e-6, 5.5e-6)
     with place_errors(record):
@@ -100,5 +109,9 @@ def glow(
             f"The brightest of {len(lines)} lines is {name}; this band holds "
             f"{words.percent(float(share.sum()))} of the light of all lines."
         ],
-        [*validity_warnings(kelvin), *optical_depth_warnings(lines, kelvin, along_m2)],
+        [
+            *validity_warnings(kelvin),
+            *equilibrium_warnings(fraction),
+            *optical_depth_warnings(lines, kelvin, along_m2),
+        ],
     )

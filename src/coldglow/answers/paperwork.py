@@ -74,6 +74,12 @@ def _decided(found: Findings, standards: str) -> Iterator[Assumption]:
         f"{state}, vertical column {column} (given as {emission.given_as})",
         f"target {target.name}, block `emission`",
     )
+    yield Assumption(
+        "populations of the levels",
+        "local equilibrium at one temperature, with the upper levels holding "
+        f"{words.percent(emission.lte_fraction.value)} of it",
+        f"target {target.name}, block `emission`: `lte_fraction` (published columns assume equilibrium)",
+    )
     if found.fading is not None:
         law = f"{law_words(emission, cooling)}; applied in the outlook only"
         yield Assumption("cooling", law, f"target {target.name}, block `cooling`")

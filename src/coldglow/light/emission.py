@@ -161,3 +161,17 @@ def validity_warnings(temperature_k: float) -> list[str]:
             "1500 K the emission is 2-3 % and the partition function 0.2 % too low, more above."
         )
     return notes
+
+
+def equilibrium_warnings(lte_fraction: float) -> list[str]:
+    """Return a sentence when the upper levels hold less than in equilibrium, else nothing.
+
+    Source: Melin et al. 2005, Icarus 178, 97 (from memory): higher vibrational levels lack more.
+    """
+    if lte_fraction >= 1.0:
+        return []
+    return [
+        f"The upper levels are taken to hold {100 * lte_fraction:.3g} % of what local equilibrium gives, in "
+        "all lines alike. Out of equilibrium the overtone and hot bands lack more than the fundamental: "
+        "treat ratios of lines from different bands, and temperatures from them, with reserve."
+    ]
