@@ -268,8 +268,8 @@ def _sentences(request: Request, best: list[Verdict]) -> Iterator[str]:
         needed = f"{words.duration(verdict.time_to_goal_s)} on the clock, {verdict.asked} to request"
         wanted_k = request.goal.temperature_error_k or np.inf
         beyond = (
-            f", and its systematic error of ± {words.number(verdict.systematic_temperature_k, 2)} K is larger "
-            "than what is wanted"
+            f", and its systematic error of ± {words.number(verdict.systematic_temperature_k, 2)} K is "
+            "larger than what is wanted"
             if verdict.systematic_temperature_k > wanted_k
             else ""
         )
