@@ -8,8 +8,9 @@ import pytest
 from scipy.stats import binom
 
 from coldglow.answers.choice import choose
-from coldglow.answers.nights import nights, nights_of, plan_of
+from coldglow.answers.nights import nights, nights_of
 from coldglow.answers.offers import offers
+from coldglow.answers.requesting import plan_of
 from coldglow.answers.scatter import factors_of, response_of
 from coldglow.answers.scenes import scenes
 from coldglow.describe.load import load_request

@@ -8,8 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.nights import Plan
+from coldglow.answers.choice import choose
+from coldglow.answers.inputs import NamePath, as_request, described, place_errors
 from coldglow.answers.offers import PARTS, Offers
+from coldglow.answers.requesting import Plan, planned
+from coldglow.answers.scenes import Also, scenes
 from coldglow.describe.records import Request
 from coldglow.report.results import Table, column, table
 from coldglow.scenario import Scenario
@@ -81,6 +84,18 @@ class Stretch:
         spacing_s = next((60.0 * m for m in MINUTES if 60.0 * m >= wanted_s - 1e-6), wanted_s)
         stride = max(round(spacing_s / step_s), 1)
         return np.unique(np.append(np.arange(self.first, self.end, stride), self.end - 1))
+
+
+def requested(request: NamePath | Request, also: Also = None) -> tuple[Stretch, ...]:
+    """Return the stretches that the answer `nights` asks for, in order of time; arguments as there.
+
+    Each holds its scenario, whose `track` serves, say, `coldglow.bridges.astroplan.observing_blocks`.
+    """
+    record = as_request(request)
+    with place_errors(*described(record)):
+        found = scenes(record, also=also)
+        choice = choose(record, found) if record.coverage.asked else None
+        return asked_for(record, planned(record, found, choice))
 
 
 def asked_for(request: Request, plan: Plan | None) -> tuple[Stretch, ...]:

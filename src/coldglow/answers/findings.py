@@ -16,8 +16,9 @@ from coldglow.answers.expose import Look, expose_of, look, median_moment
 from coldglow.answers.fade import fade_of
 from coldglow.answers.fading import Fading, fading
 from coldglow.answers.hours import hours_of
-from coldglow.answers.nights import Plan, Wanted, chances_of, planned, told, weather_of
-from coldglow.answers.scenes import scenes
+from coldglow.answers.nights import told
+from coldglow.answers.requesting import Plan, Wanted, chances_of, planned, weather_of
+from coldglow.answers.scenes import Also, scenes
 from coldglow.answers.standards import Standard, standards_for
 from coldglow.answers.visit import Need, Visit, needs
 from coldglow.describe.records import Request
@@ -96,10 +97,14 @@ class Findings:
         return self.visible and self.nights.feasible and any(each.result.feasible for each in self.exposed)
 
 
-def find_out(request: Request, stars: Stars, tell: Tell) -> Findings:
-    """Answer everything; `tell` is called with a few words at the beginning of each step."""
+def find_out(request: Request, stars: Stars, tell: Tell, also: Also = None) -> Findings:
+    """Answer everything; `tell` is called with a few words at the beginning of each step.
+
+    A further constraint `also` (see `hours`) holds for hours, cover and nights, not for the outlook and the
+    comparison.
+    """
     tell("sky, light and counts over the season")
-    found = scenes(request)
+    found = scenes(request, also=also)
     tell("exposure")
     exposed = tuple(_expose(request, scene) for scene in found if scene.usable.any())
     tell("cover")

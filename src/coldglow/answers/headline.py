@@ -7,8 +7,8 @@ from collections.abc import Iterator
 import numpy as np
 
 from coldglow.answers.findings import Exposed, Findings, quickest
-from coldglow.answers.nights import Plan
 from coldglow.answers.nightswords import climate_words
+from coldglow.answers.requesting import Plan
 from coldglow.answers.scenes import conditions_words, unseen_words
 from coldglow.detect.exposure import NOISE_SOURCES
 from coldglow.plan.goal import column_error, temperature_error

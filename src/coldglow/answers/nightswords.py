@@ -3,20 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import TYPE_CHECKING
 
 import numpy as np
 
 from coldglow.answers.choice import Choice
 from coldglow.answers.coverwords import missing_words
 from coldglow.answers.offers import Offers
+from coldglow.answers.requesting import Plan
 from coldglow.answers.scenes import conditions_words
 from coldglow.describe.records import Request
 from coldglow.report import words
 from coldglow.report.results import Entry
-
-if TYPE_CHECKING:
-    from coldglow.answers.nights import Plan
 
 LISTED = 6
 
