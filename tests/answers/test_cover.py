@@ -10,8 +10,9 @@ import pytest
 from coldglow.answers.choice import choose
 from coldglow.answers.cover import cover, cover_of
 from coldglow.answers.coverage import longitudes_seen, spot_and_rest, view_of_bins, visit_gains
-from coldglow.answers.coverwords import bin_ranges, phase_errors_rad
+from coldglow.answers.coverwords import phase_errors_rad
 from coldglow.answers.offers import WHOLE, offers
+from coldglow.answers.outofreach import bin_ranges
 from coldglow.answers.scenes import scenes
 from coldglow.describe.load import load_instrument, load_request, load_target
 from coldglow.describe.records import Use
@@ -254,7 +255,7 @@ def test_neptune_in_radio_longitudes_is_relative_and_says_so():
 
 
 def test_phase_uncertainty_by_hand():
-    # 17.24 h +- 0.01 h, phase known on 1986-01-24 (Archinal et al. 2018, table 1 and its notes): 360 dt sigma_P / P^2
+    # 17.24 h +- 0.01 h, phase known on 1986-01-24 (Archinal et al. 2018, table 1): 360 dt sigma_P / P^2
     asked = replace(request(snr=20.0), longitudes="iau2015")
     result, choice = answer(asked)
     hours = (

@@ -7,8 +7,8 @@ from collections.abc import Iterator
 import numpy as np
 
 from coldglow.answers.choice import Choice
-from coldglow.answers.coverwords import missing_words
 from coldglow.answers.offers import Offers
+from coldglow.answers.outofreach import missing_words
 from coldglow.answers.requesting import Plan
 from coldglow.answers.scenes import conditions_words
 from coldglow.describe.records import Request
