@@ -89,8 +89,8 @@ def _why_never(choice: Choice) -> str:
         if nearest > request.coverage.angle_max_rad:
             low, high = np.degrees([seen.min(), seen.max()])
             return (
-                f"latitude {degrees(latitude)} never comes within {degrees(request.coverage.angle_max_rad)} of "
-                f"the sub-observer point, whose latitude stays between {words.quantity(low, 'deg', 3)} and "
+                f"latitude {degrees(latitude)} never comes within "
+                f"{degrees(request.coverage.angle_max_rad)} of the sub-observer point, whose latitude stays between {words.quantity(low, 'deg', 3)} and "
                 f"{words.quantity(high, 'deg', 3)}"
             )
         if request.coverage.lit != "any":
