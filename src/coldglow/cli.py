@@ -9,14 +9,18 @@ import argparse
 import re
 import sys
 from collections.abc import Callable, Sequence
+from contextlib import nullcontext
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from coldglow.completion import SHELLS, Kind, Option, Syntax, completion_script
 from coldglow.errors import ColdglowError
+from coldglow.patience import teller, waiting
 
 if TYPE_CHECKING:
     from coldglow.report.results import Result
 
+TELL_THEMSELVES = ("plan", "fade", "compare")  # commands that say how far they are
 DONE, NOT_FEASIBLE, WRONG_INPUT, INTERNAL, INTERRUPTED = 0, 1, 2, 70, 130
 
 Add = Callable[[argparse.ArgumentParser], None]
@@ -211,13 +215,16 @@ def add_plan(parser: argparse.ArgumentParser) -> None:
     request_word(parser)
     parser.add_argument("--out", required=True, metavar="DIR", help="folder to write")
     parser.add_argument("--force", action="store_true", help="move an existing folder aside first")
+    parser.add_argument(
+        "--standards", default="", metavar="FILE", help="your own list of standard stars (CSV); default: ours"
+    )
 
 
 def run_plan(words: argparse.Namespace) -> Result:
     """Run `plan`."""
     from coldglow.answers import plan
 
-    return plan(words.word, out=words.out, force=words.force)
+    return plan(words.word, words.out, words.force, words.standards, tell=teller("plan"))
 
 
 def add_check(parser: argparse.ArgumentParser) -> None:
@@ -258,6 +265,55 @@ def run_draft(words: argparse.Namespace) -> str:
 
     return draft(words.target, words.instrument)
 
+
+def add_completion(parser: argparse.ArgumentParser) -> None:
+    """Arguments of `completion`."""
+    parser.add_argument("word", nargs="*", metavar="SHELL", help=" or ".join(SHELLS))
+
+
+def run_completion(words: argparse.Namespace) -> str:
+    """Run `completion`."""
+    from coldglow.describe.find import names
+    from coldglow.errors import NotFoundError
+
+    if words.word not in SHELLS:
+        raise NotFoundError(
+            f"no completion for the shell `{words.word}`; there is one for {', '.join(SHELLS)}"
+        )
+    targets, instruments = names("target"), names("instrument")
+    known = {"target": targets, "instrument": instruments, "shell": list(SHELLS)}
+    known["show"] = ["targets", "instruments", *targets, *instruments]
+    return completion_script(words.word, [syntax_of(name) for name in COMMANDS], known)
+
+
+def syntax_of(name: str) -> Syntax:
+    """Return what a shell must know of a command, read off its parser."""
+    options: list[Option] = []
+    word: Kind = "file"
+    for action in build_parser(name)._actions:  # argparse offers no public way to list them
+        metavar = action.metavar if isinstance(action.metavar, str) else ""
+        kind = KINDS_OF_WORDS.get(metavar, "text")
+        if not action.option_strings:
+            word = "show" if name == "show" else kind
+            continue
+        long = action.option_strings[-1]
+        kind = KINDS_OF_OPTIONS.get(long, "flag" if action.nargs == 0 else kind)
+        options.append(Option(long, kind, action.nargs in ("+", "*"), action.help or ""))
+    return Syntax(name, COMMANDS[name].question, word, tuple(options))
+
+
+KINDS_OF_WORDS: dict[str, Kind] = {
+    "TARGET": "target",
+    "SHELL": "shell",
+    "FILE": "file",
+    "REQUEST.yaml": "file",
+}
+KINDS_OF_OPTIONS: dict[str, Kind] = {
+    "--instrument": "instrument",
+    "--instruments": "instrument",
+    "--target": "target",
+    "--out": "file",
+}
 
 COMMANDS: dict[str, Command] = {
     "plan": Command(
@@ -351,6 +407,13 @@ COMMANDS: dict[str, Command] = {
         add_show,
         run_show,
     ),
+    "completion": Command(
+        "Let my shell complete commands and names",
+        "coldglow completion bash",
+        "SHELL",
+        add_completion,
+        run_completion,
+    ),
 }
 
 
@@ -366,8 +429,8 @@ def overview() -> str:
             "",
             *lines,
             "",
-            "`coldglow COMMAND --help` explains one of them with an example; `coldglow --version` tells the version.",
-            "Exit status: 0 done, 1 not feasible (with --strict), 2 wrong input, 70 internal error,",
+            "`coldglow COMMAND --help` explains one of them with an example; `coldglow --version` tells the",
+            "version. Exit status: 0 done, 1 not feasible (with --strict), 2 wrong input, 70 internal error,",
             "130 interrupted.",
         ]
     )
@@ -384,7 +447,7 @@ def build_parser(name: str) -> Parser:
         allow_abbrev=False,
     )
     command.add(parser)
-    if name != "draft":
+    if name not in ("draft", "completion"):
         parser.add_argument(
             "--write",
             action="append",
@@ -433,7 +496,9 @@ def parse(arguments: Sequence[str]) -> tuple[Command, argparse.Namespace]:
 def run(arguments: Sequence[str]) -> int:
     """Run one command and print its answer; return the exit status."""
     command, words = parse(arguments)
-    answer = command.run(words)
+    name = arguments[0]
+    with nullcontext() if name in TELL_THEMSELVES else waiting(name):
+        answer = command.run(words)
     if isinstance(answer, str):
         sys.stdout.write(answer)
         return DONE

@@ -13,7 +13,7 @@ from coldglow.answers.coverwords import header_of, sentences_of, within_budget
 from coldglow.answers.inputs import NamePath, as_request, described, place_errors
 from coldglow.answers.lightcurve import light_curve_table
 from coldglow.answers.offers import PARTS, Offers
-from coldglow.answers.scenes import scenes, unseen_words
+from coldglow.answers.scenes import Also, scenes, unseen_words
 from coldglow.describe.records import Request
 from coldglow.plan.demand import TemperatureError
 from coldglow.plan.goal import temperature_error, with_floor
@@ -27,18 +27,26 @@ NIGHTS_PRINTED = 24
 SEEN_POINTS = 30  # longitudes looked at in each bin
 
 
-def cover(request: NamePath | Request) -> Result:
+def cover(request: NamePath | Request, also: Also = None) -> Result:
     """Return the smallest choice of nights, halves or stretches that covers a rotation.
+
+    Args:
+        request: path or record.
+        also: a further constraint, as in `hours`.
 
     Returns:
         A result with tables ``bins`` (``longitude``, ``snr``, ``visits``, ``reachable``, share of the goal),
         ``nights`` (what was chosen) and, for a target with spots, ``light_curve``; header ``cost``,
         ``proven``, ``gap``, ``solver_time``, the longitude system and its phase uncertainty.
 
+    >>> result = cover("examples/uranus-season.yaml")
+    >>> bool(result.header["proven"].value), len(result["longitude"])
+    (True, 12)
+
     """
     record = as_request(request)
     with place_errors(*described(record)):
-        found = scenes(record)
+        found = scenes(record, also=also)
         choice = choose(record, found)
         result = cover_of(record, found, choice)
     if choice is None or choice.stare:

@@ -44,6 +44,9 @@ def check(files: Sequence[NamePath]) -> Result:
     Raises:
         DescriptionError: with every mistake of every file.
 
+    >>> check(["examples/uranus-season.yaml"]).sentences
+    ['1 file read; nothing is wrong.']
+
     """
     problems: list[Problem] = []
     rows: list[tuple[str, str, str]] = []
@@ -77,6 +80,9 @@ def show(name: str = "") -> Result:
 
     Raises:
         NotFoundError: there is no target or instrument of that name.
+
+    >>> "uranus" in show("targets")["name"]
+    True
 
     """
     if name and name not in LISTS:
@@ -138,5 +144,10 @@ def _about(record: Target | Instrument | Request) -> str:
 
 
 def draft(target: str, instrument: str) -> str:
-    """Return the text of a commented, valid request for a target and an instrument."""
+    """Return the text of a commented, valid request for a target and an instrument.
+
+    >>> "format: coldglow-request/1" in draft("uranus", "echelle-4m")
+    True
+
+    """
     return draft_text(target, instrument)

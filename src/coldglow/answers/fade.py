@@ -37,6 +37,12 @@ def fade(request: NamePath | Request, years: tuple[int, int] | None = None, inst
     Raises:
         RangeError: none of the years can be answered; the sentence says why.
 
+    >>> result = fade("examples/uranus-season.yaml", years=(2027, 2029))
+    >>> result["year"].tolist()
+    [2027, 2028, 2029]
+    >>> bool(result["relative_brightness"][-1] < 1.0)
+    True
+
     """
     record = as_request(request)
     if years is not None:

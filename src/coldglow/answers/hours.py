@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from coldglow.answers.inputs import NamePath, Quantity, as_request, in_si
-from coldglow.answers.scenes import conditions_words, scenes, unseen_words, visits
+from coldglow.answers.scenes import Also, conditions_words, scenes, unseen_words, visits
 from coldglow.describe.records import Request
 from coldglow.errors import RangeError
 from coldglow.plan.stretches import Stretches, best_windows
@@ -17,24 +17,34 @@ from coldglow.sky.clock import iso_from_tt
 PRINTED = 20
 
 
-def hours(request: NamePath | Request, length: Quantity | None = None) -> Result:
+def hours(request: NamePath | Request, length: Quantity | None = None, also: Also = None) -> Result:
     """Return the observable stretches of the request's nights, best first.
 
     Args:
         request: path or record.
         length: best stretch of this length in each night (text without a unit: hours); default: every
             observable stretch, whole.
+        also: a further constraint: a mask ndarray[time] over the steps of the request's nights, or a function
+            that takes a `Track` and returns one (`coldglow.bridges.astroplan.constraint_mask` does).
 
     Returns:
         A result with table ``hours``, one row a stretch, ranked by the SNR of the goal's lines; each row
         is one visit with its overheads charged.
+
+    >>> result = hours("examples/uranus-season.yaml", length="3 h")
+    >>> best = result.qtable()[0]  # of astropy, with units
+    >>> print(best["night"], best["duration"])
+    2027-12-13 3.0 h
+    >>> late = hours("examples/uranus-season.yaml", also=lambda track: track.moon_separation_rad > 1.0)
+    >>> len(late["snr"]) < len(hours("examples/uranus-season.yaml")["snr"])
+    True
 
     """
     record = as_request(request)
     wanted_s = None if length is None else in_si(length, "hours", "length")
     if wanted_s is not None and not wanted_s > 0.0:
         raise RangeError(f"a stretch of {wanted_s:g} s; its length must be positive")
-    return hours_of(record, scenes(record), wanted_s)
+    return hours_of(record, scenes(record, also=also), wanted_s)
 
 
 def hours_of(request: Request, found: tuple[Scenario, ...], wanted_s: float | None = None) -> Result:

@@ -17,6 +17,7 @@ from coldglow.answers.headline import answer, merit, verdict
 from coldglow.answers.inputs import NamePath, as_request, described, place_errors
 from coldglow.answers.justification import justification_of
 from coldglow.answers.paperwork import assumptions_of, cautions_of, inputs_of, sources_of, versions_of
+from coldglow.answers.scenes import Also
 from coldglow.answers.telescope import calendar_of, pages_of
 from coldglow.describe.records import Request
 from coldglow.describe.resolved import resolved_text
@@ -32,6 +33,7 @@ def plan(
     out: str | os.PathLike[str],
     force: bool = False,
     standards: str = "",
+    also: Also = None,
     tell: Tell = lambda step: None,
 ) -> Result:
     """Answer everything the request asks and write it into a folder.
@@ -45,6 +47,7 @@ def plan(
         out: folder to be made; nothing half-written is left when the run is interrupted.
         force: move an existing folder aside first.
         standards: path of a list of standard stars; default: the packaged one.
+        also: a further constraint, as in `hours`.
         tell: called with a few words at the beginning of each step.
 
     Returns:
@@ -53,12 +56,18 @@ def plan(
     Raises:
         OutputError: the folder exists, or cannot be written.
 
+    >>> result = plan("examples/jupiter-ovals.yaml", out="jupiter-plan")
+    >>> result.sentences[0]
+    'Feasible: ask for 2 h in 2 nights.'
+    >>> sorted(path.name for path in Path("jupiter-plan").iterdir())[:4]
+    ['figures', 'justification.md', 'justification.tex', 'nights.html']
+
     """
     record, place = as_request(request), Path(out)
     check_free(place, force)
     stars = load_standards(standards)
     with place_errors(*described(record)):
-        found = find_out(record, stars, tell)
+        found = find_out(record, stars, tell, also)
         tell("figures")
         report = report_of(found, standards)
         contents = report_files(report) | papers_of(found, report)

@@ -2,24 +2,58 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.inputs import described, place_errors
 from coldglow.describe.records import Orbit, Request, Use
-from coldglow.errors import NotFoundError
+from coldglow.errors import NotFoundError, RangeError
 from coldglow.plan.goal import marginalise, with_floor
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.report import words
 from coldglow.scenario import Air, Scenario, State, scenario, watch
+from coldglow.sky.track import Track
 
 ARCSEC_PER_RAD = 206264.80624709636
 
 
-def scenes(request: Request, state: State | None = None, air: Air | None = None) -> tuple[Scenario, ...]:
-    """Return the scenario of every use of the request over its dates."""
+Also = NDArray[np.bool_] | Callable[[Track], NDArray[np.bool_]] | None
+"""What else must hold for a step to be used: a mask ndarray[time], or what gives one for a track."""
+
+
+def scenes(
+    request: Request, state: State | None = None, air: Air | None = None, also: Also = None
+) -> tuple[Scenario, ...]:
+    """Return the scenario of every use of the request over its dates.
+
+    Raises:
+        RangeError: the mask `also` has not one value for each step.
+
+    """
     with place_errors(*described(request)):
-        return tuple(scenario(request, use, watch(request, use), state, air) for use in request.uses)
+        tracks = [restricted(watch(request, use), also) for use in request.uses]
+        uses = zip(request.uses, tracks, strict=True)
+        return tuple(scenario(request, use, track, state, air) for use, track in uses)
+
+
+def restricted(track: Track, also: Also) -> Track:
+    """Return the track, observable only where `also` holds too."""
+    if also is None:
+        return track
+    allowed = np.asarray(also(track) if callable(also) else also, dtype=bool)
+    if allowed.shape != track.observable.shape:
+        raise RangeError(
+            f"the further constraint has the shape {allowed.shape}, the track {track.observable.shape}: give "
+            "one value for each step of the track, or a function of the track that returns them"
+        )
+    return replace(
+        track,
+        observable=track.observable & allowed,
+        limited_by={**track.limited_by, "a further constraint forbids it": ~allowed},
+    )
 
 
 def choose_use(request: Request, instrument: str = "") -> Use:

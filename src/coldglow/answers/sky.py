@@ -74,6 +74,10 @@ def sky(
         RangeError: no times, or times out of order; DateError outside the ephemeris.
         NotFoundError: no such longitude system.
 
+    >>> result = sky("uranus", site=("-65 deg", "-20 deg", "4200 m"), at=["2027-12-20T02:00"])
+    >>> bool(result["observable"][0]), round(float(result["airmass"][0]), 2)
+    (True, 1.37)
+
     """
     record = as_target(target)
     system = longitude_system(record.rotation, longitudes)

@@ -3,6 +3,29 @@
 Nothing is set globally: astropy is told for the length of a call not to look for newer tables of the
 Earth's rotation on the network, and its warnings about dates beyond its tables stay inside. Such dates
 cost the masks a few seconds of time at most.
+
+What astroplan forbids, `hours`, `cover`, `nights` and `plan` can leave out; what they choose becomes its
+observing blocks:
+
+>>> from dataclasses import replace
+>>> from coldglow import hours, load_request
+>>> from coldglow.answers.chosen import requested
+>>> from coldglow.bridges.astroplan import constraint_mask, observing_blocks, offline
+>>> with offline():
+...     from astropy import units as u
+...     from astroplan import MoonSeparationConstraint
+>>> season = load_request("examples/uranus-season.yaml")
+>>> few = replace(season.dates, first="2027-12-20", last="2027-12-22", forbidden=())
+>>> request = replace(season, dates=few, coverage=replace(season.coverage, asked=False))
+>>> far = [MoonSeparationConstraint(min=30 * u.deg)]  # any constraint of astroplan, as many as wanted
+>>> def allowed(track):
+...     return constraint_mask(track, far)
+>>> hours(request, also=allowed)["night"].tolist()
+['2027-12-21', '2027-12-22', '2027-12-20']
+>>> stretch = requested(request, also=allowed)[0]  # what `nights` would ask for
+>>> block = observing_blocks(stretch.scene.track, [(stretch.first, stretch.end)], "Uranus")[0]
+>>> block.start_time.isot[:16]
+'2027-12-21T00:07'
 """
 
 from __future__ import annotations

@@ -33,6 +33,10 @@ def load_target(name_or_path: NamePath) -> Target:
     """Return the target of that name or file.
 
     Raises `NotFoundError` (with the nearest name) or `DescriptionError` (with every mistake).
+
+    >>> target = load_target("uranus")
+    >>> target.emission.temperature_k.value
+    430.0
     """
     return _target(assemble(find(name_or_path, "target"), "target"))
 
@@ -41,6 +45,9 @@ def load_instrument(name_or_path: NamePath) -> Instrument:
     """Return the instrument of that name or file.
 
     Raises `NotFoundError` (with the nearest name) or `DescriptionError` (with every mistake).
+
+    >>> [setting.name for setting in load_instrument("echelle-8m").settings]
+    ['q-branch', 'r-branch', 'overtone']
     """
     return _instrument(assemble(find(name_or_path, "instrument"), "instrument"))
 
@@ -50,6 +57,10 @@ def load_request(path: NamePath) -> Request:
 
     Raises `NotFoundError` when there is no such file, `DescriptionError` with every mistake in it, in its
     target and in its instruments.
+
+    >>> request = load_request("examples/uranus-season.yaml")
+    >>> request.target.name, request.uses[0].setting.name
+    ('Uranus', 'q-branch')
     """
     file = Path(path).expanduser()
     return _request(assemble(file, "request"), file)

@@ -18,7 +18,20 @@ __all__ = ["Column", "Entry", "Result", "Table", "column", "table"]
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Result(Findings):
-    """What one command found. The first table is the main one; `sentences` say the answer in words."""
+    """What one command found. The first table is the main one; `sentences` say the answer in words.
+
+    It prints as a table, shows itself in a notebook, hands out astropy tables and writes files:
+
+    >>> found = Result("demo", {"rows": table(column("night", ["2027-11-25"]), column("snr", [12.3]))})
+    >>> print(found)
+    night         snr
+    ──────────  ─────
+    2027-11-25  12.30
+    >>> found["snr"]
+    array([12.3])
+    >>> found.qtable().colnames
+    ['night', 'snr']
+    """
 
     def qtable(self, name: str = "") -> QTable:
         """Return a table as an astropy QTable with units, header values and sentences in its metadata."""

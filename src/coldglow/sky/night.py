@@ -79,4 +79,4 @@ def why_not(masks: Mapping[str, Mask]) -> str:
     if not shares:
         return ""
     names = sorted(shares, key=lambda name: -shares[name])
-    return ", ".join(f"{_WORDS[name]} ({100 * shares[name]:.0f} % of the time)" for name in names)
+    return ", ".join(f"{_WORDS.get(name, name)} ({100 * shares[name]:.0f} % of the time)" for name in names)
