@@ -90,8 +90,8 @@ def _why_never(choice: Choice) -> str:
             low, high = np.degrees([seen.min(), seen.max()])
             return (
                 f"latitude {degrees(latitude)} never comes within "
-                f"{degrees(request.coverage.angle_max_rad)} of the sub-observer point, whose latitude stays between {words.quantity(low, 'deg', 3)} and "
-                f"{words.quantity(high, 'deg', 3)}"
+                f"{degrees(request.coverage.angle_max_rad)} of the sub-observer point, whose latitude stays "
+                f"between {words.quantity(low, 'deg', 3)} and {words.quantity(high, 'deg', 3)}"
             )
         if request.coverage.lit != "any":
             return f"they are never in view by {request.coverage.lit} within the angle asked"
