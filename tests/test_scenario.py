@@ -79,9 +79,9 @@ def test_halves_of_a_night_add_to_the_night_before_marginalisation():
 def test_a_night_does_not_depend_on_the_season_around_it():
     short = example("uranus-season", "2027-11-20", 1)
     use = short.uses[0]
-    alone = scenario(short, use, watch(short, use))
+    alone = scenario(short, use, watch(short, use), state_of(short))
     season = load_request(EXAMPLES / "uranus-season.yaml")
-    whole = scenario(season, use, watch(season, use))
+    whole = scenario(season, use, watch(season, use), state_of(short))
     mine = whole.usable & (whole.track.night == whole.track.night_dates.index("2027-11-20"))
     got = marginalise(whole.steps.matrix)[mine][:, 0, 0]
     want = marginalise(alone.steps.matrix)[alone.usable][:, 0, 0]
@@ -92,7 +92,7 @@ def test_the_column_scales_the_signal_and_the_lte_fraction_scales_the_column():
     asked = example("uranus-season", "2027-11-20", 1)
     use = asked.uses[0]
     track = watch(asked, use)
-    state = state_of(asked.target)
+    state = state_of(asked)
     half = scenario(asked, use, track, replace(state, lte_fraction=0.5 * state.lte_fraction))
     thin = scenario(asked, use, track, replace(state, column_m2=0.5 * state.column_m2))
     np.testing.assert_allclose(half.exposure.signal_e_s, thin.exposure.signal_e_s, rtol=1e-12)

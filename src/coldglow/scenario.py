@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from coldglow.describe.records import (
     Conditions,
+    Emission,
     Instrument,
     Request,
     Setting,
@@ -28,6 +29,7 @@ from coldglow.detect.exposure import Exposure, Moments, expose_moments
 from coldglow.detect.season import beams
 from coldglow.light.atmosphere import Atmosphere, load_atmosphere
 from coldglow.light.atmosphere import validity_warnings as atmosphere_warnings
+from coldglow.light.cooling import emission_at
 from coldglow.light.emission import equilibrium_warnings, optical_depth_warnings, validity_warnings
 from coldglow.light.lines import load_lines
 from coldglow.light.shell import path_factor
@@ -86,9 +88,18 @@ class Scenario:
         return operation.acquisition_s + operation.standards_s
 
 
-def state_of(target: Target) -> State:
-    """Return the state that the target's description gives."""
-    emission = target.emission
+def emission_of(request: Request) -> Emission:
+    """Return the target's emission in the middle of the request's dates, as its cooling law has made it.
+
+    A temperature measured years before the run is not that of the run; outlook and plan must agree.
+    """
+    first, last = np.datetime64(request.dates.first), np.datetime64(request.dates.last)
+    return emission_at(request.target.emission, request.target.cooling, str(first + (last - first) // 2))
+
+
+def state_of(request: Request) -> State:
+    """Return the state of the target in the middle of the request's dates."""
+    emission = emission_of(request)
     return State(emission.temperature_k.value, emission.column_m2.value, emission.lte_fraction.value)
 
 
@@ -196,12 +207,12 @@ def scenario(
         request: whose target, dates and goal count.
         use: instrument and setting.
         track: of the target from the instrument's place.
-        state: of the ionosphere; default: the description's.
+        state: of the ionosphere; default: that of the request's dates.
         air: seeing and water; default: the request's conditions.
 
     """
     seen = sight(request, use, track, air)
-    state = state or state_of(request.target)
+    state = state or state_of(request)
     exposure = expose_sight(seen, state)
     airmass = track.airmass[seen.usable]
     return Scenario(

@@ -10,7 +10,7 @@ from coldglow.describe.load import load_instrument, load_request
 from coldglow.describe.records import Estimate, Goal, Use
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.plan.goal import column_error, marginalise, required_snr, temperature_error
-from coldglow.scenario import follow
+from coldglow.scenario import follow, state_of
 from coldglow.sky.clock import times_grid
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
@@ -33,7 +33,8 @@ def in_state(asked, temperature_k, column_m2):
     emission = replace(
         asked.target.emission, temperature_k=Estimate(temperature_k), column_m2=Estimate(column_m2)
     )
-    return replace(asked, target=replace(asked.target, emission=emission))
+    still = replace(asked.target.cooling, law="constant", column_rate_s=Estimate(0.0))
+    return replace(asked, target=replace(asked.target, emission=emission, cooling=still))
 
 
 @pytest.fixture(scope="module")
@@ -93,20 +94,20 @@ def test_limits_give_the_goal_when_put_back(uranus):
     asked, header = request(), uranus.header
     significance = asked.fade.significance
     clock_s = 3600.0 * header["time_to_goal"].value
-    state = asked.target.emission
-    colder = in_state(asked, header["coldest_temperature"].value, state.column_m2.value)
+    state = state_of(asked)
+    colder = in_state(asked, header["coldest_temperature"].value, state.column_m2)
     assert expose(colder, at=WHEN, clock=clock_s).header["snr"].value == pytest.approx(significance, rel=1e-9)
-    fewer = in_state(asked, state.temperature_k.value, header["smallest_column"].value)
+    fewer = in_state(asked, state.temperature_k, header["smallest_column"].value)
     assert expose(fewer, at=WHEN, clock=clock_s).header["snr"].value == pytest.approx(significance, rel=1e-9)
 
 
 def test_limits_against_time_give_the_goal_nearly(uranus):
     # the table interpolates over 40 temperatures and 56 columns: measured within 1e-4 of the SNR
-    asked, table, state = request(), uranus.table(), request().target.emission
+    asked, table, state = request(), uranus.table(), state_of(request())
     for row in (0, 6, 13):
         clock_s = 3600.0 * float(table["clock_time"][row])
-        colder = in_state(asked, float(table["coldest_temperature"][row]), state.column_m2.value)
-        fewer = in_state(asked, state.temperature_k.value, float(table["smallest_column"][row]))
+        colder = in_state(asked, float(table["coldest_temperature"][row]), state.column_m2)
+        fewer = in_state(asked, state.temperature_k, float(table["smallest_column"][row]))
         for other in (colder, fewer):
             snr = expose(other, at=WHEN, clock=clock_s).header["snr"].value
             assert snr == pytest.approx(asked.fade.significance, rel=1e-4)

@@ -114,7 +114,7 @@ def median_moment(scene: Scenario) -> int:
 def look(request: Request, use: Use, track: Track) -> Look:
     """Return a use of an instrument at the one instant of a track, in full."""
     target, instrument = request.target, use.instrument
-    state, air = state_of(target), air_of(instrument.sky, request.conditions)
+    state, air = state_of(request), air_of(instrument.sky, request.conditions)
     moment = moments_of(target, instrument, use.setting, track, air)
     detail = expose_one(
         moment,
@@ -171,6 +171,12 @@ def expose(
     Returns:
         A result with tables ``time`` (``clock_time``, ``shutter_time``, ``snr``, errors, limits),
         ``lines``, ``noise``, ``systematics`` and ``spectrum``.
+
+    >>> result = expose("examples/uranus-season.yaml", at="2027-12-20T02:00")
+    >>> str(result.header["integration"])
+    '120.0 s'
+    >>> bool((result["snr"][1:] > result["snr"][:-1]).all())
+    True
 
     """
     record = as_request(request)

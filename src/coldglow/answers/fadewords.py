@@ -129,8 +129,7 @@ def _since_epoch(found: Fading) -> list[str]:
     if abs(then - now) < 1.0:
         return []
     return [
-        f"By the law the {then:.0f} K of {words.day(epoch)} are {now:.0f} K on {words.day(found.date[0])}; "
-        "the other answers take the state of the description as it stands."
+        f"By the law the {then:.0f} K of {words.day(epoch)} are {now:.0f} K on {words.day(found.date[0])}."
     ]
 
 

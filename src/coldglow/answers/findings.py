@@ -26,7 +26,7 @@ from coldglow.detect.systematics import CAUSES
 from coldglow.light.lines import EINSTEIN_A_ERROR
 from coldglow.plan.demand import Amount
 from coldglow.report.results import Result
-from coldglow.scenario import Scenario
+from coldglow.scenario import Scenario, emission_of
 from coldglow.sky.stars import Stars
 
 Tell = Callable[[str], None]
@@ -145,7 +145,7 @@ def _expose(request: Request, scene: Scenario) -> Exposed:
 
 def brightness_of(seen: Look) -> Brightness:
     """Return how uncertain the light is and what follows for the times to the goals."""
-    emission, detail = seen.request.target.emission, seen.detail
+    emission, detail = emission_of(seen.request), seen.detail
     weight = np.where(detail.wanted, detail.line_information, 0.0)
     slope = float(weight @ detail.temperature_slope / max(float(weight.sum()), 1e-300))
     random = float(

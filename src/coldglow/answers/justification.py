@@ -18,6 +18,7 @@ from coldglow.plan.goal import column_error, temperature_error
 from coldglow.report import words
 from coldglow.report.proposal import Justification
 from coldglow.report.results import Entry
+from coldglow.scenario import emission_of
 
 
 def justification_of(found: Findings) -> Justification:
@@ -55,11 +56,14 @@ def _request(found: Findings) -> str:
 
 def _state(found: Findings) -> str:
     target, best = found.request.target, quickest(found.exposed)
-    emission, cooling = target.emission, target.cooling
+    emission, cooling = emission_of(found.request), target.cooling
     kelvin = words.with_error(emission.temperature_k.value, emission.temperature_k.uncertainty, "K")
     column = words.with_error(emission.column_m2.value, emission.column_m2.uncertainty, "m-2")
     along = words.quantity(float(line_of_sight_column_m2(target.figure, emission.column_m2.value)), "m-2", 2)
-    law = "" if found.fading is None else f" (state of {words.day(cooling.epoch)})"
+    then = target.emission.temperature_k.value
+    law = ""
+    if abs(then - emission.temperature_k.value) >= 1.0:
+        law = f" (the {words.quantity(then, 'K')} of {words.day(cooling.epoch)}, cooled to these nights)"
     return (
         f"The ionosphere is taken at {kelvin} with a vertical column of {column}, mean over the shell{law}; "
         f"{along} along the line of sight, mean over the visible disk. The two uncertainties together "

@@ -16,7 +16,7 @@ from coldglow.describe.resolved import assumed
 from coldglow.describe.summary import summary
 from coldglow.report import words
 from coldglow.report.record import Assumption
-from coldglow.scenario import Scenario
+from coldglow.scenario import Scenario, emission_of
 
 NEAR_SUN_RAD = np.radians(60.0)
 HIGH_M = 2500.0
@@ -66,12 +66,14 @@ def _spoken(key: str) -> str:
 
 def _decided(found: Findings, standards: str) -> Iterator[Assumption]:
     request, target = found.request, found.request.target
-    emission, cooling = target.emission, target.cooling
+    emission, cooling = emission_of(request), target.cooling
     state = words.with_error(emission.temperature_k.value, emission.temperature_k.uncertainty, "K")
     column = words.with_error(emission.column_m2.value, emission.column_m2.uncertainty, "m-2")
     yield Assumption(
         "state of the ionosphere",
-        f"{state}, vertical column {column} (given as {emission.given_as})",
+        f"{state}, vertical column {column} (given as {emission.given_as}), in the middle of the nights: the "
+        f"{words.quantity(target.emission.temperature_k.value, 'K')} of {words.day(cooling.epoch)} by the "
+        f"cooling law ({cooling.law})",
         f"target {target.name}, block `emission`",
     )
     yield Assumption(

@@ -81,7 +81,7 @@ def best_night(request: Request, use: Use, year: int, every: int = EVERY) -> Nig
     nights, count = np.unique(track.night[index], return_counts=True)
     by_airmass = index[np.lexsort((np.nan_to_num(track.airmass[index]), track.night[index]))]
     highest = by_airmass[np.cumsum(count) - count]
-    target, instrument, state = request.target, use.instrument, state_of(request.target)
+    target, instrument, state = request.target, use.instrument, state_of(request)
     air = air_of(instrument.sky, request.conditions)
     exposure = expose_moments(
         moments_of(target, instrument, use.setting, track.take(highest), air),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -50,6 +51,36 @@ def state_at(emission: Emission, cooling: Cooling, dates: str | Sequence[str]) -
     _refuse_outside(cooling, time_s, temperature_k)
     column_m2 = _column(cooling, time_s, emission.column_m2.value, cooling.column_rate_s.value)
     return temperature_k, column_m2
+
+
+def emission_at(emission: Emission, cooling: Cooling, date: str) -> Emission:
+    """Return the emission as the law has made it by an ISO date, with its uncertainties carried along.
+
+    Each uncertain parameter (T, rate, floor, time scale; N and its rate) is moved by 1 sigma and the changes
+    of the result add in quadrature; the scatter from night to night stays as it is.
+
+    Raises: RangeError as `state_at`.
+    """
+    (kelvin,), (column_m2,) = state_at(emission, cooling, date)
+    time_s = seconds_since(cooling.epoch, date)
+    parameters = (emission.temperature_k, cooling.rate_k_s, cooling.floor_k, cooling.time_scale_s)
+    central = [None if each is None else each.value for each in parameters]
+    changes = [0.0]
+    for i, each in enumerate(parameters):
+        if each is not None and each.uncertainty:
+            moved = [*central[:i], each.value + each.uncertainty, *central[i + 1 :]]
+            changes.append(float(_temperature(cooling, time_s, *moved)[0]) - float(kelvin))  # type: ignore[arg-type]
+    if cooling.law == "table":
+        changes = [emission.temperature_k.uncertainty]
+    growth = cooling.column_rate_s.uncertainty * float(time_s[0])
+    spread = float(np.hypot(_relative(emission.column_m2), growth))
+    return replace(
+        emission,
+        temperature_k=replace(
+            emission.temperature_k, value=float(kelvin), uncertainty=float(np.hypot.reduce(changes))
+        ),
+        column_m2=replace(emission.column_m2, value=float(column_m2), uncertainty=float(column_m2) * spread),
+    )
 
 
 def sample_states(
