@@ -58,7 +58,9 @@ def test_certain_weather_needs_no_insurance():
 
 
 def test_persistent_weather_is_worth_more_nights():
-    plain, lasting = (nights(request(clear_fraction=0.7, correlation=rho)) for rho in (0.0, 0.8))
+    plain, lasting = (
+        nights(request(last="2028-11-05", clear_fraction=0.7, correlation=rho)) for rho in (0.0, 0.8)
+    )
     enough = int(plain.header["nights"].value)
     assert plain["probability"][enough - 1] >= 0.8 > lasting["probability"][enough - 1]
 
