@@ -116,6 +116,11 @@ class Entry:
     digits: int = 4
     label: str = ""
 
+    def heading(self, key: str) -> str:
+        """Return the label, or the key in words, with a capital."""
+        text = self.label or words.sentence_case(key)
+        return text[:1].upper() + text[1:]
+
     def __str__(self) -> str:
         """Return the value in words: ``480 ± 12 K (random), ± 15 K (systematic)``."""
         if self.text:

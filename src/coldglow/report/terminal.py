@@ -33,7 +33,7 @@ def result_text(result: Findings, width: int = WIDTH, rows: int = ROWS) -> str:
 
 
 def _header_lines(result: Findings, width: int) -> Iterator[str]:
-    labels = {key: entry.label or words.sentence_case(key) for key, entry in result.header.items()}
+    labels = {key: entry.heading(key) for key, entry in result.header.items()}
     indent = min(max(len(label) for label in labels.values()), width // 2) + 2
     for key, entry in result.header.items():
         yield textwrap.fill(
@@ -128,7 +128,7 @@ def result_html(result: Findings) -> str:
     parts += [table_html(table) for table in result.tables.values() if _printed_rows(table, 1)]
     if result.header:
         rows = (
-            f'<tr><th scope="row">{html.escape(entry.label or words.sentence_case(key))}</th>'
+            f'<tr><th scope="row">{html.escape(entry.heading(key))}</th>'
             f"<td>{html.escape(str(entry))}</td></tr>"
             for key, entry in result.header.items()
         )
