@@ -83,6 +83,8 @@ def test_what_people_write(text, kind, value):
         ("5 arcsec-99", "number", "has an absurd unit"),
         ("", "length", "`` is not a number"),
         ("m", "length", "`m` is not a number"),
+        ("e15 m-2", "column", "`e15 m-2` is not a number"),
+        (".e3 m", "length", "`.e3 m` is not a number"),
         ("nan m", "length", "`nan m` is not a number"),
         ("inf", "number", "`inf` is not a number"),
         ("1,5 m", "length", "write a decimal point, e.g. `8.2 m`"),

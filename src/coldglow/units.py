@@ -176,7 +176,7 @@ def parse_quantity(text: str, kind: str, default_unit: str | None = None) -> flo
         value = int(degrees) + int(minutes) / 60 + float(seconds or 0) / 3600
         return math.radians(-value if sign == "-" else value)
     number = _NUMBER.match(stripped)
-    if not number or not re.search(r"\d", number.group()):
+    if not number or not re.match(r"[+-]?\.?\d", number.group()):
         raise UnitError(f"{quoted(text)} is not a number; {advice}")
     digits = re.sub(r"[ _\u2009\u202f]", "", number.group())
     unit_text = stripped[number.end() :].strip()
