@@ -3,6 +3,7 @@
 import doctest
 import importlib
 import inspect
+import re
 from pathlib import Path
 
 import pytest
@@ -45,6 +46,14 @@ def test_the_examples_of_a_module_run(name, examples):
     module = importlib.import_module(name)
     found = [test for test in doctest.DocTestFinder().find(module) if test.examples]
     assert sum(run(test) for test in found) > 0
+
+
+def test_the_python_of_the_readme_runs(examples):
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    blocks = re.findall(r"^```python\n(.*?)^```$", text, re.DOTALL | re.MULTILINE)
+    assert len(blocks) >= 3
+    assert all(block.startswith(">>> ") for block in blocks)
+    assert run(doctest.DocTestParser().get_doctest("".join(blocks), {}, "README.md", None, 0)) > 15
 
 
 def test_every_public_function_says_what_it_takes_and_gives():

@@ -192,3 +192,61 @@ def test_a_page_that_asks_or_complains_would_be_noticed(tab, tmp_path):
     assert len(tab.named("Network.requestWillBeSent")) == 2
     assert len(tab.named("Runtime.consoleAPICalled")) == 1
     assert len(tab.named("Runtime.exceptionThrown")) == 1
+
+
+@pytest.fixture(scope="module")
+def planned(tab, tmp_path_factory):
+    """The page of a shipped example, planned for real."""
+    from coldglow.answers import plan
+
+    place = tmp_path_factory.mktemp("planned") / "plan"
+    plan(Path(__file__).parents[2] / "examples" / "uranus-season.yaml", place)
+    return place
+
+
+def test_the_page_of_a_shipped_example_is_quiet_and_whole(tab, planned):
+    tab.events.clear()
+    tab.open(planned / "report.html")
+    outside = [event["request"]["url"] for event in tab.named("Network.requestWillBeSent")]
+    assert [url for url in outside if not url.startswith("data:")] == [(planned / "report.html").as_uri()]
+    assert tab.named("Runtime.consoleAPICalled") + tab.named("Log.entryAdded") == []
+    assert tab.named("Runtime.exceptionThrown") == []
+    names = {path.stem for path in (planned / "figures").glob("*.svg")}
+    for width in (360, 800, 1400):
+        resize(tab, width)
+        assert tab.value("document.documentElement.scrollWidth") <= width
+        figures = tab.value(FIGURES)
+        assert len(figures) == len(names) >= 11
+        for figure in figures:
+            assert figure["seen"]
+            assert figure["reachable"]
+            assert figure["painted"] > 10
+            assert figure["width"] >= min(width - 40, 480)
+    resize(tab, 700)
+    tab.call("Emulation.setEmulatedMedia", media="print")
+    assert all(figure["seen"] and figure["width"] <= 700 for figure in tab.value(FIGURES))
+    tab.call("Emulation.setEmulatedMedia", media="")
+
+
+def test_the_answer_of_a_shipped_example_is_on_the_first_screen_of_a_phone(tab, planned):
+    tab.open(planned / "report.html")
+    resize(tab, 390, 844)
+    tab.value("scrollTo(0, 0)")
+    said = tab.value(
+        "[...document.querySelectorAll('.answer p')]"
+        ".map(p => [p.textContent, p.getBoundingClientRect().bottom])"
+    )
+    bottoms = {text.split(":")[0]: bottom for text, bottom in said}
+    for begin in ("Feasible", "How long", "How many nights", "What limits", "Assumed"):
+        assert bottoms[begin] < 844, (begin, bottoms)
+
+
+def test_the_night_pages_of_a_shipped_example_show_on_a_phone_and_print(tab, planned):
+    tab.events.clear()
+    tab.open(planned / "nights.html")
+    resize(tab, 390)
+    assert tab.value("document.documentElement.scrollWidth") <= 390
+    assert tab.named("Log.entryAdded") + tab.named("Runtime.exceptionThrown") == []
+    sheets = tab.value("document.querySelectorAll('.sheet').length")
+    paper = base64.b64decode(tab.call("Page.printToPDF", preferCSSPageSize=True)["data"])
+    assert sheets <= len(re.findall(rb"/Type\s*/Page\b", paper)) <= sheets + 1

@@ -77,7 +77,7 @@ class Stretch:
             float(exposure.well_fill[nearest]),
         )
 
-    def marks(self, rows: int = 14) -> NDArray[np.int64]:
+    def marks(self, rows: int = 12) -> NDArray[np.int64]:
         """Return steps spread evenly through the stretch, both ends among them, about `rows` of them."""
         step_s = self.scene.steps.step_s
         wanted_s = (self.end - self.first) * step_s / rows

@@ -95,7 +95,6 @@ def sentences(found: Fading) -> list[str]:
     said = []
     if found.night[0] is None and not any(found.night):
         return [f"{name} can never be observed with {use} in these years.", *_left_out(found)]
-    nights = law.nights_needed.median
     noun = found.budget.unit.removeprefix("clear ")
     kept = float(law.relative_brightness.median[-1])
     fading = f", when {words.percent(kept)} of the light is left ({_between(trials.relative_brightness)})"
@@ -109,7 +108,7 @@ def sentences(found: Fading) -> list[str]:
         )
     )
     said += _since_epoch(found)
-    said.append(_dropout_sentence(found, nights))
+    said.append(dropout_sentence(found))
     said.append(
         f"Chance of a detection with the budget ({found.budget.text}): {_chance(found, 0)} in {first}"
         + (f", {_chance(found, -1)} in {last}." if last > first else ".")
@@ -145,7 +144,9 @@ def _between(spread: Spread) -> str:
     return f"{words.percent(float(spread.low[-1]))} to {words.percent(float(spread.high[-1]))} at 1σ"
 
 
-def _dropout_sentence(found: Fading, nights: Array) -> str:
+def dropout_sentence(found: Fading) -> str:
+    """Return until when the target stays within the budget."""
+    nights = found.law.nights_needed.median
     first, last = int(found.year[0]), int(found.year[-1])
     year, share = float(found.law.dropout_year.median), found.trials.dropout_probability
     spread = f"1σ: {_year(found, 'low')} to {_year(found, 'high')}"

@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from coldglow.answers.fadewords import dropout_sentence
 from coldglow.answers.findings import Exposed, Findings, quickest
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.requesting import Plan
@@ -200,8 +201,8 @@ def _limits(found: Findings) -> str:
 
 
 def _outlook(found: Findings) -> Iterator[str]:
-    if found.fade is not None:
-        yield f"Outlook: {found.fade.sentences[1]}"
+    if found.fading is not None and any(found.fading.night):
+        yield f"Outlook: {dropout_sentence(found.fading)}"
 
 
 def _assumed(found: Findings) -> str:

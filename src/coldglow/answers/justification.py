@@ -141,7 +141,7 @@ def _nights(found: Findings) -> str:
 
 def _outlook(found: Findings) -> Iterator[str]:
     if found.fade is not None:
-        yield " ".join(found.fade.sentences[:4])
+        yield " ".join(found.fade.sentences[:-1])
 
 
 def _numbers(found: Findings) -> Iterator[tuple[str, Entry]]:

@@ -126,7 +126,7 @@ def _plan(request: Request, pairs: Pairs) -> NightPlan:
     facts = {} if in_space else _events(request, scene, night)
     settings = words.listing(list(dict.fromkeys(stretch.scene.use.setting.name for stretch, _ in pairs)))
     facts["setting"] = Entry(settings)
-    facts["conditions"] = Entry(conditions_words(scene.use, scene.air), label="planned for")
+    facts["conditions"] = Entry(conditions_words(scene.use, scene.air), label="conditions planned for")
     steps = [step for stretch, stars in pairs for step in _steps(stretch, stars)]
     notes = [
         "Times are UTC. Right ascension and declination are astrometric (ICRS) and topocentric; rates are "
@@ -179,20 +179,28 @@ def _steps(stretch: Stretch, stars: Sequence[Standard]) -> list[str]:
     before = [star for star in stars if star.when == "before"]
     after = [star for star in stars if star.when == "after"]
 
-    longitude = stretch.longitudes_deg
     first = f"{_clock(stretch.start_tt_s)} acquisition"
     if before:
         first = f"{_clock(stretch.start_tt_s)} standard star {before[0].designation}, then acquisition"
     taking = (
         f"{_clock(stretch.exposing_tt_s)} first integration ({stretch.scene.use.setting.name}, "
         f"{instrument.operation.nod}): {frames_words(stretch)}; the brightest pixel fills "
-        f"{words.percent(fill)} of the well; central longitude {longitude[0]:.0f}° to {longitude[1]:.0f}°, "
-        f"expected SNR {words.number(stretch.snr, 2)}"
+        f"{words.percent(fill)} of the well; {_longitudes(stretch)}, "
+        f"expected SNR {stretch.snr:.0f}"
     )
     last = f"{_clock(stretch.end_tt_s)} end of the stretch"
     if after:
         last += f", standard star {after[0].designation}"
     return [f"{first}.", f"{taking}.", f"{last}."]
+
+
+def _longitudes(stretch: Stretch) -> str:
+    """Return which longitudes become central while exposing."""
+    begin, end = stretch.longitudes_deg
+    turns = (stretch.end_tt_s - stretch.exposing_tt_s) / stretch.scene.track.system.period_s
+    if turns >= 1.0:
+        return f"{words.number(turns, 3)} turns from central longitude {begin:.0f}°"
+    return f"central longitude {begin:.0f}° to {end:.0f}°"
 
 
 def _track_table(stretches: Sequence[Stretch]) -> Table:
@@ -206,7 +214,9 @@ def _track_table(stretches: Sequence[Stretch]) -> Table:
         column("time", [text[11:] for text in times]),
         column("airmass", track.airmass, decimals=2, shown=not in_space),
         column("altitude", np.degrees(track.altitude_rad), "deg", decimals=0, shown=not in_space),
-        column("longitude", np.degrees(track.sub_observer_longitude_rad), "deg", decimals=0),
+        column(
+            "longitude", np.round(np.degrees(track.sub_observer_longitude_rad)) % 360.0, "deg", decimals=0
+        ),
         column("ra", [sexagesimal(float(angle), hours=True) for angle in track.ra_icrs_rad]),
         column("dec", [sexagesimal(float(angle)) for angle in track.dec_icrs_rad]),
         column("ra_rate", rate * track.ra_rate_rad_s, "arcsec h-1", decimals=2),
