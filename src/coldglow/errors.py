@@ -39,7 +39,15 @@ class DescriptionError(ColdglowError, ValueError):
 
 
 class NotFoundError(ColdglowError, LookupError):
-    """A target, instrument, setting, line or file that does not exist; the sentence names the nearest one."""
+    """A target, instrument, setting, line or file that does not exist; the sentence names the nearest one.
+
+    ``key`` as in `RangeError`.
+    """
+
+    def __init__(self, message: str, key: str = "") -> None:
+        """Keep the key path beside the sentence."""
+        self.key = key
+        super().__init__(message)
 
 
 class UnitError(ColdglowError, ValueError):

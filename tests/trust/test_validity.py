@@ -4,7 +4,7 @@ import pytest
 
 from coldglow.answers import glow, hours, plan, sky
 from coldglow.answers.fade import fade
-from coldglow.errors import ColdglowError, DateError, RangeError
+from coldglow.errors import ColdglowError, DateError, NotFoundError, RangeError
 
 WARM = "emission:\n  temperature: {value: 1600 K, uncertainty: 10 K, scatter: 0 K}\n"
 COLD = "emission:\n  temperature: {value: 120 K, uncertainty: 5 K, scatter: 0 K}\ncooling:\n  floor: 60 K\n"
@@ -125,3 +125,11 @@ def test_the_report_carries_the_warnings_too(write, variant, tmp_path):
         "airmass 3",
     ):
         assert said in page, said
+
+
+def test_a_line_that_the_setting_lacks_is_told_with_its_place(write):
+    path = write(("goal:\n", "goal:\n  lines: ['Q(9,99)']\n"))
+    line = path.read_text(encoding="utf-8").split("lines:")[0].count("\n") + 1
+    with pytest.raises(NotFoundError, match="nearest") as refused:
+        hours(path)
+    assert str(refused.value).startswith(f"{path}:{line}: goal.lines: ")

@@ -72,12 +72,12 @@ def place_errors(*described: Target | Instrument | Request) -> Iterator[None]:
     try:
         yield
     except (RangeError, NotFoundError) as error:
-        key = getattr(error, "key", "")
+        key = error.key
         for record in described:
             where = _locate(record.origin, key) if key else None
             if where:
                 error.args = (str(Problem(*where, key, str(error))),)
-                error.key = ""  # type: ignore[union-attr]  # said once
+                error.key = ""  # said once
                 break
         raise
 
