@@ -54,7 +54,7 @@ def test_a_printed_number_is_the_value_rounded_to_its_digits(value, digits):
     [
         (480.0, 12.3, "K", "480 ± 12 K"),
         (480.4, 7.3, "K", "480 ± 7 K"),
-        (480.0, 0.96, "K", "480 ± 1 K"),
+        (480.0, 0.96, "K", "480.00 ± 0.96 K"),
         (1.2345e15, 2.2e13, "m-2", "(1.234 ± 0.022)×10¹⁵ m⁻²"),
         (0.0034, 0.0004, "", "0.0034 ± 0.0004"),
         (-12.34, 0.5, "deg", "(−12.3 ± 0.5)°"),
@@ -70,7 +70,10 @@ def test_value_and_error_end_at_the_same_place(value, error, unit, expected):
 
 def test_the_larger_error_sets_the_place_of_all_three():
     assert words.with_errors(483.2, 2.1, 14.0, "K") == "483 ± 2 (random) ± 14 (systematic) K"
-    assert words.with_errors(483.2, 0.01, 14.0, "K") == "483 ± 0 (random) ± 14 (systematic) K"
+    assert words.with_errors(483.2, 0.01, 14.0, "K") == "483 ± 0.010 (random) ± 14 (systematic) K"
+    assert words.with_errors(366.0, 340.0, 14.0, "K") == "400 ± 300 (random) ± 14 (systematic) K"
+    assert words.with_errors(365.7, 97.0, 14.0, "K") == "366 ± 97 (random) ± 14 (systematic) K"
+    assert words.with_errors(483.2, 0.0, 14.0, "K") == "483 ± 0 (random) ± 14 (systematic) K"
     assert words.with_errors(1.234e15, 2.2e13, 1e14, "m-2").startswith(
         "(1.23 ± 0.02 (random) ± 0.10 (systematic))"
     )

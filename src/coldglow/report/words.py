@@ -99,8 +99,11 @@ def join_unit(text: str, unit_name: str) -> str:
 
 
 def error_digits(error: float) -> int:
-    """Return how many digits an error deserves: two when it begins with 1 or 2, otherwise one."""
-    return 2 if f"{abs(error):.1e}"[0] in "12" else 1
+    """Return how many digits an error deserves: one, two when it begins with 1 or 2 or would round to 1.
+
+    So ± 97 keeps both of its digits: rounded to ± 100, it would take a digit too many from the value.
+    """
+    return 2 if f"{abs(error):.1e}"[0] in "12" or f"{abs(error):.0e}"[0] == "1" else 1
 
 
 def with_error(value: float, error: float, unit_name: str = "") -> str:
@@ -122,23 +125,28 @@ def with_error(value: float, error: float, unit_name: str = "") -> str:
 
 
 def with_errors(value: float, random: float, systematic: float, unit_name: str = "") -> str:
-    """Return ``480 ± 12 (random) ± 9 (systematic) K``, all to the place that the larger error allows."""
+    """Return ``480 ± 12 (random) ± 9 (systematic) K``, all to the place that the larger error allows.
+
+    An error of which nothing would be left at that place keeps its own digits: none is lost.
+    """
     larger = max(random, systematic)
     if not math.isfinite(larger) or larger == 0 or not math.isfinite(value):
         return with_error(value, larger, unit_name)
     text, _, power = rounded_pair(value, larger)
     scale = 10.0**power
     decimals = decimals_for(larger / scale, error_digits(larger))
-    spreads = [
-        f"{round(error / scale, decimals) + 0.0:.{max(decimals, 0)}f}"
-        if round(error / scale, decimals)
-        else "0"
-        for error in (random, systematic)
-    ]
+    spreads = [_spread(error / scale, decimals) for error in (random, systematic)]
     joined = f"{true_minus(text)} ± {spreads[0]} (random) ± {spreads[1]} (systematic)"
     if power:
         return join_unit(f"({joined})×10{raised(power)}", unit_name)
     return join_unit(f"({joined})" if unit(unit_name) in ("°", "″", "%") else joined, unit_name)
+
+
+def _spread(error: float, decimals: int) -> str:
+    """Return an error to so many decimals, or to its own digits where they would leave nothing of it."""
+    if error and not round(error, decimals):
+        return number(error, error_digits(error))
+    return f"{round(error, decimals):.{max(decimals, 0)}f}" if error else "0"
 
 
 def rounded_pair(value: float, error: float) -> tuple[str, str, int]:
