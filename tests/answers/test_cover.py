@@ -19,7 +19,7 @@ from coldglow.describe.records import Use
 from coldglow.detect.season import beams
 from coldglow.errors import RangeError
 from coldglow.plan.bins import BinSums, central_weights, step_drift
-from coldglow.plan.rotation import advance_per_day_rad, nights_to_cover
+from coldglow.plan.rotation import advance_per_day_rad
 from coldglow.report.files import write_result
 from coldglow.scenario import follow
 from coldglow.sky.clock import tdb_from_tt, times_grid, tt_from_iso
@@ -301,17 +301,6 @@ def test_advance_of_the_central_longitude_in_a_day(target, instrument, turn_deg)
     assert advance == pytest.approx(turn_deg, abs=light_and_motion)
     period_s = track.system.period_s
     assert np.degrees(advance_per_day_rad(period_s)) == pytest.approx(turn_deg, abs=0.01)
-
-
-def test_nights_to_cover_for_a_window_of_five_hours():
-    # Uranus, by hand: 5 h are 104.36 degrees of 360, so 4 nights at least; starts 0, 140.91, 281.83, 62.74:
-    # gaps between neighbours 62.74, 78.17, 140.91, 78.17 -> one of 36.55 is left; the fifth night starts at
-    # 203.65 and closes it (largest distance of starts 78.17)
-    assert nights_to_cover(17.247864 * 3600.0, 5 * 3600.0) == 5
-    # Neptune, 4 h are 89.39 degrees: starts alternate between 0 and 176.31 and creep by -7.374 in two days.
-    # The gap before the even nights, 360 - 176.31 - 89.39 = 94.30, is closed by 13 creeps (95.86) of them:
-    # the 14th even night, which is night 27; that before the odd ones, 86.93, by 12 (night 26)
-    assert nights_to_cover(16.11 * 3600.0, 4 * 3600.0) == 27
 
 
 # ---------------------------------------------------------------- campaigns

@@ -18,8 +18,6 @@ from coldglow.detect.beam import (
     aperture_share,
     disk_in_aperture,
     extraction_aperture,
-    interpolate_beam,
-    join_beams,
     point_spacing,
     point_spread,
     see_disk,
@@ -220,12 +218,3 @@ def test_pixels_of_slit_and_field(make):
     assert slit.pixels_spatial[0] == pytest.approx(slit.solid_angle_sr[0] / (0.75 * ARCSEC) / (0.15 * ARCSEC))
     field = make.beam_of(make.instrument("ifu"))
     assert field.pixels_spatial[0] == pytest.approx(field.solid_angle_sr[0] / (0.1 * ARCSEC) ** 2)
-
-
-def test_beams_between_nodes(make):
-    low, high = (make.beam_of(make.instrument(), airmass=x) for x in (1.0, 1.2))
-    between = interpolate_beam(np.array([0.0, 10.0]), join_beams([low, high]), np.array([0.0, 5.0, 99.0]))
-    exact = make.beam_of(make.instrument(), airmass=1.1)
-    assert between.path_factor[0] == low.path_factor[0]
-    assert between.path_factor[1] == pytest.approx(exact.path_factor[0], rel=1e-3)
-    assert between.path_factor[2] == high.path_factor[0]

@@ -14,6 +14,7 @@ from hypothesis import strategies as st
 from coldglow.describe.records import Figure, LongitudeSystem, Spot
 from coldglow.errors import RangeError
 from coldglow.light import shell
+from coldglow.sky.orientation import planetocentric_rad
 
 SPHERE = Figure(25_000e3, 25_000e3, 1_000e3, "")
 OBLATE = Figure(60_268e3, 54_364e3, 1_500e3, "")
@@ -96,7 +97,7 @@ def test_a_spot_holds_its_share_of_all_ions_wherever_it_lies():
     for figure in (SPHERE, OBLATE):
         view = shell.view_of(figure, 0.3)
         for latitude in (-1.2, 0.0, 0.7):
-            middle = shell.centric_latitude(figure, latitude)
+            middle = float(planetocentric_rad(latitude, figure))
             # turned towards the observer the whole spot is seen: all ions of the shell if it holds them all
             toward = shell.spot_points(shell.view_of(figure, latitude), middle, 0.0, 0.3, 0.1)
             assert toward[2].sum() == pytest.approx(view.shell_area, rel=1e-12)

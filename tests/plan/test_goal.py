@@ -16,8 +16,6 @@ from coldglow.plan.goal import (
     required_snr,
     snr,
     temperature_error,
-    time_to_error,
-    time_to_snr,
     with_floor,
     without_floor,
 )
@@ -93,29 +91,20 @@ def test_floors_of_visits_average_and_a_common_one_does_not():
 
 
 @given(st.floats(1e-6, 1e3), FLOOR, FLOOR, st.floats(1.0, 1e7), st.floats(1.001, 50))
-def test_time_inverts_snr_below_the_asymptote(rate, visit_floor, common_floor, time_s, more):
+def test_what_is_demanded_inverts_the_snr_below_the_asymptote(rate, visit_floor, common_floor, time_s, more):
     def reach(seconds):
         return float(snr(np.array([[[rate * seconds, 0.0], [0.0, 0.0]]]), visit_floor, common_floor))
+
+    def demanded(wanted):
+        return float(without_floor(demanded_information(wanted, common_floor), visit_floor))
 
     reached = reach(time_s)
     floors = np.hypot(visit_floor, common_floor)
     if floors * reached < 0.999:  # so near the asymptote the time is not well conditioned
-        assert time_to_snr(reached, rate, visit_floor, common_floor) == pytest.approx(time_s, rel=1e-6)
+        assert demanded(reached) / rate == pytest.approx(time_s, rel=1e-6)
     assert reach(more * time_s) >= reached
     if floors > 0.0:
-        assert time_to_snr(1.0001 / floors, rate, visit_floor, common_floor) == np.inf
-
-
-def test_never_without_information():
-    assert time_to_snr(5.0, 0.0) == np.inf
-    assert time_to_snr(np.array([1.0, 20.0]), 1.0, 0.1).tolist()[1] == np.inf
-
-
-@given(st.floats(0.1, 1e3), st.floats(0.0, 0.09), st.floats(0.1, 10.0))
-def test_time_inverts_errors(one_second, systematic, goal):
-    time_s = float(time_to_error(goal, one_second, systematic))
-    assert np.hypot(one_second / np.sqrt(time_s), systematic) == pytest.approx(goal, rel=1e-9)
-    assert time_to_error(systematic, one_second, systematic) == np.inf
+        assert demanded(1.0001 / floors) == np.inf
 
 
 @given(st.floats(0.0, 1e4), st.floats(0.0, 0.3))

@@ -12,7 +12,7 @@ from scipy.stats import binom
 
 from coldglow.plan.demand import Amount, TemperatureError, snr_gain
 from coldglow.plan.goal import demanded_information, marginalise, with_floor
-from coldglow.plan.nights import Weather, clear_needed, curve, joint_curve, scatter_factors, success
+from coldglow.plan.nights import Weather, curve, joint_curve, scatter_factors, success
 
 PLAIN = Weather(clear_fraction=0.6, correlation=0.0, trials=4000, seed=11)
 
@@ -27,7 +27,6 @@ def test_equal_nights_are_binomial():
     found = curve(one(np.full(15, 9.0)), demand, np.arange(15), np.ones(15), np.arange(15), PLAIN)
     np.testing.assert_allclose(found.probability, binom.sf(3, np.arange(1, 16), 0.6), atol=1e-12)
     assert np.all(found.probability_error == 0.0)
-    assert clear_needed(one(np.full(15, 9.0)), demand) == 4
     chosen = found.smallest(0.9)
     assert found.units[chosen] == 9  # binom.sf(3, 8, 0.6) = 0.826, binom.sf(3, 9, 0.6) = 0.9006
     assert found.smallest(0.9999999) is None
@@ -35,10 +34,17 @@ def test_equal_nights_are_binomial():
 
 def test_floors_ask_for_more_nights():
     # each night SNR 5 with a floor of 10 %: I' = 25/1.25 = 20; goal SNR 9 with 5 % common: 81/(1-0.2025)
-    gain = one(with_floor(np.full(8, 25.0), 0.1))
-    assert clear_needed(gain, Amount(np.atleast_1d(demanded_information(9.0, 0.05)))) == 6
-    assert clear_needed(one(np.full(8, 25.0)), Amount(np.array([81.0]))) == 4
-    assert clear_needed(gain, Amount(np.atleast_1d(demanded_information(20.0, 0.05)))) is None
+    clear = replace(PLAIN, clear_fraction=1.0)
+
+    def needed(gain, information):
+        nights = np.arange(8)
+        found = curve(one(gain), Amount(np.atleast_1d(information)), nights, np.ones(8), nights, clear)
+        return found.smallest(0.5)
+
+    gain = with_floor(np.full(8, 25.0), 0.1)
+    assert needed(gain, demanded_information(9.0, 0.05)) == 6 - 1
+    assert needed(np.full(8, 25.0), 81.0) == 4 - 1
+    assert needed(gain, demanded_information(20.0, 0.05)) is None
 
 
 def test_certain_weather_is_certain():

@@ -111,8 +111,8 @@ def test_altitude_and_parallactic_angle_as_in_erfa():
     sidereal = erfa.gst06a(2451545.0, ut1_from_tt(TIMES) / 86400.0, 2451545.0, TIMES / 86400.0)
     turned = np.angle(np.exp(1j * (observer.sidereal_rad - sidereal - SOUTH.longitude_rad)))
     assert np.abs(turned).max() < 0.002 * ARCSEC
-    _, dec = longitude_latitude(sight.apparent)
-    hour_angle = place.hour_angle_rad(observer, sight.apparent)
+    ra, dec = longitude_latitude(sight.apparent)
+    hour_angle = observer.sidereal_rad - ra
     azimuth, altitude = erfa.hd2ae(hour_angle, dec, SOUTH.latitude_rad)
     ours = place.altitude_azimuth(observer, sight.apparent)
     np.testing.assert_allclose(ours[0], altitude, atol=1e-12)

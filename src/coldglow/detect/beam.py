@@ -16,15 +16,15 @@ from dataclasses import dataclass, fields
 from itertools import pairwise
 
 import numpy as np
+from scipy.constants import arcsec
 from scipy.special import erf
 
 from coldglow.describe.records import ImageQuality, Opening, Operation, Telescope
 from coldglow.errors import RangeError
-from coldglow.light.atmosphere import FWHM_PER_SIGMA
+from coldglow.light.average import FWHM_PER_SIGMA
 from coldglow.light.shell import ShellPoints
 
 SEEING_WAVELENGTH_M = 0.5e-6
-_ARCSEC = math.pi / 648000.0
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(48)
 
 
@@ -157,8 +157,8 @@ def extraction_aperture(
     if operation.nod == "on-slit" and wanted_length > 0.5 * opening.length_rad:
         raise RangeError(
             f"Nods within the opening need room for the target at two positions: 2 x "
-            f"{wanted_length / _ARCSEC:.2f} arcsec (disk and blur), but the length is "
-            f"{opening.length_rad / _ARCSEC:.2f} arcsec. Use off-slit nods, or a longer opening.",
+            f"{wanted_length / arcsec:.2f} arcsec (disk and blur), but the length is "
+            f"{opening.length_rad / arcsec:.2f} arcsec. Use off-slit nods, or a longer opening.",
             "operation.nod",
         )
     length = min(opening.length_rad, wanted_length)
@@ -296,8 +296,3 @@ def see_disk(
 def join_beams(beams: Sequence[Beam]) -> Beam:
     """Return one beam record of all the moments, in order."""
     return Beam(*(np.concatenate([getattr(beam, f.name) for beam in beams]) for f in fields(Beam)))
-
-
-def interpolate_beam(node_s: np.ndarray, beam: Beam, time_s: np.ndarray) -> Beam:
-    """Return the beam at times between nodes (ndarray[node], growing), linearly; constant outside."""
-    return Beam(*(np.interp(time_s, node_s, getattr(beam, f.name)) for f in fields(beam)))

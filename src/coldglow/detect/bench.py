@@ -16,8 +16,9 @@ from coldglow.detect.beam import Beam
 from coldglow.detect.information import NodNoise, nod_noise
 from coldglow.detect.integration import photon_variance_factor
 from coldglow.detect.pixels import Pixels, make_pixels
-from coldglow.errors import RangeError
-from coldglow.light.atmosphere import FWHM_PER_SIGMA, Atmosphere
+from coldglow.errors import NotFoundError, RangeError
+from coldglow.light.atmosphere import Atmosphere
+from coldglow.light.average import FWHM_PER_SIGMA
 from coldglow.light.emission import log_temperature_slope, photon_radiance_s_m2_sr, thermal_sigma_m_s
 from coldglow.light.lines import LineList
 
@@ -86,7 +87,10 @@ def goal_mask(lines: LineList, goal_lines: tuple[str, ...]) -> np.ndarray:
     if not goal_lines:
         return np.ones(len(lines), dtype=bool)
     mask = np.zeros(len(lines), dtype=bool)
-    mask[[lines.find(name) for name in goal_lines]] = True
+    try:
+        mask[[lines.find(name) for name in goal_lines]] = True
+    except NotFoundError as error:
+        raise NotFoundError(str(error), "goal.lines") from None
     return mask
 
 

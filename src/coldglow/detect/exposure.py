@@ -40,7 +40,7 @@ _IMAGER_STEP_M_S = 1000.0
 class Exposure:
     """What one second of open shutter brings at each moment.
 
-    `matrix` ndarray[moment, 4, 4] (see `information.PARAMETERS`), without prior. `prior` ndarray[4, 4] is
+    `matrix` ndarray[moment, 4, 4] (parameters as in `information`), without prior. `prior` ndarray[4, 4] is
     to be added once to the sum of each visit before it is marginalised (zero without a continuum prior).
     `signal_e_s` electrons of the wanted lines; `variance_share` ndarray[moment, source] in the order of
     NOISE_SOURCES, as it enters the matched filter over the lines; `line_transmission` ndarray[moment] of the

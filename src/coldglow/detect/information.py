@@ -21,7 +21,6 @@ import numpy as np
 
 from coldglow.describe.records import Operation
 
-PARAMETERS = ("ln_column", "temperature", "continuum", "wavelength_zero")
 CONTINUUM_UNIT = 1.0e20  # photon s-1 m-2 sr-1 m-1; about sunlight at Uranus on an albedo of 0.001
 
 

@@ -17,7 +17,7 @@ from scipy.sparse import csr_array
 from scipy.special import erf
 
 from coldglow.describe.records import Setting
-from coldglow.light.atmosphere import FWHM_PER_SIGMA
+from coldglow.light.average import FWHM_PER_SIGMA
 
 REACH_SIGMA = 4.5  # half width of a line's window; 7e-6 of its light lies outside
 

@@ -16,7 +16,6 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.constants import c
 from scipy.interpolate import BSpline, make_interp_spline
-from scipy.ndimage import gaussian_filter1d
 
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.light.average import Shifts, moving_average, nodes_and_weights, shift_nodes, window
@@ -33,7 +32,6 @@ ERROR_BANDS_UM = (
     (4.6, 5.2, 0.05),
 )
 LOWEST_PRESSURE_PA, HIGHEST_PRESSURE_PA = 55000.0, 80000.0
-FWHM_PER_SIGMA = 2.0 * np.sqrt(2.0 * np.log(2.0))
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,20 +110,6 @@ class Atmosphere:
         part = slice(first, int(place.max()) + 3)
         depth = np.interp(place - first, np.arange(self.tau_dry[part].size), self.tau(water_m, part))
         return np.exp(-np.asarray(airmass, dtype=np.float64)[..., np.newaxis] * depth)
-
-    def smoothed(
-        self, shortest_m: float, longest_m: float, airmass: float, water_m: float, resolving_power: float
-    ) -> tuple[Floats, Floats]:
-        """Return the grid of a band and T smoothed to a resolving power (Gaussian in ln lambda)."""
-        sigma = 1.0 / (resolving_power * FWHM_PER_SIGMA * self.log_step)
-        low, high = self.position(np.array([shortest_m, longest_m]))
-        margin = int(5.0 * sigma) + 1
-        first, last = max(int(low) - margin, 0), min(int(high) + margin + 2, self.tau_dry.size)
-        smooth = gaussian_filter1d(
-            np.exp(-airmass * self.tau(water_m, slice(first, last))), sigma, mode="nearest", truncate=5.0
-        )
-        index = np.arange(max(int(np.ceil(low)), first), min(int(high) + 1, last))
-        return self.first_wavelength_m * np.exp(self.log_step * index), smooth[index - first]
 
     def pixel_means(self, edges_m: ArrayLike, airmass: ArrayLike, water_m: float) -> Floats:
         """Return T averaged over pixels, ndarray[..., pixel], between growing edges ndarray[pixel + 1]."""

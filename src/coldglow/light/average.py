@@ -14,6 +14,7 @@ from scipy.special import ndtr
 
 Floats = NDArray[np.float64]
 
+FWHM_PER_SIGMA = 2.0 * np.sqrt(2.0 * np.log(2.0))  # of a Gaussian
 REACH = 5.0  # of the Gaussian, standard deviations; beyond it lie 6e-7 of its area
 
 

@@ -18,7 +18,6 @@ SUN_RADIUS_M = 6.957e8  # nominal, IAU 2015 resolution B3 (Prsa et al. 2016, Ast
 # up to 4 um and continued flat: the continuum within 5 %, lines of the Sun left out.
 SUN_WAVELENGTH_M = np.array([1.9, 2.2, 2.5, 2.7, 3.0, 3.4, 4.0, 5.5]) * 1e-6
 SUN_TEMPERATURE_K = np.array([6300.0, 6150.0, 6000.0, 5800.0, 5700.0, 5630.0, 5560.0, 5550.0])
-SOLAR_IRRADIANCE_ERROR = 0.05
 
 # Two grey bodies, low-background level (from memory of Glasse et al. 2015, PASP 127, 686);
 # good to a factor 2

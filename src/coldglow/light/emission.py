@@ -166,7 +166,7 @@ def validity_warnings(temperature_k: float) -> list[str]:
 def equilibrium_warnings(lte_fraction: float) -> list[str]:
     """Return a sentence when the upper levels hold less than in equilibrium, else nothing.
 
-    Source: Melin et al. 2005, Icarus 178, 97 (from memory): higher vibrational levels lack more.
+    Source: Icarus 178, 97 (2005), for Jupiter (from memory): higher vibrational levels lack more.
     """
     if lte_fraction >= 1.0:
         return []

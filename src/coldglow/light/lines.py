@@ -19,7 +19,7 @@ Floats = NDArray[np.float64]
 Index = NDArray[np.intp]
 
 C2_M_K = h * c / k  # second radiation constant
-WELL_PLACED = "AB"  # position classes good enough to say that a telluric line hides this one
+WELL_PLACED = "AB"  # position classes good enough to place a line on or beside a telluric one
 POSITION_ERROR_M1 = {"A": 0.5, "B": 5.0, "C": 30.0, "D": 100.0}  # 0.005, 0.05, 0.3, 1 cm-1
 EINSTEIN_A_ERROR = 0.03  # relative, strong fundamental lines with J <= 8; 0.05-0.2 for others
 
@@ -111,10 +111,6 @@ class LineList:
             f"lines; the nearest are {hint or 'none'}"
         )
 
-    def well_placed(self) -> NDArray[np.bool_]:
-        """Return ndarray[line]: whether "hidden by a telluric line" means anything (classes A and B)."""
-        return np.isin(self.quality, list(WELL_PLACED))
-
     def position_sigma_m_s(self) -> Floats:
         """Return ndarray[line]: 1-sigma error of the position as a velocity; 0 for classes A and B.
 
@@ -132,7 +128,6 @@ class Levels:
 
     energy_m1: Floats
     weight: Floats  # g_ns(2J+1)
-    decay_s: Floats  # total rate of spontaneous emission
 
 
 @lru_cache(maxsize=1)
@@ -154,7 +149,6 @@ def load_levels() -> Levels:
     return Levels(
         energy_m1=_frozen(packed["level_energy_mcm1"], 0.1),
         weight=_frozen(packed["level_weight"]),
-        decay_s=_frozen(packed["level_decay_s"]),
     )
 
 

@@ -26,6 +26,7 @@ from numpy.typing import ArrayLike, NDArray
 from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Figure, LongitudeSystem, Spot
 from coldglow.errors import RangeError
+from coldglow.sky.orientation import planetocentric_rad
 
 Floats = NDArray[np.float64]
 
@@ -82,18 +83,12 @@ def view_of(figure: Figure, sub_observer_latitude_rad: float) -> View:
     """Return the view from a *planetographic* sub-observer latitude."""
     a, c, h = figure.equatorial_radius_m, figure.polar_radius_m, figure.shell_height_m
     flattened, equator, pole = c / a, 1.0 + h / a, (c + h) / a
-    tilt = centric_latitude(figure, sub_observer_latitude_rad)
+    tilt = float(planetocentric_rad(sub_observer_latitude_rad, figure))
     sin, cos = np.sin(tilt), np.cos(tilt)
     outline = float(np.hypot(flattened * cos, sin))
     shell_outline = float(np.hypot(pole * cos, equator * sin))
     depth = ((pole**2 - equator**2) * sin * cos / shell_outline, equator * pole / shell_outline)
-    return View(flattened, equator, pole, float(tilt), outline, shell_outline, depth)
-
-
-def centric_latitude(figure: Figure, graphic_latitude_rad: float) -> float:
-    """Return the planetocentric latitude: tan(centric) = (c/a)^2 tan(graphic)."""
-    ratio = (figure.polar_radius_m / figure.equatorial_radius_m) ** 2
-    return float(np.arctan2(ratio * np.sin(graphic_latitude_rad), np.cos(graphic_latitude_rad)))
+    return View(flattened, equator, pole, tilt, outline, shell_outline, depth)
 
 
 def _far_side_edge(view: View, ux: Floats, uy: Floats) -> Floats:
@@ -102,7 +97,7 @@ def _far_side_edge(view: View, ux: Floats, uy: Floats) -> Floats:
     return np.sqrt(np.maximum(1.0 - 1.0 / reach2, 0.0))
 
 
-def area_per_solid_angle(view: View, ux: Floats, uy: Floats, uz: Floats) -> Floats:
+def _area_per_solid_angle(view: View, ux: Floats, uy: Floats, uz: Floats) -> Floats:
     """Return dS of the shell per solid angle of the unit sphere: det(M) |M^-T u| of the affine map M."""
     a, p = view.shell_equator, view.shell_outline_pole
     shear, depth = view.depth
@@ -128,7 +123,7 @@ def uniform_points(view: View, spacing: float = SPACING) -> tuple[Floats, Floats
     share = np.concatenate([np.broadcast_to(near_share, (around, near.size)), edge * far_share], axis=1)
     radius = np.sqrt(1.0 - uz**2)
     ux, uy = radius * cos, radius * sin
-    weight = share * (2.0 * np.pi / around) * area_per_solid_angle(view, ux, uy, uz)
+    weight = share * (2.0 * np.pi / around) * _area_per_solid_angle(view, ux, uy, uz)
     return (view.shell_equator * ux).ravel(), (view.shell_outline_pole * uy).ravel(), weight.ravel()
 
 
@@ -173,11 +168,6 @@ def _spot_nodes(
     return _SpotNodes(radius * right, radius * toward, radius * north, area, (outer_rad - inner_rad) / rings)
 
 
-def spot_area(view: View, latitude_rad: float, outer_rad: float, inner_rad: float) -> float:
-    """Return the area of a spot on the shell, squared equatorial radii (planetocentric latitude)."""
-    return float(_spot_nodes(view, latitude_rad, 0.0, outer_rad, inner_rad, 1000).area.sum())
-
-
 def spot_points(
     view: View, latitude_rad: float, east_rad: float, outer_rad: float, inner_rad: float, count: int = 300
 ) -> tuple[Floats, Floats, Floats]:
@@ -206,7 +196,7 @@ def spot_points(
     return x.ravel(), y.ravel(), weight.ravel()
 
 
-def east_of_meridian_rad(
+def _east_of_meridian_rad(
     system: LongitudeSystem, longitude_rad: ArrayLike, sub_observer_longitude_rad: ArrayLike
 ) -> Floats:
     """Return how far a longitude lies from the sub-observer meridian, right-handed about the north pole."""
@@ -248,8 +238,8 @@ def visible_points(
                 f"{system.name!r}; turn the longitude into that system first",
                 "emission.spots",
             )
-        east = east_of_meridian_rad(system, spot.longitude_rad, sub_observer_longitude_rad)
-        middle = centric_latitude(figure, spot.latitude_rad)
+        east = _east_of_meridian_rad(system, spot.longitude_rad, sub_observer_longitude_rad)
+        middle = float(planetocentric_rad(spot.latitude_rad, figure))
         solid_angle = 2.0 * np.pi * (np.cos(spot.inner_radius_rad) - np.cos(spot.radius_rad))
         count = max(300, round(solid_angle / spacing**2))
         x, y, weight = spot_points(view, middle, float(east), spot.radius_rad, spot.inner_radius_rad, count)

@@ -25,7 +25,7 @@ TURN = 2.0 * np.pi
 SUB_POINTS = 9  # places looked at in a bin for a latitude of interest: its edge is met to 1/18 of the bin
 SHARP_RAD = 1e-5  # widths below are drawn as this: sharp, without a division by zero
 NOTHING = 1e-9  # a share below is rounding
-FWHM_SIGMA = 2.0 * np.sqrt(2.0 * np.log(2.0))
+FWHM_PER_SIGMA = 2.0 * np.sqrt(2.0 * np.log(2.0))
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,7 +91,7 @@ def central_weights(
     """
     edge = np.arange(bins + 1) * TURN / bins
     half = np.maximum(0.5 * np.abs(np.asarray(drift_rad, dtype=float)), SHARP_RAD)[..., None]
-    sigma = np.maximum(np.asarray(resolution, dtype=float) / FWHM_SIGMA, SHARP_RAD)[..., None]
+    sigma = np.maximum(np.asarray(resolution, dtype=float) / FWHM_PER_SIGMA, SHARP_RAD)[..., None]
     centre = np.mod(longitude_rad, TURN)[:, None]
     weight = np.zeros((longitude_rad.size, bins))
     for turn in (-2, -1, 0, 1, 2):

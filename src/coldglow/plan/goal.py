@@ -1,4 +1,4 @@
-"""From Fisher matrices to what an observer asks: SNR, errors of T and N, and the time they take.
+"""From Fisher matrices to what an observer asks: SNR, errors of T and N, and what goals demand.
 
 A matrix holds the information on theta = (ln N, T, continuum level, wavelength zero). The last two are
 nuisances of one *visit* (one night in one setting): matrices of time steps add up to the matrix of their
@@ -16,7 +16,6 @@ from scipy.special import ndtri
 
 Array: TypeAlias = NDArray[np.float64]
 
-PARAMETERS = ("ln_column", "temperature", "continuum", "wavelength_zero")
 LOST = 1e-12  # a pivot below this share of its diagonal is rounding error: that parameter is not measured
 
 
@@ -124,33 +123,3 @@ def required_snr(goal: float, probability: float) -> float:
 def demanded_information(goal_snr: ArrayLike, common_floor: ArrayLike = 0.0) -> Array:
     """Sum of the visits' information that an SNR asks for; inf above the asymptote 1/f_common."""
     return without_floor(np.square(np.asarray(goal_snr, dtype=float)), common_floor)
-
-
-def time_to_snr(
-    goal_snr: ArrayLike, information_s: ArrayLike, visit_floor: ArrayLike = 0.0, common_floor: ArrayLike = 0.0
-) -> Array:
-    """Open-shutter seconds of one visit that reach an SNR; inf ("never") at or above the asymptote.
-
-    Args:
-        goal_snr: expected SNR wanted, see `required_snr`.
-        information_s: 1/sigma² of ln N per second of open shutter, nuisances marginalised.
-        visit_floor: relative error of the visit.
-        common_floor: relative error common to all visits.
-
-    """
-    wanted = without_floor(demanded_information(goal_snr, common_floor), visit_floor)
-    rate = np.asarray(information_s, dtype=float)
-    return np.where(rate > 0.0, wanted / np.where(rate > 0.0, rate, 1.0), np.inf)
-
-
-def time_to_error(goal_error: ArrayLike, error_one_second: ArrayLike, systematic: ArrayLike = 0.0) -> Array:
-    """Open-shutter seconds until sqrt(e1²/t + systematic²) reaches an error of T or N; inf if never.
-
-    Args:
-        goal_error: error wanted, in the unit of the other two.
-        error_one_second: `temperature_error` or `column_error` of the matrix of one second.
-        systematic: error that time does not lower.
-
-    """
-    rest = np.square(np.asarray(goal_error, dtype=float)) - np.square(systematic)
-    return np.where(rest > 0.0, np.square(error_one_second) / np.where(rest > 0.0, rest, 1.0), np.inf)

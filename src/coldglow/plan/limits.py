@@ -1,4 +1,4 @@
-"""Faintest things that can be detected: coldest temperature, smallest column, both against time.
+"""Faintest things that can be detected: coldest temperature, smallest column.
 
 Numbers only. A `measure` is any vectorised function that grows with what is detected (the SNR for a given
 time, or the information per second), and `needed` the value of it that counts as a detection.
@@ -60,19 +60,6 @@ def smallest_column(
     nodes = np.geomspace(low_m2, high_m2, 41)
     nodes[0], nodes[-1] = low_m2, high_m2
     return _first_rise(measure, needed, nodes, np.exp, np.log)
-
-
-def against_time(
-    find: Callable[[Measure, float], Edge], rate: Measure, information: float, time_s: Floats
-) -> tuple[Edge, ...]:
-    """Return the edge of detection for each time, one per element of ndarray[time].
-
-    `find` is `coldest_temperature` or `smallest_column`, `rate` the information per second as a function of
-    the same quantity, `information` what one visit needs for a detection. Information grows in proportion
-    to time, so a longer time is a smaller rate needed.
-    """
-    with np.errstate(divide="ignore"):
-        return tuple(find(rate, float(needed)) for needed in information / np.asarray(time_s, dtype=float))
 
 
 def _first_rise(

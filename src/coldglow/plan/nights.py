@@ -53,18 +53,6 @@ class Curve:
         return int(good[0]) if good.size else None
 
 
-def clear_needed(gain: Array, demand: Demand) -> int | None:
-    """Fewest clear units, best first, that reach the goal of a single target; None if all are too few.
-
-    Args:
-        gain: ndarray[unit, 1] or ndarray[unit, 1, 2, 2], in order of preference.
-        demand: goal of the one bin.
-
-    """
-    reached = demand.share(np.cumsum(gain, axis=0))[:, 0] >= REACHED
-    return int(np.argmax(reached)) + 1 if reached.any() else None
-
-
 def scatter_factors(
     shape: tuple[int, int],
     rng: np.random.Generator,
@@ -157,10 +145,10 @@ def success(
         certain = np.isnan(day)
         order = np.argsort(day, kind="stable")[: (~certain).sum()]
         wanted = float(demand.demand[0])
-        left = wanted - float(gain[certain, 0].sum())
+        sure = float(gain[certain, 0].sum())  # of units that no cloud can take away
         low, high = probability_of_sum(
             gain[order, 0],
-            left if left > (1.0 - REACHED) * wanted else 0.0,
+            0.0 if sure >= REACHED * wanted else wanted - sure,
             day[order],
             weather.clear_fraction,
             weather.correlation,

@@ -1,4 +1,4 @@
-"""How a planet's rotation meets the day: advance of the central longitude, resonances, nights to cover.
+"""How a planet's rotation meets the day: advance of the central longitude, and resonances.
 
 A fixed window of each day sees the central longitude advance by 360 deg * day/period from one day to the
 next, less whole turns; where n days are close to m turns, n nights show n stretches and then the same
@@ -10,8 +10,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.constants import day as DAY_S
 
-DAY_S = 86400.0
 TURN = 2.0 * np.pi
 
 
@@ -24,39 +24,19 @@ class Resonance:
     drift_rad: float
 
 
-def advance_per_day_rad(period_s: float, day_s: float = DAY_S) -> float:
+def advance_per_day_rad(period_s: float) -> float:
     """Advance of the central longitude at the same clock time from one day to the next, 0 ... 2 pi."""
-    return float(TURN * np.mod(day_s / abs(period_s), 1.0))
+    return float(TURN * np.mod(DAY_S / abs(period_s), 1.0))
 
 
-def closest_resonance(period_s: float, nights_max: int, day_s: float = DAY_S) -> Resonance:
+def closest_resonance(period_s: float, nights_max: int) -> Resonance:
     """Find the number of days up to `nights_max` that is closest to whole turns, the smallest of equal ones.
 
     The drift is how far the central longitude lands from where it was, -pi ... pi, positive ahead.
     """
     nights = np.arange(1, nights_max + 1)
-    turns = nights * day_s / abs(period_s)
+    turns = nights * DAY_S / abs(period_s)
     whole = np.round(turns)
     miss = turns - whole
     best = int(np.argmin(np.round(np.abs(miss), 12)))
     return Resonance(int(nights[best]), int(whole[best]), float(TURN * miss[best]))
-
-
-def nights_to_cover(
-    period_s: float, window_s: float, nights_max: int = 1000, day_s: float = DAY_S
-) -> int | None:
-    """Count the consecutive clear nights of a fixed daily window until every longitude was central once.
-
-    None where `nights_max` nights leave a gap: the window is too short for a period close to a ratio of a
-    day.
-    """
-    arc = min(TURN * window_s / abs(period_s), TURN)
-    if arc >= TURN:
-        return 1
-    start = np.mod(np.arange(nights_max) * advance_per_day_rad(period_s, day_s), TURN)
-    for nights in range(int(np.ceil(TURN / arc - 1e-12)), nights_max + 1):
-        here = np.sort(start[:nights])
-        gap = np.diff(np.append(here, here[0] + TURN)).max()
-        if gap <= arc * (1.0 + 1e-12):
-            return nights
-    return None

@@ -12,13 +12,12 @@ from typing import TypeAlias
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from scipy.constants import day as DAY_S
 
 from coldglow.plan.goal import marginalise, with_floor
 
 Array: TypeAlias = NDArray[np.float64]
 Index: TypeAlias = NDArray[np.int64]
-
-DAY_S = 86400.0
 
 
 @dataclass(frozen=True, slots=True)

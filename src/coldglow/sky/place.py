@@ -178,12 +178,6 @@ def altitude_azimuth(observer: Observer, apparent: Floats) -> tuple[Floats, Floa
     return np.arctan2(up, np.hypot(north, east)), np.arctan2(east, north) % (2 * np.pi)
 
 
-def hour_angle_rad(observer: Observer, apparent: Floats) -> Floats:
-    """Return the hour angle in -pi .. pi, positive west of the meridian, ndarray[time]; nan in space."""
-    south, east = _meridian_axes(observer, apparent)
-    return np.arctan2(-east, south)
-
-
 def parallactic_angle_rad(observer: Observer, apparent: Floats) -> Floats:
     """Return the position angle of the zenith, from north through east, ndarray[time]; nan in space.
 
