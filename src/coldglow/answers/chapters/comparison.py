@@ -8,12 +8,15 @@ from coldglow.report.figures.compare import comparison
 from coldglow.report.record import Picture, Section
 from coldglow.report.results import Result
 
+HOPELESS_H = 1e4  # of clock time; drawn as never
+
 
 def comparison_chapter(result: Result) -> Section:
     """Return the chapter of a comparison."""
     table = result.table()
     labels = [f"{i}, {s}" for i, s in zip(table["instrument"], table["setting"], strict=True)]
-    figure = comparison(labels, table["time_to_goal"], list(table["limited_by"]), table["feasible"])
+    time_h = np.where(table["time_to_goal"] < HOPELESS_H, table["time_to_goal"], np.inf)
+    figure = comparison(labels, time_h, list(table["limited_by"]), table["feasible"])
     best = labels[0] if table["feasible"][0] else "none of them"
     picture = Picture(
         "comparison",
@@ -22,7 +25,12 @@ def comparison_chapter(result: Result) -> Section:
         "Time on the clock to the goal on the whole disk at the median observable moment, for every setting "
         f"of the request's instruments, and what limits it; best is {best}.",
     )
-    return Section("Which setting does it best", result.sentences, [picture], {"comparison": table})
+    said = [
+        "Each setting by itself, for the goals on the whole disk: neither coverage nor the help of another "
+        "instrument counts here.",
+        *result.sentences,
+    ]
+    return Section("Which setting does it best", said, [picture], {"comparison": table})
 
 
 def worth_comparing(result: Result) -> bool:
