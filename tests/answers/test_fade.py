@@ -115,7 +115,7 @@ def test_the_budget_reaches_the_goal_at_its_coldest_temperature(uranus):
     information = night.information(uranus.header["coldest_budget"].value, float(uranus["column"][0]))
     floor = asked.uses[0].instrument.operation.visit_floor
     common = asked.uses[0].instrument.operation.common_floor
-    assert count == 6  # of twelve nights, 70 % clear
+    assert count == 7  # of fourteen nights, 70 % clear
     snr = ((1 / information + floor**2) / count + common**2) ** -0.5
     assert snr == pytest.approx(asked.fade.significance, rel=1e-9)
 

@@ -8,19 +8,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.describe.records import Request, Use
-from coldglow.detect.exposure import expose_moments
-from coldglow.light.lines import load_lines
 from coldglow.plan.fade import InformationGrid, night_information
 from coldglow.plan.goal import marginalise
 from coldglow.plan.stretches import runs, table
 from coldglow.scenario import (
     Sight,
     State,
-    air_of,
-    air_over,
     expose_sight,
     follow,
-    moments_of,
     sight,
     state_of,
     steps_of,
@@ -81,20 +76,9 @@ def best_night(request: Request, use: Use, year: int, every: int = EVERY) -> Nig
     nights, count = np.unique(track.night[index], return_counts=True)
     by_airmass = index[np.lexsort((np.nan_to_num(track.airmass[index]), track.night[index]))]
     highest = by_airmass[np.cumsum(count) - count]
-    target, instrument, state = request.target, use.instrument, state_of(request)
-    air = air_of(instrument.sky, request.conditions)
-    exposure = expose_moments(
-        moments_of(target, instrument, use.setting, track.take(highest), air),
-        load_lines(),
-        state.temperature_k,
-        state.shining_m2,
-        target.continuum,
-        air_over(instrument),
-        instrument,
-        use.setting,
-        request.goal.lines,
-    )
-    operation = instrument.operation
+    state, operation = state_of(request), use.instrument.operation
+    exposure = expose_sight(sight(wide, use, track.take(highest)), state)
+    assert exposure is not None  # these steps can be observed
     open_s = np.maximum(count * STEP_S - operation.acquisition_s - operation.standards_s, 0.0)
     worth = marginalise(exposure.matrix + exposure.prior)[:, 0, 0] * exposure.shutter_share * open_s
     best = int(np.argmax(worth))
