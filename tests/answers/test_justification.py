@@ -45,6 +45,11 @@ def test_every_method_that_it_names_is_in_the_bibliography(small, markdown):
         assert reference.full in markdown
 
 
+def test_it_speaks_to_a_committee_not_to_a_user(markdown):
+    assert "coldglow" not in markdown
+    assert "We request" in markdown
+
+
 def test_it_lists_the_stretches(small, markdown):
     for stretch in small.found.stretches:
         assert stretch.start in markdown

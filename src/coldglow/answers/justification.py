@@ -49,8 +49,8 @@ def _request(found: Findings) -> str:
         "" if found.feasible else " The goal is not reached with what is offered; the numbers below say why."
     )
     return (
-        f"{asked} with {words.listing(uses, 'or')} between {span} to measure the H₃⁺ lines [@drossart1989] "
-        f"of {request.target.name}. The goal is {header['goal']}.{verdict}"
+        f"{asked} with {words.listing(uses, 'or')} on evenings of {span} to measure the H₃⁺ lines "
+        f"[@drossart1989] of {request.target.name}. The goal is {header['goal']}.{verdict}"
     )
 
 
@@ -129,11 +129,14 @@ def _precision(each: Exposed) -> str:
 
 def _rotation(found: Findings) -> Iterator[str]:
     if found.cover is not None:
-        yield " ".join(found.cover.sentences)
+        said = [sentence for sentence in found.cover.sentences if "`" not in sentence]  # no commands
+        yield " ".join(said)
 
 
 def _nights(found: Findings) -> str:
     text = " ".join(found.nights.sentences)
+    if text.startswith("Request "):
+        text = f"We request {text.removeprefix('Request ')}"
     if found.plan is not None and "no clouds" not in climate_words(found.request, found.plan.offers):
         text += " Weather is a two-state chain [@gabriel1962] with the share of clear nights of the site."
     return text
