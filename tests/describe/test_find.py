@@ -1,10 +1,12 @@
 """Names and paths: what is found where, in which order."""
 
+import dataclasses
 from pathlib import Path
 
 import pytest
 
 from coldglow.describe import find
+from coldglow.describe.load import load_instrument, load_instrument_for, load_request
 from coldglow.errors import NotFoundError
 
 TARGET = "format: coldglow-target/1\nextends: uranus\n"
@@ -89,3 +91,15 @@ def test_a_folder_named_like_a_description_is_none(write, tmp_path):
     write("other.txt", "")
     assert find.find("saturn", "target").parent == find.shipped_folder("target")
     assert "saturn" in find.names("target")
+
+
+def test_another_instrument_is_seen_with_the_limits_of_the_request():
+    request = load_request(Path(__file__).parents[2] / "examples" / "uranus-season.yaml")
+    own = load_instrument("ifu-8m")
+    assert request.uses[0].instrument.limits.airmass_max == 1.8
+    assert own.limits.airmass_max != 1.8
+    assert load_instrument_for(request, "ifu-8m").limits.airmass_max == 1.8
+    # an airmass means nothing in space, and a request that stands in no file lays nothing over
+    assert load_instrument_for(request, "cold-space-ifu").limits == load_instrument("cold-space-ifu").limits
+    loose = dataclasses.replace(request, origin=dataclasses.replace(request.origin, file=""))
+    assert load_instrument_for(loose, "ifu-8m").limits == own.limits
