@@ -145,3 +145,16 @@ def test_chart_puts_each_night_in_its_row():
     assert np.array_equal(seen[0], seen[2])
     assert chart[1, 60] == pytest.approx(np.nan, nan_ok=True)  # 10.0 h, in the hole
     assert chart[1, 72] == pytest.approx(1.0)  # 12 h
+
+
+def test_longitudes_of_a_stretch_are_those_half_a_step_beyond_its_steps():
+    steps = season(2)
+    first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night)
+    rows = table(steps, first, end)
+    half = np.pi * steps.step_s / PERIOD_S
+    for found, expected in (
+        (rows.longitude_start_rad, steps.longitude_rad[first] - half),
+        (rows.longitude_end_rad, steps.longitude_rad[end - 1] + half),
+    ):
+        np.testing.assert_allclose(np.exp(1j * found), np.exp(1j * expected), atol=1e-6)
+        assert np.all((found >= 0.0) & (found < 2.0 * np.pi))
