@@ -220,5 +220,7 @@ def _constraint(rows: list[Row], width: int) -> LinearConstraint | tuple[()]:
     columns = np.concatenate([row[0] for row in rows])
     weights = np.concatenate([row[1] for row in rows])
     begin = np.cumsum([0] + [row[0].size for row in rows])
-    matrix = csr_array((weights, columns, begin), shape=(len(rows), width))
+    # HiGHS counts in 32 bits; older releases of SciPy do not convert
+    indices, starts = np.asarray(columns, dtype=np.int32), np.asarray(begin, dtype=np.int32)
+    matrix = csr_array((weights, indices, starts), shape=(len(rows), width))
     return LinearConstraint(matrix, [row[2] for row in rows], [row[3] for row in rows])
