@@ -118,10 +118,10 @@ def air_over(instrument: Instrument) -> Atmosphere | None:
     return load_atmosphere(place.height_m, instrument.atmosphere) if isinstance(place, Site) else None
 
 
-def watch(request: Request, use: Use, first: str = "", last: str = "") -> Track:
-    """Return the track of the request's target over its nights (or from `first` to `last`) at one site."""
+def watch(request: Request, use: Use) -> Track:
+    """Return the track of the request's target over its nights at one site."""
     dates = request.dates
-    grid = season_grid(first or dates.first, last or dates.last, dates.step_s, use.instrument.place)
+    grid = season_grid(dates.first, dates.last, dates.step_s, use.instrument.place)
     return follow(request, use, grid)
 
 

@@ -55,7 +55,8 @@ def assert_same(one, other):
 def test_one_instrument_is_what_expose_and_nights_say(name):
     asked, record = request(first="2028-01-20", last="2028-01-29"), load_instrument(name)
     for row in rows(compare(asked, [record]), name):
-        alone = replace(asked, uses=(Use(record, record.setting(row["setting"])),))
+        setting = next(each for each in record.settings if each.name == row["setting"])
+        alone = replace(asked, uses=(Use(record, setting),))
         exposed, planned = expose(alone), nights(alone)
         assert row["time_to_goal"] == exposed.header["time_to_goal"].value
         assert row["systematic_error"] == exposed.header["systematic_temperature"].value

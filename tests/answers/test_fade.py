@@ -143,7 +143,8 @@ def test_every_tenth_night_is_enough_to_find_the_best(instrument):
     use = Use(record, record.settings[0])
     state = state_of(asked)
     wide = whole_year(asked)
-    season = visits(scenario(wide, use, watch(wide, use, "2028-01-01", "2028-12-31"), state))
+    year = replace(wide, dates=replace(wide.dates, first="2028-01-01", last="2028-12-31"))
+    season = visits(scenario(year, use, watch(year, use), state))
     best = np.bincount(season.night, season.matrix[:, 0, 0]).max()
     found = best_night(asked, use, 2028).information(state.temperature_k, state.column_m2)
     assert 0.97 < found / best < 1.01  # moments interpolated within a night and over a season differ a little

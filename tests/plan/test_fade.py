@@ -130,15 +130,12 @@ def test_clear_nights_thin_the_budget():
     assert outlook([2030], nothing, *state, rules).probability_detectable[0] == 0.0
 
 
-def test_brightness_is_relative_to_the_same_planet_or_to_a_stated_one():
+def test_brightness_is_relative_to_the_same_planet():
     light = np.array([[2.0, 1.0], [8.0, 2.0], [4.0, 1.0]])
     kelvin, column = np.full((3, 2), 500.0), np.full((3, 2), 1e15)
     grid = grid_over(kelvin, column, np.ones(2))
     own = outlook([1, 2], grid, kelvin, column, light, Rules(5.0, 1)).relative_brightness
     np.testing.assert_allclose(own.median, [1.0, 0.25])
-    stated = outlook([1, 2], grid, kelvin, column, light, Rules(5.0, 1), reference=4.0).relative_brightness
-    np.testing.assert_allclose(stated.median, [1.0, 0.25])
-    np.testing.assert_allclose(stated.high, [2.0, 0.5])
 
 
 def test_interval_holds_two_thirds_of_a_normal():

@@ -37,13 +37,10 @@ def test_airmass_and_sky_are_weighed_against_each_other():
     assert found.separation_rad[0, 1] == pytest.approx(5 * DEG)
 
 
-def test_stars_below_the_horizon_or_not_wanted_are_left_out():
+def test_stars_below_the_horizon_or_too_low_are_left_out():
     stars = [(-20, 120), (49, 120), (50, 130)]
     assert choose((50, 120), stars, count=3).star.tolist() == [[1, 2, -1]]
-    usable = np.array([True, False, True])
-    found = choose((50, 120), stars, count=3, usable=usable)
-    assert found.star.tolist() == [[2, -1, -1]]
-    assert np.isnan(found.separation_rad[0, 1])
+    assert np.isnan(choose((50, 120), stars, count=3).separation_rad[0, 2])
     assert choose((50, 120), stars, altitude_min_rad=55 * DEG).star.tolist() == [[-1]]
 
 

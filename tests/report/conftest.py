@@ -147,7 +147,6 @@ def comparison() -> Figure:
             "continuum cannot be told from the lines",
         ],
         np.array([True, True, True, True, False, False]),
-        8.0,
     )
 
 
@@ -181,7 +180,7 @@ def crowded_spectrum() -> Figure:
 def long_comparison() -> Figure:
     labels = [f"an-instrument-of-mine-{i}, high-resolution" for i in range(14)]
     hours = np.geomspace(0.001, 5e4, 14)
-    return compare.comparison(labels, hours, ["the background of the warm telescope"] * 14, hours < 1e3, 9.0)
+    return compare.comparison(labels, hours, ["the background of the warm telescope"] * 14, hours < 1e3)
 
 
 def beam(diameter: float = 3.7, slit: float = 0.8) -> Figure:

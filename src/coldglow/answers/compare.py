@@ -48,7 +48,6 @@ class Verdict:
     limited_by: str
     feasible: bool
     reason: str  # why not
-    night_s: float  # observable time of its best night
     conditions: str
 
 
@@ -163,7 +162,6 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         _noisiest(seen) if np.isfinite(open_s) else "floors",
         feasible,
         "" if feasible else _why_not(wanted, planned),
-        float(given.observable_s[best]),
         conditions_words(use, scene.air),
     )
 
@@ -209,7 +207,6 @@ def _no(use: Use, limit: str, reason: str) -> Verdict:
         limit,
         False,
         reason,
-        0.0,
         "",
     )
 

@@ -49,10 +49,10 @@ def answer(found: Findings) -> list[str]:
     ]
 
 
-def time_entry(each: Exposed, index: int, label: str = "") -> Entry:
+def time_entry(each: Exposed, index: int) -> Entry:
     """Return the clock time to one goal with what the uncertain light makes of it."""
     need, light = each.needs[index], each.brightness
-    name = label or words.sentence_case(need.name)
+    name = words.sentence_case(need.name)
     if not np.isfinite(need.clock_s):
         return Entry(np.inf, "h", text="never", label=name)
     text = words.duration(need.clock_s)

@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 
 from coldglow.describe.load import load_instrument, load_request, load_target
-from coldglow.describe.records import Instrument, Limits, Origin, Request, Target
+from coldglow.describe.records import Instrument, Limits, Request, Target
 from coldglow.errors import NotFoundError, Problem, RangeError, UnitError
 from coldglow.units import KINDS, parse_quantity
 
@@ -74,22 +74,12 @@ def place_errors(*described: Target | Instrument | Request) -> Iterator[None]:
     except (RangeError, NotFoundError) as error:
         key = error.key
         for record in described:
-            where = _locate(record.origin, key) if key else None
+            where = record.origin.locate(key) if key else None
             if where:
                 error.args = (str(Problem(*where, key, str(error))),)
                 error.key = ""  # said once
                 break
         raise
-
-
-def _locate(origin: Origin, key: str) -> tuple[str, int] | None:
-    """Return file and line of a key path or of what encloses it; None where the description has neither."""
-    parts = key.split(".")
-    while parts:
-        if ".".join(parts) in origin.lines:
-            return origin.lines[".".join(parts)]
-        parts.pop()
-    return None
 
 
 def described(request: Request) -> tuple[Request | Target | Instrument, ...]:

@@ -7,6 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import arcsec
 
 from coldglow.answers.inputs import described, place_errors
 from coldglow.describe.records import Orbit, Request, Use
@@ -14,19 +15,14 @@ from coldglow.errors import NotFoundError, RangeError
 from coldglow.plan.goal import marginalise, with_floor
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.report import words
-from coldglow.scenario import Air, Scenario, State, scenario, watch
+from coldglow.scenario import Air, Scenario, scenario, watch
 from coldglow.sky.track import Track
-
-ARCSEC_PER_RAD = 206264.80624709636
-
 
 Also = NDArray[np.bool_] | Callable[[Track], NDArray[np.bool_]] | None
 """What else must hold for a step to be used: a mask ndarray[time], or what gives one for a track."""
 
 
-def scenes(
-    request: Request, state: State | None = None, air: Air | None = None, also: Also = None
-) -> tuple[Scenario, ...]:
+def scenes(request: Request, also: Also = None) -> tuple[Scenario, ...]:
     """Return the scenario of every use of the request over its dates.
 
     Raises:
@@ -36,7 +32,7 @@ def scenes(
     with place_errors(*described(request)):
         tracks = [restricted(watch(request, use), also) for use in request.uses]
         uses = zip(request.uses, tracks, strict=True)
-        return tuple(scenario(request, use, track, state, air) for use, track in uses)
+        return tuple(scenario(request, use, track) for use, track in uses)
 
 
 def restricted(track: Track, also: Also) -> Track:
@@ -97,7 +93,7 @@ def conditions_words(use: Use, air: Air) -> str:
     """Return the night assumed, in words."""
     if isinstance(use.instrument.place, Orbit):
         return "in space, no air"
-    seeing = words.quantity(air.seeing_rad * ARCSEC_PER_RAD, "arcsec", 2)
+    seeing = words.quantity(air.seeing_rad / arcsec, "arcsec", 2)
     return f"seeing {seeing} at 0.5 µm, {words.quantity(1e3 * air.water_m, 'mm', 2)} of water"
 
 

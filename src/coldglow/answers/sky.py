@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from scipy.constants import arcsec, au
 
 from coldglow.answers.inputs import (
     BARE_LIMITS,
@@ -22,9 +23,6 @@ from coldglow.report.results import Column, Entry, Result, column, table
 from coldglow.sky.clock import iso_from_tt, span_grid, tdb_from_tt, times_grid
 from coldglow.sky.orientation import absolute_phase_uncertainty_rad
 from coldglow.sky.track import Track, make_track
-
-ARCSEC_PER_RAD = 206264.80624709636
-AU_M = 149597870700.0
 
 
 def longitude_system(rotation: Rotation, name: str | None) -> LongitudeSystem:
@@ -176,17 +174,17 @@ def _columns(track: Track, in_space: bool) -> list[Column]:
         angle("sub_solar_longitude", track.sub_solar_longitude_rad, shown=False),
         angle("sub_solar_latitude", track.sub_solar_latitude_rad),
         angle("pole_angle", track.pole_angle_rad),
-        column("diameter", track.equatorial_diameter_rad * ARCSEC_PER_RAD, "arcsec", decimals=3),
+        column("diameter", track.equatorial_diameter_rad / arcsec, "arcsec", decimals=3),
         angle("phase_angle", track.phase_angle_rad, 3),
         column("range_rate", 1e-3 * track.range_rate_m_s, "km s-1", decimals=3),
-        column("distance", track.distance_m / AU_M, "AU", decimals=5),
-        column("sun_distance", track.sun_distance_m / AU_M, "AU", decimals=5, shown=False),
+        column("distance", track.distance_m / au, "AU", decimals=5),
+        column("sun_distance", track.sun_distance_m / au, "AU", decimals=5, shown=False),
         angle("ra", track.ra_rad, 5),
         angle("dec", track.dec_rad, 5),
         angle("ra_icrs", track.ra_icrs_rad, 5),
         angle("dec_icrs", track.dec_icrs_rad, 5),
-        column("ra_rate", track.ra_rate_rad_s * ARCSEC_PER_RAD * 3600.0, "arcsec h-1", decimals=3),
-        column("dec_rate", track.dec_rate_rad_s * ARCSEC_PER_RAD * 3600.0, "arcsec h-1", decimals=3),
+        column("ra_rate", track.ra_rate_rad_s * 3600.0 / arcsec, "arcsec h-1", decimals=3),
+        column("dec_rate", track.dec_rate_rad_s * 3600.0 / arcsec, "arcsec h-1", decimals=3),
         angle("parallactic_angle", track.parallactic_angle_rad, 1, shown=False),
         angle("sun_altitude", track.sun_altitude_rad, shown=ground),
         angle("solar_elongation", track.solar_elongation_rad),

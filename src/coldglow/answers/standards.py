@@ -38,7 +38,7 @@ class Standard:
         return f"{self.designation} (V {self.magnitude:.1f}, airmass {self.airmass:.2f})"
 
 
-def standards_for(stretch: Stretch, stars: Stars, count: int = COUNT) -> tuple[Standard, ...]:
+def standards_for(stretch: Stretch, stars: Stars) -> tuple[Standard, ...]:
     """Return the best stars before and after a stretch; none in space, fewer where fewer are up."""
     scene = stretch.scene
     place, limits, track = scene.use.instrument.place, scene.use.instrument.limits, scene.track
@@ -56,7 +56,7 @@ def standards_for(stretch: Stretch, stars: Stars, count: int = COUNT) -> tuple[S
         altitude,
         azimuth,
         np.where(high <= limits.airmass_max, high, np.nan),
-        count=count,
+        count=COUNT,
         altitude_min_rad=limits.altitude_min_rad,
     )
     times = iso_from_tt(np.array([stretch.start_tt_s, stretch.end_tt_s]), "m")

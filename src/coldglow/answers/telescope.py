@@ -6,11 +6,12 @@ from collections.abc import Mapping, Sequence
 from itertools import groupby
 
 import numpy as np
+from scipy.constants import arcsec
 
 from coldglow import __version__
 from coldglow.answers.chosen import Stretch
 from coldglow.answers.scenes import conditions_words
-from coldglow.answers.standards import Standard, sexagesimal, standards_for, standards_table
+from coldglow.answers.standards import Standard, sexagesimal, standards_table
 from coldglow.describe.records import Orbit, Request, Site
 from coldglow.detect.beam import Disk, slit_angle
 from coldglow.report import words
@@ -20,16 +21,9 @@ from coldglow.report.results import Entry, Table, column, table
 from coldglow.scenario import Scenario
 from coldglow.sky.clock import iso_from_tt
 from coldglow.sky.events import night_events
-from coldglow.sky.stars import Stars
 from coldglow.sky.track import Track
 
-ARCSEC_PER_RAD = 206264.80624709636
 Pairs = Sequence[tuple[Stretch, tuple[Standard, ...]]]
-
-
-def with_standards(stretches: Sequence[Stretch], stars: Stars) -> Pairs:
-    """Return each stretch with its standard stars."""
-    return [(stretch, standards_for(stretch, stars)) for stretch in stretches]
 
 
 # ---------------------------------------------------------------- calendar
@@ -61,8 +55,8 @@ def _event(request: Request, stretch: Stretch, stars: Sequence[Standard]) -> Eve
         integration_s=integration_s,
         coadds=coadds,
         setting=scene.use.setting.name,
-        ra_rate_arcsec_h=3600.0 * ARCSEC_PER_RAD * float(track.ra_rate_rad_s[middle]),
-        dec_rate_arcsec_h=3600.0 * ARCSEC_PER_RAD * float(track.dec_rate_rad_s[middle]),
+        ra_rate_arcsec_h=3600.0 / arcsec * float(track.ra_rate_rad_s[middle]),
+        dec_rate_arcsec_h=3600.0 / arcsec * float(track.dec_rate_rad_s[middle]),
         standards_before=tuple(str(star) for star in stars if star.when == "before"),
         standards_after=tuple(str(star) for star in stars if star.when == "after"),
     )
@@ -207,7 +201,7 @@ def _track_table(stretches: Sequence[Stretch]) -> Table:
     scene = stretches[0].scene
     index = np.concatenate([stretch.marks() for stretch in stretches])
     track = scene.track.take(index)
-    rate = 3600.0 * ARCSEC_PER_RAD
+    rate = 3600.0 / arcsec
     in_space = isinstance(scene.use.instrument.place, Orbit)
     times = [str(text) for text in iso_from_tt(track.grid.tt_s, "m")]
     columns = [

@@ -7,7 +7,8 @@ of vertical column N at height h above an opaque sphere of radius R, limb annulu
 
 Own derivation: the sphere of radius R + h holds 4 pi (R+h)^2 N ions; the observer sees the front half and
 of the back half what is not hidden by the body, a share sqrt(1 - (R/(R+h))^2). The oblateness is left out
-here (the equatorial radius stands for R): for h/R below 0.1 it changes the factor by less than 1 %.
+here (the equatorial radius stands for R): `light.shell.path_factor` has it, and differs by up to 1.6 % for
+Uranus and Neptune, 4.5 % for Jupiter and 7 % for Saturn.
 """
 
 from __future__ import annotations

@@ -19,15 +19,15 @@ class Origin:
     file: str = ""
     lines: Mapping[str, tuple[str, int]] = field(default_factory=dict)
 
-    def locate(self, key: str) -> tuple[str, int]:
-        """Return file and line of a key path, or of the nearest enclosing one (line 1 if none)."""
+    def locate(self, key: str) -> tuple[str, int] | None:
+        """Return file and line of a key path or of what encloses it; None where there is neither."""
         parts = key.split(".")
         while parts:
             where = self.lines.get(".".join(parts))
             if where is not None:
                 return where
             parts.pop()
-        return self.file, 1
+        return None
 
 
 @dataclass(frozen=True, slots=True)
@@ -331,10 +331,6 @@ class Instrument:
     operation: Operation
     atmosphere: str  # path of the user's own transmission table, empty for the packaged one
     origin: Origin = field(default_factory=Origin, compare=False, repr=False)
-
-    def setting(self, name: str) -> Setting:
-        """Return the setting of that name; KeyError if there is none."""
-        return {setting.name: setting for setting in self.settings}[name]
 
 
 # ---------------------------------------------------------------- request

@@ -16,7 +16,7 @@ from coldglow.describe.records import Continuum, Emission, Estimate, Figure, Ori
 from coldglow.describe.rotation_schema import LATITUDE, LONGITUDE, RotationBlock, no_system
 from coldglow.units import show_quantity
 
-BODIES = ("mercury", "venus", "mars", "jupiter", "saturn", "uranus", "neptune")
+BODIES = ("jupiter", "saturn", "uranus", "neptune")  # whose places every ephemeris here knows
 
 
 class FigureBlock(Block):

@@ -60,7 +60,6 @@ def systematic_errors(
     telluric_error: np.ndarray,
     operation: Operation,
     einstein_a_error: float = EINSTEIN_A_ERROR,
-    visits: int = 1,
     open_shutter_s: float = 3600.0,
 ) -> SystematicErrors:
     """Return the systematic errors of an estimate from some lines.
@@ -74,7 +73,6 @@ def systematic_errors(
         operation: `flux_error` moves all lines alike; `relative_error` is the error of the ratio of two lines
             at the two ends of the lines used, linear in wavelength between; the floors move all lines alike.
         einstein_a_error: relative error of the Einstein coefficients, independent from line to line.
-        visits: independent visits, which average the floor of one visit.
         open_shutter_s: length of the exposure, which sets the weights of faint lines.
 
     """
@@ -89,7 +87,7 @@ def systematic_errors(
     span = float(np.ptp(wavelength))
     place = (wavelength - float(np.mean(wavelength))) / span if span > 0.0 else 0.0 * wavelength
     alike = np.ones(wavelength.size)
-    floor = math.hypot(operation.visit_floor / math.sqrt(visits), operation.common_floor)
+    floor = math.hypot(operation.visit_floor, operation.common_floor)
     patterns = (operation.flux_error * alike, operation.relative_error * place, floor * alike)
 
     def causes(response: np.ndarray, extra: float) -> tuple[float, ...]:

@@ -176,7 +176,7 @@ def load_lines() -> LineList:
     )
 
 
-def lines_in(shortest_m: float, longest_m: float, key: str = "") -> LineList:
+def lines_in(shortest_m: float, longest_m: float) -> LineList:
     """Return the packaged lines of a band.
 
     Raises:
@@ -187,7 +187,6 @@ def lines_in(shortest_m: float, longest_m: float, key: str = "") -> LineList:
     if not len(lines):
         raise RangeError(
             f"no H3+ line between {1e6 * shortest_m:g} and {1e6 * longest_m:g} um; "
-            "the list covers 1.9 to 5.5 um",
-            key,
+            "the list covers 1.9 to 5.5 um"
         )
     return lines

@@ -263,7 +263,7 @@ def path_factor(figure: Figure, sub_observer_latitude_rad: float) -> float:
     """Return the mean column along the line of sight over the disk, per vertical column of an even shell.
 
     For the spheroid, all light of the visible shell over the area of the opaque disk. The closed form for
-    the sphere (`describe.column`) differs by up to 1.5 % for Uranus and Neptune; for Saturn the spheroid has
+    the sphere (`describe.column`) differs by up to 1.6 % for Uranus and Neptune; for Saturn the spheroid has
     5 % more in the plane of the equator and 7 % less over the pole.
 
     Args:

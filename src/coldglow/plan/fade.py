@@ -152,13 +152,12 @@ def outlook(
     column_m2: Floats,
     brightness: Floats,
     rules: Rules,
-    reference: ArrayLike | None = None,
 ) -> Outlook:
     """Return what becomes of the target in each year.
 
     `temperature_k`, `column_m2` and `brightness` (any unit, all lines asked for) are ndarray[trial, year];
-    brightness is told relative to `reference`, a scalar or ndarray[trial] (default: the first year of the
-    same trial, so that what is uncertain about today cancels). A single trial without uncertainty is the
+    brightness is told relative to the first year of the same trial, so that what is uncertain about today
+    cancels. A single trial without uncertainty is the
     deterministic answer.
 
     Raises: RangeError for a state outside the grid.
@@ -168,7 +167,6 @@ def outlook(
         [night_information(grid, i, temperature_k[:, i], column_m2[:, i]) for i in range(years.size)], axis=1
     )
     needed = nights_for(information, rules)
-    base = brightness[:, 0] if reference is None else np.broadcast_to(reference, brightness.shape[:1])
     chance = _chance(needed, rules)
     out = needed > rules.budget_nights
     dropout = np.where(out.any(axis=1), years[np.argmax(out, axis=1)], np.inf)
@@ -176,7 +174,7 @@ def outlook(
         year=years,
         temperature_k=spread(temperature_k),
         column_m2=spread(column_m2),
-        relative_brightness=spread(brightness / base[:, None]),
+        relative_brightness=spread(brightness / brightness[:, :1]),
         snr_one_night=spread(snr_of(information, rules)),
         nights_needed=spread(needed),
         probability_detectable=chance.mean(axis=0),

@@ -9,7 +9,6 @@ from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
-Bools = NDArray[np.bool_]
 
 # Common practice: the airmass of a telluric standard within 0.1 of the target's; 15 deg on the sky is as bad
 # as 0.1 in airmass, because the air over two directions differs and the telescope has to slew.
@@ -52,23 +51,19 @@ def nearest_standards(
     star_altitude_rad: Floats,
     star_azimuth_rad: Floats,
     star_airmass: Floats,
-    usable: Bools | None = None,
     count: int = 1,
     altitude_min_rad: float = 0.0,
 ) -> Choice:
     """Return the stars nearest to the target in airmass and on the sky at each moment.
 
     Target arrays are ndarray[moment] (the starts and the ends of the stretches, say), star arrays
-    ndarray[star, moment] with the airmass nan below the horizon; `usable` is ndarray[star], for limits of
-    brightness. The measure is hypot(airmass difference / 0.1, separation / 15 deg); equal ones keep the
-    order of the list.
+    ndarray[star, moment] with the airmass nan below the horizon. The measure is
+    hypot(airmass difference / 0.1, separation / 15 deg); equal ones keep the order of the list.
     """
     difference = star_airmass - target_airmass
     apart = separation_rad(target_altitude_rad, target_azimuth_rad, star_altitude_rad, star_azimuth_rad)
     badness = np.hypot(difference / AIRMASS_SCALE, apart / SEPARATION_SCALE_RAD)
     barred = np.isnan(badness) | (star_altitude_rad <= altitude_min_rad)
-    if usable is not None:
-        barred |= ~usable[:, None]
     badness = np.where(barred, np.inf, badness)
     ranked = np.argsort(badness, axis=0, kind="stable")[:count]
     found = np.isfinite(np.take_along_axis(badness, ranked, axis=0))

@@ -17,14 +17,14 @@ from coldglow.report.record import Report
 Files = Mapping[str, str | bytes]
 
 
-def report_files(report: Report, command: str = "plan") -> dict[str, str | bytes]:
+def report_files(report: Report) -> dict[str, str | bytes]:
     """Return the page, the figures (SVG and PDF) and the tables (ECSV) by path within the folder."""
     drawings = {picture.name: look.as_svg(picture.figure) for picture in report.pictures()}
     contents: dict[str, str | bytes] = {"report.html": render_page(report, drawings)}
     for picture in report.pictures():
         contents[f"figures/{picture.name}.svg"] = drawings[picture.name]
         contents[f"figures/{picture.name}.pdf"] = look.as_pdf(picture.figure)
-    result = report.as_result(command)
+    result = report.as_result("plan")
     for name in result.tables:
         contents[f"tables/{name}.ecsv"] = ecsv_text(result, name)
     return contents

@@ -137,9 +137,9 @@ def result_html(result: Findings) -> str:
     return f"<div>{''.join(parts)}</div>"
 
 
-def table_html(table: Table, rows: int = _HTML_ROWS) -> str:
+def table_html(table: Table) -> str:
     """Return one table as HTML."""
-    chosen = list(_printed_rows(table, rows))
+    chosen = list(_printed_rows(table, _HTML_ROWS))
     shown = [column for column in table.columns if column.shown]
     caption = table.caption
     if len(chosen) < len(table):

@@ -24,12 +24,11 @@ def comparison(
     time_to_goal_h: NDArray[np.float64],
     limited_by: Sequence[str],
     feasible: NDArray[np.bool_],
-    night_h: float | None = None,
 ) -> Figure:
     """Draw a ruled row per instrument and setting, in the order given, with its time on a log scale.
 
     `time_to_goal_h`: ndarray[row], inf or nan where the goal is out of reach; `limited_by` says why, or
-    what limits; `night_h` marks the length of one night.
+    what limits.
     """
     count = len(labels)
     left = min(0.3 + 0.068 * max(map(len, labels), default=10), 2.6)
@@ -52,18 +51,6 @@ def comparison(
             main.plot(high, row, "x", color=look.BRICK, markersize=6, clip_on=False)
             says = "not feasible"
         _beside(main, row, says, limited_by[row])
-    if night_h is not None and low < night_h < high:
-        main.axvline(night_h, color=look.SOFT, linewidth=1, linestyle=look.DASHES[1])
-        main.annotate(
-            "one night",
-            (night_h, 1),
-            xycoords=("data", "axes fraction"),
-            xytext=(0, 3),
-            textcoords="offset points",
-            ha="center",
-            color=look.SOFT,
-            fontsize=8.5,
-        )
     main.set_yticks(range(count), labels)
     decades = np.arange(round(np.log10(low)), round(np.log10(high)) + 1)
     main.set_xticks(10.0 ** decades[:: -(-len(decades) // _DECADES)])

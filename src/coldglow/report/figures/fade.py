@@ -23,7 +23,6 @@ def fade(
     nights_needed: Interval,
     budget_nights: float | None = None,
     last_year: float | None = None,
-    interval: str = "16 to 84 %",
 ) -> Figure:
     """Draw three panels over the years; `last_year` is the last in which the budget suffices.
 
@@ -48,7 +47,7 @@ def fade(
         if last_year is not None:
             panel.axvline(last_year, color=look.BRICK, linewidth=1, linestyle=look.DASHES[2])
     cost.xaxis.get_major_locator().set_params(integer=True)
-    note = f"bands: {interval} of the trials"
+    note = "bands: 16 to 84 % of the trials"
     if last_year is not None:
         note += f"; dotted: last year within the budget, {last_year:.0f}"
     figure.text(0.65 / look.WIDTH, 0.12 / 6.2, note, color=look.SOFT, fontsize=8.5)

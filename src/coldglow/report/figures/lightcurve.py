@@ -16,7 +16,6 @@ def light_curve(
     relative_brightness: NDArray[np.float64],
     spot_share: NDArray[np.float64] | None = None,
     spot_name: str = "spot",
-    longitude_name: str = "central longitude (°)",
 ) -> Figure:
     """Draw the light over its mean against the central longitude and, below, the share of a spot in it.
 
@@ -34,7 +33,7 @@ def light_curve(
         row.plot(longitude_deg[order], values[order], color=colour)
         row.set_xlim(0, 360)
         row.set_xticks(range(0, 361, 60))
-        look.name_axes(row, longitude_name if row is axes[-1, 0] else "", name)
+        look.name_axes(row, "central longitude (°)" if row is axes[-1, 0] else "", name)
     axes[0, 0].axhline(1, color=look.SOFT, linewidth=1, linestyle=look.DASHES[1])
     if spot_share is not None:
         axes[1, 0].set_ylim(0, None)

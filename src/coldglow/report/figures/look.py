@@ -1,4 +1,4 @@
-"""The look that all figures share, and how they become SVG, PDF or PNG that are the same byte for byte.
+"""The look that all figures share, and how they become SVG or PDF that are the same byte for byte.
 
 The colours differ in lightness as well as in hue, so that they stay apart for colour-blind eyes and in
 grey; lines differ in dashes too. The name of the quantity on the vertical axis stands above its axis,
@@ -157,13 +157,6 @@ def decade(value: float) -> str:
     return words.short(value) if -4 < exponent < 5 else f"10{words.raised(exponent)}"
 
 
-def luminance(colour: str) -> float:
-    """Return the relative luminance (0-1) of a colour such as ``#1d5596`` (IEC 61966-2-1, sRGB)."""
-    channels = np.array([int(colour[i : i + 2], 16) for i in (1, 3, 5)]) / 255
-    linear = np.where(channels <= 0.04045, channels / 12.92, ((channels + 0.055) / 1.055) ** 2.4)
-    return float(linear @ [0.2126, 0.7152, 0.0722])
-
-
 def as_svg(figure: Figure) -> str:
     """Return the figure as SVG text, the same for the same figure."""
     stream = io.StringIO()
@@ -177,14 +170,6 @@ def as_pdf(figure: Figure) -> bytes:
     stream = io.BytesIO()
     with _style():
         figure.savefig(stream, format="pdf", metadata={"CreationDate": None})
-    return stream.getvalue()
-
-
-def as_png(figure: Figure, dpi: float = 150) -> bytes:
-    """Return the figure as PNG."""
-    stream = io.BytesIO()
-    with _style():
-        figure.savefig(stream, format="png", dpi=dpi, metadata={"Software": None})
     return stream.getvalue()
 
 

@@ -26,7 +26,6 @@ def season_chart(
     dark_start_h: NDArray[np.float64] | None = None,
     dark_end_h: NDArray[np.float64] | None = None,
     chosen: Sequence[tuple[int, float, float]] = (),
-    rate_name: str = "SNR of one hour",
 ) -> Figure:
     """Draw `rate` (ndarray[night, hour]; nan where nothing can be observed) as colour, date against hour.
 
@@ -67,7 +66,7 @@ def season_chart(
     bar = figure.colorbar(image, cax=scale)
     bar.outline.set_visible(False)
     scale.tick_params(length=0)
-    scale.set_title(rate_name, loc="right")
+    scale.set_title("SNR of one hour", loc="right")
     return figure
 
 

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from coldglow.report import words
 from coldglow.report.figures import look
 
+_COLUMN = "vertical column (m⁻²)"
 _MOST = 1000.0  # nights; more is as good as never
 _FAR = 1000.0  # factor; ellipses that reach further are cut by the frame
 _HALO: list[AbstractPathEffect] = [withStroke(linewidth=2.2, foreground=look.PAPER)]
@@ -32,7 +33,6 @@ def nights_map(
     path_k: NDArray[np.float64] | None = None,
     path_m2: NDArray[np.float64] | None = None,
     budget_nights: float | None = None,
-    column_name: str = "vertical column (m⁻²)",
 ) -> Figure:
     """Draw the nights needed, ndarray[column, temperature] (inf = never), and the target's way through them.
 
@@ -65,7 +65,7 @@ def nights_map(
         _draw_way(main, years, path_k, path_m2)
     _draw_today(main, today, today_error)
     main.set_xlabel("temperature (K)")
-    main.set_title(column_name)
+    main.set_title(_COLUMN)
     main.legend(loc="upper center", bbox_to_anchor=(0.5, -0.16), ncols=3, borderaxespad=0)
     bar = figure.colorbar(image, cax=scale)
     bar.set_ticks([10.0**power for power in range(round(np.log10(low)), round(np.log10(high)) + 1)])
@@ -139,7 +139,6 @@ def error_ellipse(
     column_m2: float,
     covariance: NDArray[np.float64],
     systematic: tuple[float, float] = (0.0, 0.0),
-    column_name: str = "vertical column (m⁻²)",
 ) -> Figure:
     """Draw the 1- and 2-sigma ellipses of temperature and column, and a box of the systematic errors.
 
@@ -183,7 +182,7 @@ def error_ellipse(
     main.set_xlim(max(temperature_k - reach[1], 0.0), min(temperature_k + reach[1], _FAR * temperature_k))
     main.set_ylim(-reach[0], reach[0])
     _column_ticks(main, column_m2)
-    look.name_axes(main, "temperature (K)", column_name)
+    look.name_axes(main, "temperature (K)", _COLUMN)
     main.grid(axis="x")
     main.legend(loc="upper left", bbox_to_anchor=(1.02, 1.0))
     return figure
