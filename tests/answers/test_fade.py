@@ -256,3 +256,14 @@ def test_other_targets_and_kinds_of_instrument(target, instrument):
 def test_an_instrument_that_the_request_does_not_name():
     with pytest.raises(NotFoundError, match="echelle-8m"):
         fade(request(), instrument="ifu-8m")
+
+
+def test_a_brighter_trial_that_saturates_the_detector_does_not_end_the_outlook():
+    asked = request()
+    emission = replace(
+        asked.target.emission, temperature_k=Estimate(850.0, 30.0), column_m2=Estimate(1e18, 3e17)
+    )
+    bright = replace(asked, target=replace(asked.target, emission=emission))
+    found = fade(bright)
+    assert found.feasible
+    assert np.all(found["nights_needed"] == 1)

@@ -8,6 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.describe.records import Request, Use
+from coldglow.detect.integration import visit_overhead_s
+from coldglow.errors import SaturationError
 from coldglow.plan.fade import InformationGrid, night_information
 from coldglow.plan.goal import marginalise
 from coldglow.plan.stretches import runs, table
@@ -45,9 +47,9 @@ class Night:
         exposure = expose_sight(seen, State(temperature_k, column_m2, self.lte_fraction))
         assert exposure is not None
         steps = steps_of(seen, exposure)
-        operation, longest_s = instrument.operation, instrument.limits.longest_visit_s
+        longest_s = instrument.limits.longest_visit_s
         first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night, longest_s)
-        overhead_s = operation.acquisition_s + operation.standards_s
+        overhead_s = visit_overhead_s(instrument.operation)
         return float(table(steps, first, end, overhead_s, 0.0, exposure.prior).matrix[:, 0, 0].sum())
 
 
@@ -76,10 +78,10 @@ def best_night(request: Request, use: Use, year: int, every: int = EVERY) -> Nig
     nights, count = np.unique(track.night[index], return_counts=True)
     by_airmass = index[np.lexsort((np.nan_to_num(track.airmass[index]), track.night[index]))]
     highest = by_airmass[np.cumsum(count) - count]
-    state, operation = state_of(request), use.instrument.operation
+    state = state_of(request)
     exposure = expose_sight(sight(wide, use, track.take(highest)), state)
     assert exposure is not None  # these steps can be observed
-    open_s = np.maximum(count * STEP_S - operation.acquisition_s - operation.standards_s, 0.0)
+    open_s = np.maximum(count * STEP_S - visit_overhead_s(use.instrument.operation), 0.0)
     worth = marginalise(exposure.matrix + exposure.prior)[:, 0, 0] * exposure.shutter_share * open_s
     best = int(np.argmax(worth))
     chosen = track.take(track.night == nights[best])
@@ -105,7 +107,8 @@ def information_grid(
     """Return the information of each year's night over temperature and column.
 
     The whole grid is worked out for the first night alone. What another year's night brings more or less
-    is worked out at some temperatures of that year and runs straight between them (held beyond them).
+    is worked out at some temperatures of that year and runs straight between them (held beyond them). States
+    so bright that the detector saturates count as the brightest one at which it does not.
 
     Args:
         nights: of each year; None brings nothing.
@@ -119,13 +122,24 @@ def information_grid(
     reference = next((night for night in nights if night is not None), None)
     if reference is None:
         return InformationGrid(temperature_k, column_m2, information)
-    whole = np.array([[reference.information(t, n) for n in column_m2] for t in temperature_k])
+    whole = np.array([[_unless_saturated(reference, t, n) for n in column_m2] for t in temperature_k])
+    if np.isnan(whole).all():
+        reference.information(float(temperature_k[0]), float(column_m2[0]))  # even the faintest: says so
+    whole[np.isnan(whole)] = np.nanmax(whole)
     grid = InformationGrid(temperature_k, column_m2, whole[None])
     for i, night in enumerate(nights):
         if night is None:
             continue
-        exact = np.array([night.information(float(t), float(track_m2[i])) for t in track_k[i]])
+        exact = np.array([_unless_saturated(night, t, track_m2[i]) for t in track_k[i]])
         ratio = exact / night_information(grid, 0, track_k[i], track_m2[i])
+        ratio = np.where(np.isnan(ratio), 1.0, ratio)
         factor = np.exp(np.interp(1.0 / -temperature_k, 1.0 / -track_k[i], np.log(ratio)))
         information[i] = whole * factor[:, None]
     return InformationGrid(temperature_k, column_m2, information)
+
+
+def _unless_saturated(night: Night, temperature_k: float, column_m2: float) -> float:
+    try:
+        return night.information(float(temperature_k), float(column_m2))
+    except SaturationError:
+        return np.nan
