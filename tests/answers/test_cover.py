@@ -432,6 +432,8 @@ def test_passes_of_a_spot(ovals):
     assert result.table("bins")["snr"][0] == pytest.approx(total, rel=1e-9)
     assert total >= 8.0 + 1.645 - 0.01  # 95 % that the measured one reaches it
     assert result.table("bins")["longitude"][0] == pytest.approx(185.0)
+    assert str(result.header["goal"]).startswith("SNR 8 on the spot “northern oval”")
+    assert any(each.startswith("The spot “northern oval” shows on") for each in result.sentences)
     with pytest.raises(RangeError, match="temperature error"):
         answer(replace(asked, coverage=replace(asked.coverage, **goal(temperature_error_k=20.0))))
 
@@ -442,6 +444,11 @@ def test_nothing_to_see_is_said():
     assert choice is None
     assert not result.feasible
     assert "never be observed" in result.sentences[0]
+
+
+def test_nights_are_not_priced_in_nights_again():
+    result, _ = answer(request(first="2027-12-18", last="2027-12-20", bins=1, candidates="night", snr=5.0))
+    assert result.sentences[0].startswith("1 night gives SNR 5 in the one bin, and")
 
 
 def test_whole_nights_are_offered_beside_halves():

@@ -204,6 +204,19 @@ def test_times_to_errors_with_a_prior(measure):
     assert found == pytest.approx(321.0, rel=1e-9)
 
 
+def test_no_visit_is_shorter_than_one_cycle_of_its_exposures():
+    imager = expose(EXAMPLES / "jupiter-ovals.yaml", at="2027-03-02T12:00")
+    record = load_request(EXAMPLES / "jupiter-ovals.yaml")
+    seen = look(record, record.uses[0], follow(record, record.uses[0], times_grid(["2027-03-02T12:00"])))
+    plan = seen.detail.plan
+    cycle_s = 4.0 * float(plan.coadds[0] * plan.integration_s[0])  # band and off-band, target and sky
+    goal = Goal(snr=5.0, lines=(), temperature_error_k=None, column_error=None, probability=0.9)
+    need = needs(goal, seen.visit, seen.systematic)[0]
+    assert need.open_s == pytest.approx(cycle_s)
+    assert f"the shortest visit there is (expected SNR {float(seen.visit.snr(cycle_s)):.1f})" in need.text
+    assert any("a filter adds all of them up" in sentence for sentence in imager.sentences)
+
+
 def test_nothing_to_see_is_an_answer():
     found = expose(request(), at="2027-11-25T15:00")
     assert not found.feasible

@@ -75,6 +75,11 @@ def test_a_goal_too_deep_is_said_to_be():
 # ---------------------------------------------------------------- coverage
 
 
+def test_one_night_is_not_spoken_of_as_many():
+    result = nights(request(first="2028-10-01", last="2028-10-01"))
+    assert result.sentences[0].startswith("1 night reaches SNR 5 with a probability of only 0 %")
+
+
 @pytest.fixture(scope="module")
 def covering():
     asked = request("uranus-season", "2027-11-18", "2027-12-08", asked=True, clear_fraction=0.7)

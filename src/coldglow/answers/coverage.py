@@ -92,7 +92,7 @@ def question_of(request: Request, given: Offers) -> Question:
         clock_s,
         rules_of(request, given),
         tuple(view.resolution for view in views),
-        text if not coverage.spot else f"{text} on the {coverage.spot}",
+        text if not coverage.spot else f"{text} on the spot “{coverage.spot}”",
     )
 
 

@@ -125,7 +125,9 @@ def _answer(choice: Choice) -> Iterator[str]:
         )
     else:
         verb = "gives" if cover.chosen.size == 1 else "give"
-        yield f"{_parts_words(choice)} ({price}) {verb} {what}" + (
+        parts = _parts_words(choice)
+        asked = parts if parts == price else f"{parts} ({price})"
+        yield f"{asked} {verb} {what}" + (
             ", and no choice of lower cost does: proven."
             if cover.proven
             else f". The proof was stopped at the time limit of "
@@ -157,9 +159,9 @@ def _pass_words(choice: Choice) -> str:
     passes = int((question.clock_s[choice.cover.chosen, 0] > 0.0).sum())
     noun = {0: "whole night", STRETCH: "stretch"}.get(int(given.part[0]), "visit")
     return (
-        f"The {spot} shows on {words.count(snr.size, 'night')} of those in question; the best {noun} of a "
-        f"night knows its brightness against the rest of the disk to SNR {words.number(float(low), 2)} to "
-        f"{words.number(float(high), 2)} (median {words.number(float(middle), 2)}). Here "
+        f"The spot “{spot}” shows on {words.count(snr.size, 'night')} of those in question; the best {noun} "
+        f"of a night knows its brightness against the rest of the disk to SNR {words.number(float(low), 2)} "
+        f"to {words.number(float(high), 2)} (median {words.number(float(middle), 2)}). Here "
         f"{words.count(passes, 'pass', 'passes')} {'is' if passes == 1 else 'are'} used."
     )
 
@@ -183,7 +185,7 @@ def covered_words(choice: Choice) -> str:
         share = "" if count else f" only to {words.percent(float(cover.share[0]))}"
         return f"{question.goal}{share}"
     if count == bins:
-        return f"{question.goal} in all {bins} bins"
+        return f"{question.goal} in {f'all {bins} bins' if bins > 1 else 'the one bin'}"
     return f"{question.goal} in {count} of {bins} bins"
 
 

@@ -18,7 +18,8 @@ from coldglow.answers.scenes import (
 from coldglow.answers.visit import Need, Visit, needs
 from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.detail import Detail, expose_one
-from coldglow.detect.exposure import NOISE_SOURCES, Moments, expose_moments
+from coldglow.detect.exposure import NOISE_SOURCES, Exposure, Moments, expose_moments
+from coldglow.detect.integration import Integrations
 from coldglow.detect.systematics import CAUSES, SystematicErrors, systematic_errors
 from coldglow.errors import RangeError
 from coldglow.light.atmosphere import transmission_error
@@ -84,7 +85,14 @@ class Look:
         """The visit in the state of the description."""
         detail = self.detail
         share = float(detail.plan.shutter_share[0])
-        return Visit(detail.matrix, detail.prior, share, self.use.instrument.operation)
+        operation = self.use.instrument.operation
+        return Visit(detail.matrix, detail.prior, share, operation, self._cycle_s(detail.plan))
+
+    def _cycle_s(self, plan: Integrations | Exposure) -> float:
+        """Return the open shutter of one cycle: each nod position, of an imager in each of its filters."""
+        positions = 1 if self.use.instrument.operation.nod == "stare" else 2
+        filters = 1 if self.use.setting.off_band_m is None else 2
+        return positions * filters * float(plan.coadds[0] * plan.integration_s[0])
 
     def visit_in(self, temperature_k: float, column_m2: float) -> Visit:
         """Return the visit in another state of the ionosphere."""
@@ -101,7 +109,7 @@ class Look:
             self.request.goal.lines,
         )
         share = float(exposure.shutter_share[0])
-        return Visit(exposure.matrix[0], exposure.prior, share, instrument.operation)
+        return Visit(exposure.matrix[0], exposure.prior, share, instrument.operation, self._cycle_s(exposure))
 
 
 def median_moment(scene: Scenario) -> int:
@@ -345,7 +353,7 @@ def _errors(seen: Look, open_s: float) -> tuple[str, str]:
 
     def both(random: float, systematic: float, unit: str) -> str:
         if not np.isfinite(random):
-            return "not measured: these lines rise from one upper energy"
+            return f"not measured: {_no_temperature(seen)}"
         first, second = words.quantity(random, unit, 2), words.quantity(systematic, unit, 2)
         return f"± {first} (random), ± {second} (systematic)"
 
@@ -353,6 +361,13 @@ def _errors(seen: Look, open_s: float) -> tuple[str, str]:
         both(float(temperature_error(matrix)), fixed.temperature_total_k, "K"),
         both(100.0 * float(column_error(matrix)), 100.0 * fixed.column_total, "%"),
     )
+
+
+def _no_temperature(seen: Look) -> str:
+    """Return why the temperature is not measured."""
+    if seen.use.instrument.opening.kind == "imager":
+        return "a filter adds all of them up"
+    return "they rise from one upper energy only"
 
 
 def _limit_sentence(seen: Look, header: dict[str, Entry], occasion: str) -> str:
@@ -372,10 +387,7 @@ def _precision_sentence(seen: Look, open_s: float, occasion: str) -> str:
         f"{words.percent(seen.systematic.fixed_total)}"
     )
     if not np.isfinite(temperature_error(seen.visit.yields(open_s))):
-        return (
-            "These lines give no temperature: they rise from one upper energy only, so its error is "
-            f"infinite; {known} {occasion}."
-        )
+        return f"These lines give no temperature: {_no_temperature(seen)}; {known} {occasion}."
     kelvin, percent = _errors(seen, open_s)
     return f"Known {occasion}: the temperature to {kelvin}, the column to {percent}; {known}."
 

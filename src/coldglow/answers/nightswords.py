@@ -95,7 +95,8 @@ def _answer(plan: Plan) -> Iterator[str]:
     if plan.chosen is None:
         last = int(chances.units.size) - 1
         yield (
-            f"Even {asked_words(plan, last)} reach {goal_words(plan)} with a probability of only "
+            f"{'Even ' if last else ''}{asked_words(plan, last)} {'reach' if last else 'reaches'} "
+            f"{goal_words(plan)} with a probability of only "
             f"{words.probability(float(chances.probability[-1]))}; {wanted} was wanted ({climate})."
         )
         if plan.needed:

@@ -36,6 +36,7 @@ class Visit:
     prior: Array
     shutter_share: float  # open shutter per second of clock time
     operation: Operation
+    shortest_s: float = 0.0  # open shutter of the shortest visit: the cycle of exposures that makes sense
 
     def yields(self, open_s: ArrayLike) -> Array:
         """Return the information on (ln N, T) after times of open shutter, ndarray[..., 2, 2]."""
@@ -63,8 +64,11 @@ class Visit:
         """Return the open shutter after which `measure` of what is yielded reaches `wanted`.
 
         `measure` takes ndarray[2, 2] and grows in proportion to it. Without a prior that is a proportion in
-        time as well.
+        time as well. No visit is shorter than the shortest one.
         """
+        return max(self._time_to(measure, wanted), self.shortest_s)
+
+    def _time_to(self, measure: Callable[[Array], Array], wanted: float) -> float:
         if not np.isfinite(wanted) or not float(measure(self.yields(1.0))) > 0.0:
             return np.inf
         if not self.prior.any():
@@ -112,7 +116,9 @@ def _snr_need(goal: float, probability: float, visit: Visit) -> Need:
     open_s = visit.time_to(lambda matrix: matrix[..., 0, 0], visit.demanded(wanted))
     clock_s = float(visit.clock_s(open_s))
     text = f"{shown} is reached in {words.duration(clock_s)}"
-    if probability != 0.5:
+    if 0.0 < open_s <= visit.shortest_s:
+        text += f", the shortest visit there is (expected SNR {words.number(float(visit.snr(open_s)))})"
+    elif probability != 0.5:
         chance = words.probability(probability)
         text += f" with probability {chance} (expected SNR {words.number(wanted)})"
     if not np.isfinite(open_s):
