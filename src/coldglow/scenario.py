@@ -26,6 +26,7 @@ from coldglow.describe.records import (
     Use,
 )
 from coldglow.detect.exposure import Exposure, Moments, expose_moments
+from coldglow.detect.integration import visit_overhead_s
 from coldglow.detect.season import beams
 from coldglow.light.atmosphere import Atmosphere, load_atmosphere
 from coldglow.light.atmosphere import validity_warnings as atmosphere_warnings
@@ -84,8 +85,7 @@ class Scenario:
     @property
     def overhead_s(self) -> float:
         """Clock time that each visit costs before its first exposure."""
-        operation = self.use.instrument.operation
-        return operation.acquisition_s + operation.standards_s
+        return visit_overhead_s(self.use.instrument.operation)
 
 
 def emission_of(request: Request) -> Emission:

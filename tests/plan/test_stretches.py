@@ -62,7 +62,7 @@ def test_row_against_a_plain_sum_with_overhead_at_the_start():
     seconds[0], seconds[1] = 0.0, 0.8 * 300.0
     rest = marginalise(np.tensordot(seconds, steps.matrix[52:60], axes=1))
     np.testing.assert_allclose(rows.matrix[0], rest, rtol=1e-9)
-    assert rows.snr[0] == pytest.approx(float(snr(rest[None], 0.05)), rel=1e-9)
+    assert rows.snr[0] == pytest.approx(float(snr(rest[0, 0], 0.05)), rel=1e-9)
     assert rows.airmass_max[0] == steps.airmass[52:60].max()
     assert rows.airmass_min[1] == steps.airmass[63:90].min()
     assert (rows.start_s[0], rows.end_s[0]) == (52 * 600.0 - 300.0, 59 * 600.0 + 300.0)

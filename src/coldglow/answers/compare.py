@@ -20,7 +20,7 @@ from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.exposure import NOISE_SOURCES
 from coldglow.errors import DateError, NotFoundError, RangeError, SaturationError
 from coldglow.plan.compare import ranking
-from coldglow.plan.goal import temperature_error, with_floor
+from coldglow.plan.goal import snr, temperature_error
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, column, table
 from coldglow.scenario import scenario, watch
@@ -156,7 +156,7 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         max(need.clock_s for need in wanted),
         nights,
         str(planned.header.get("nights", "")),
-        float(np.sqrt(with_floor(given.information[best], common))),
+        float(snr(given.information[best], common_floor=common)),
         float(temperature_error(given.matrix[best])) if np.isfinite(fixed_k) else np.inf,
         fixed_k,
         _noisiest(seen) if np.isfinite(open_s) else "floors",

@@ -6,6 +6,7 @@ from itertools import groupby
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import Julian_year as YEAR_S
 
 from coldglow.answers.fading import Fading
 from coldglow.answers.scenes import conditions_words
@@ -17,8 +18,6 @@ from coldglow.report import words
 from coldglow.report.results import Entry
 
 Array = NDArray[np.float64]
-
-YEAR_S = 365.25 * 86400.0
 
 
 def header(found: Fading) -> dict[str, Entry]:
@@ -35,13 +34,19 @@ def header(found: Fading) -> dict[str, Entry]:
         "coldest_one_night": _edge_entry(found.coldest_night, f"coldest detectable, one {found.budget.unit}"),
         "coldest_budget": _edge_entry(found.coldest_budget, "coldest detectable, whole budget"),
         "dropout_year": Entry(
-            float(found.law.dropout_year.median), text=_dropout_words(found), label="year it drops out"
+            float(found.law.dropout_year.median),
+            text=_year_words(found, found.law.dropout_year.median),
+            label="year it drops out",
         ),
         "dropout_low": Entry(
-            float(found.trials.dropout_year.low), text=_year(found, "low"), label="at the earliest (1σ)"
+            float(found.trials.dropout_year.low),
+            text=_year_words(found, found.trials.dropout_year.low),
+            label="at the earliest (1σ)",
         ),
         "dropout_high": Entry(
-            float(found.trials.dropout_year.high), text=_year(found, "high"), label="at the latest (1σ)"
+            float(found.trials.dropout_year.high),
+            text=_year_words(found, found.trials.dropout_year.high),
+            label="at the latest (1σ)",
         ),
         "trials": Entry(request.fade.trials),
         "seed": Entry(request.weather.seed),
@@ -77,13 +82,9 @@ def _edge_entry(edge: Edge, label: str) -> Entry:
     return Entry(edge.value, "K", text=text, label=label)
 
 
-def _year(found: Fading, side: str) -> str:
-    value = float(getattr(found.trials.dropout_year, side))
-    return f"{value:.0f}" if np.isfinite(value) else f"after {found.year[-1]}"
-
-
-def _dropout_words(found: Fading) -> str:
-    value = float(found.law.dropout_year.median)
+def _year_words(found: Fading, year: Array) -> str:
+    """Return the year in which the target drops out; after the last one asked about where it is none."""
+    value = float(year)
     return f"{value:.0f}" if np.isfinite(value) else f"after {found.year[-1]}"
 
 
@@ -149,7 +150,8 @@ def dropout_sentence(found: Fading) -> str:
     nights = found.law.nights_needed.median
     first, last = int(found.year[0]), int(found.year[-1])
     year, share = float(found.law.dropout_year.median), found.trials.dropout_probability
-    spread = f"1σ: {_year(found, 'low')} to {_year(found, 'high')}"
+    years = found.trials.dropout_year
+    spread = f"1σ: {_year_words(found, years.low)} to {_year_words(found, years.high)}"
     if nights[0] > found.budget.nights:
         return (
             f"It needs {_nights_words(found, nights[0])} in {first} already, more than the "

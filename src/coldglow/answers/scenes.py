@@ -12,7 +12,7 @@ from scipy.constants import arcsec
 from coldglow.answers.inputs import described, place_errors
 from coldglow.describe.records import Orbit, Request, Use
 from coldglow.errors import NotFoundError, RangeError
-from coldglow.plan.goal import marginalise, with_floor
+from coldglow.plan.goal import marginalise, snr
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.report import words
 from coldglow.scenario import Air, Scenario, scenario, watch
@@ -85,8 +85,8 @@ def information_rate(scene: Scenario) -> NDArray[np.float64]:
 def hour_snr(scene: Scenario) -> NDArray[np.float64]:
     """Return the SNR that one hour on the clock at each step would bring, floors applied, ndarray[time]."""
     operation, share = scene.use.instrument.operation, scene.steps.shutter_share
-    visit = with_floor(3600.0 * information_rate(scene) * share, operation.visit_floor)
-    return np.asarray(np.sqrt(with_floor(visit, operation.common_floor)))
+    information = 3600.0 * information_rate(scene) * share
+    return snr(information, operation.visit_floor, operation.common_floor)
 
 
 def conditions_words(use: Use, air: Air) -> str:

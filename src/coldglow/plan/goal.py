@@ -65,14 +65,14 @@ def without_floor(information: ArrayLike, floor: ArrayLike) -> Array:
     return np.where(rest > 0.0, information / np.where(rest > 0.0, rest, 1.0), np.inf)
 
 
-def snr(visits: ArrayLike, visit_floor: ArrayLike = 0.0, common_floor: ArrayLike = 0.0) -> Array:
-    """SNR = 1/sigma(ln N) at fixed temperature, from marginalised matrices of independent visits.
+def snr(information: ArrayLike, visit_floor: ArrayLike = 0.0, common_floor: ArrayLike = 0.0) -> Array:
+    """SNR = 1/sigma(ln N) at fixed temperature of one visit, 1/SNR² = 1/I + f_visit² + f_common².
 
-    Independent visits average their own floors, I_v' = 1/(1/I_v + f_visit²); nothing averages the common
-    one, 1/SNR² = 1/sum(I_v') + f_common².
+    Independent visits average their own floors, sum of I_v' = 1/(1/I_v + f_visit²); nothing averages the
+    common one.
 
     Args:
-        visits: ndarray[..., visit, 2, 2] marginalised, per visit.
+        information: ndarray[...], of ln N, marginalised.
         visit_floor: relative error of one visit.
         common_floor: relative error common to all visits.
 
@@ -80,8 +80,7 @@ def snr(visits: ArrayLike, visit_floor: ArrayLike = 0.0, common_floor: ArrayLike
         ndarray[...].
 
     """
-    information = with_floor(np.asarray(visits, dtype=float)[..., 0, 0], visit_floor).sum(axis=-1)
-    return np.asarray(np.sqrt(with_floor(information, common_floor)))
+    return np.asarray(np.sqrt(with_floor(with_floor(information, visit_floor), common_floor)))
 
 
 def _error(matrix: ArrayLike, wanted: int) -> Array:
