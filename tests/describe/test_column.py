@@ -27,11 +27,11 @@ def test_the_closed_form_is_the_integral_over_the_disk(ratio):
             low,
             high if stop < edge else high - 1e-9,
         )[0]
-    assert mean_path_factor(1, ratio) == pytest.approx(integral, rel=1e-6)
+    assert mean_path_factor(Figure(1.0, 1.0, ratio, "")) == pytest.approx(integral, rel=1e-6)
 
 
 def test_a_shell_without_height_gives_two():
-    assert mean_path_factor(25559e3, 0) == 2
+    assert mean_path_factor(Figure(25559e3, 24973e3, 0.0, "")) == 2
 
 
 def test_there_and_back():

@@ -197,8 +197,9 @@ def longitude_resolution_rad(scene: Scenario) -> Array:
     instrument, setting, track = scene.use.instrument, scene.use.setting, scene.track
     airmass = track.airmass[scene.usable]
     typical = float(np.nanmedian(airmass)) if np.isfinite(airmass).any() else 1.0
-    middle_m = 0.5 * (setting.band_m[0] + setting.band_m[1])
-    spread = point_spread(instrument.image, instrument.telescope, middle_m, scene.air.seeing_rad, typical)
+    spread = point_spread(
+        instrument.image, instrument.telescope, setting.middle_m, scene.air.seeing_rad, typical
+    )
     along_axis = instrument.opening.kind == "slit" and instrument.opening.angle == "rotation-axis"
     width = instrument.opening.width_rad if along_axis else 0.0
     exposed_s = 0.0

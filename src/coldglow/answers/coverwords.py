@@ -251,9 +251,7 @@ def within_budget(choice: Choice) -> bool:
     given, chosen, budget = choice.question.offers, choice.cover.chosen, choice.question.request.budget
     hours = float(given.observable_s[chosen].sum()) / 3600.0
     nights = choice.cover.cost if given.cost_unit == "night" else float(np.unique(given.day[chosen]).size)
-    return (budget.nights is None or nights <= budget.nights + 1e-9) and (
-        budget.hours is None or hours <= budget.hours + 1e-9
-    )
+    return budget.allows(nights, hours)
 
 
 def _longitudes(choice: Choice) -> Iterator[str]:

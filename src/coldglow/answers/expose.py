@@ -2,51 +2,33 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.edges import coldest_temperatures, refined, smallest_columns
+from coldglow.answers.exposewords import header_of, limit_sentence, precision_sentence, yields_of
 from coldglow.answers.inputs import NamePath, Quantity, as_request, described, in_si, place_errors
-from coldglow.answers.scenes import (
-    choose_use,
-    conditions_words,
-    information_rate,
-    unseen_words,
-)
+from coldglow.answers.moment import Look, look
+from coldglow.answers.scenes import choose_use, median_moment, unseen_words
 from coldglow.answers.visit import Need, Visit, needs
-from coldglow.describe.records import Instrument, Request, Use
-from coldglow.detect.detail import Detail, expose_one
-from coldglow.detect.exposure import NOISE_SOURCES, Exposure, Moments, expose_moments
-from coldglow.detect.integration import Integrations
-from coldglow.detect.systematics import CAUSES, SystematicErrors, systematic_errors
+from coldglow.describe.records import Request, Use
+from coldglow.detect.detail import Detail
+from coldglow.detect.exposure import NOISE_SOURCES
+from coldglow.detect.systematics import CAUSES, SystematicErrors
 from coldglow.errors import RangeError
-from coldglow.light.atmosphere import transmission_error
-from coldglow.light.lines import load_lines
-from coldglow.light.shell import line_of_sight_column_m2
 from coldglow.plan.goal import (
     column_error,
-    correlation,
     temperature_error,
 )
 from coldglow.plan.limits import Edge
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, Table, column, table
 from coldglow.scenario import (
-    Air,
-    Scenario,
-    State,
-    air_of,
-    air_over,
     follow,
-    moments_of,
     scenario,
-    state_of,
     watch,
 )
-from coldglow.sky.clock import iso_from_tt, times_grid
-from coldglow.sky.track import Track
+from coldglow.sky.clock import times_grid
 
 SHUTTER_S = tuple(
     60.0 * minutes for minutes in (1, 2, 5, 10, 20, 30, 60, 120, 180, 300, 480, 720, 1200, 3000)
@@ -60,105 +42,6 @@ _SPOKEN = {
     "dark": "the dark current",
     "read-out": "the read-out",
 }
-
-
-@dataclass(frozen=True, slots=True)
-class Look:
-    """One use of an instrument at one moment, in full."""
-
-    request: Request
-    use: Use
-    track: Track  # of one instant
-    state: State
-    air: Air
-    moment: Moments
-    detail: Detail
-    systematic: SystematicErrors
-
-    @property
-    def when(self) -> str:
-        """The moment as ISO text, UTC."""
-        return str(iso_from_tt(self.track.grid.tt_s, "m")[0])
-
-    @property
-    def visit(self) -> Visit:
-        """The visit in the state of the description."""
-        detail = self.detail
-        share = float(detail.plan.shutter_share[0])
-        operation = self.use.instrument.operation
-        return Visit(detail.matrix, detail.prior, share, operation, self._cycle_s(detail.plan))
-
-    def _cycle_s(self, plan: Integrations | Exposure) -> float:
-        """Return the open shutter of one cycle: each nod position, of an imager in each of its filters."""
-        positions = 1 if self.use.instrument.operation.nod == "stare" else 2
-        filters = 1 if self.use.setting.off_band_m is None else 2
-        return positions * filters * float(plan.coadds[0] * plan.integration_s[0])
-
-    def visit_in(self, temperature_k: float, column_m2: float) -> Visit:
-        """Return the visit in another state of the ionosphere."""
-        target, instrument = self.request.target, self.use.instrument
-        exposure = expose_moments(
-            self.moment,
-            load_lines(),
-            temperature_k,
-            column_m2 * self.state.lte_fraction,
-            target.continuum,
-            air_over(instrument),
-            instrument,
-            self.use.setting,
-            self.request.goal.lines,
-        )
-        share = float(exposure.shutter_share[0])
-        return Visit(exposure.matrix[0], exposure.prior, share, instrument.operation, self._cycle_s(exposure))
-
-
-def median_moment(scene: Scenario) -> int:
-    """Return the usable step whose information rate is the median of all usable ones."""
-    index = np.flatnonzero(scene.usable)
-    rate = information_rate(scene)[index]
-    return int(index[np.argsort(rate, kind="stable")[(index.size - 1) // 2]])
-
-
-def look(request: Request, use: Use, track: Track) -> Look:
-    """Return a use of an instrument at the one instant of a track, in full."""
-    target, instrument = request.target, use.instrument
-    state, air = state_of(request), air_of(instrument.sky, request.conditions)
-    moment = moments_of(target, instrument, use.setting, track, air)
-    detail = expose_one(
-        moment,
-        load_lines(),
-        state.temperature_k,
-        state.shining_m2,
-        target.continuum,
-        air_over(instrument),
-        instrument,
-        use.setting,
-        request.goal.lines,
-    )
-    systematic = systematic_errors(
-        detail.lines.wavelength_m,
-        np.where(detail.wanted, detail.line_information, 0.0),
-        detail.temperature_slope,
-        _telluric_error(detail, instrument, moment),
-        instrument.operation,
-    )
-    return Look(request, use, track, state, air, moment, detail, systematic)
-
-
-def _telluric_error(detail: Detail, instrument: Instrument, moment: Moments) -> NDArray[np.float64]:
-    """Return the relative error of each line's transmission, ndarray[line]; zero in space."""
-    atmosphere = air_over(instrument)
-    if atmosphere is None:
-        return np.zeros(len(detail.lines))
-    absolute = transmission_error(
-        atmosphere,
-        detail.lines.wavelength_m,
-        float(moment.airmass[0]),
-        float(moment.water_m[0]),
-        float(moment.range_rate_m_s[0]),
-    )
-    relative: NDArray[np.float64] = absolute / np.maximum(detail.line_transmission, absolute)
-    return relative
 
 
 def expose(
@@ -220,14 +103,14 @@ def expose_of(seen: Look, chosen: str = "", clock_s: float | None = None) -> Res
     open_s, occasion = _occasion(visit, wanted, clock_s)
     times_s = np.array(SHUTTER_S)
     edges = _edges(seen, np.append(times_s, open_s))
-    header = _header(seen, chosen)
+    header = header_of(seen, chosen)
     for need in wanted:
         header[need.name] = Entry(need.clock_s / 3600.0, "h", text=need.text)
-    header |= _yields(seen, open_s, occasion, *(_exact(seen, edges, open_s)))
+    header |= yields_of(seen, open_s, occasion, *(_exact(seen, edges, open_s)))
     strongest = int(np.argmax(detail.variance_share))
     sentences = [f"{need.text}." for need in wanted]
-    sentences.append(_precision_sentence(seen, open_s, occasion))
-    sentences.append(_limit_sentence(seen, header, occasion))
+    sentences.append(precision_sentence(seen, open_s, occasion))
+    sentences.append(limit_sentence(seen, header, occasion))
     sentences.append(
         f"Most of the noise ({words.percent(float(detail.variance_share[strongest]))}) comes from "
         f"{_SPOKEN[NOISE_SOURCES[strongest]]}."
@@ -313,124 +196,6 @@ def _times_table(seen: Look, open_s: NDArray[np.float64], edges: tuple[list[Edge
             f"SNR {words.short(seen.request.fade.significance)}"
         ),
     )
-
-
-def _yields(seen: Look, open_s: float, occasion: str, coldest: Edge, smallest: Edge) -> dict[str, Entry]:
-    """Return the headline numbers of one time, with their systematic errors."""
-    visit, figure = seen.visit, seen.request.target.figure
-    matrix, snr = visit.yields(open_s), words.short(seen.request.fade.significance)
-    kelvin, percent = _errors(seen, open_s)
-    faintest = edge_words(smallest, "m-2", 3)
-    if smallest.kind != "none":
-        along = float(line_of_sight_column_m2(figure, smallest.value))
-        faintest += f" vertical, {words.quantity(along, 'm-2')} along the line of sight"
-    return {
-        "shutter_time": Entry(open_s / 3600.0, "h", label=f"open shutter {occasion}", digits=3),
-        "snr": Entry(float(visit.snr(open_s)), label=f"SNR {occasion}", digits=3),
-        "temperature_error": Entry(float(temperature_error(matrix)), "K", text=kelvin, label="error of T"),
-        "column_error": Entry(float(column_error(matrix)), text=percent, label="error of N, T free"),
-        "correlation": Entry(float(correlation(matrix)), label="correlation of ln N and T"),
-        "coldest_temperature": Entry(
-            coldest.value, "K", label=f"coldest T at this N, SNR {snr}", text=edge_words(coldest, "K", 4)
-        ),
-        "smallest_column": Entry(
-            smallest.value, "m-2", label=f"smallest N at this T, SNR {snr}", text=faintest
-        ),
-    }
-
-
-def edge_words(edge: Edge, unit: str, digits: int = 3) -> str:
-    """Return the edge of detection in words."""
-    if edge.kind == "none":
-        return f"none up to {words.quantity(edge.high, unit, digits)}"
-    text = words.quantity(edge.value, unit, digits)
-    return f"{text} or less" if edge.kind == "below" else text
-
-
-def _errors(seen: Look, open_s: float) -> tuple[str, str]:
-    """Return the errors of temperature and column (T free) in words, random and systematic."""
-    matrix, fixed = seen.visit.yields(open_s), seen.systematic
-
-    def both(random: float, systematic: float, unit: str) -> str:
-        if not np.isfinite(random):
-            return f"not measured: {_no_temperature(seen)}"
-        first, second = words.quantity(random, unit, 2), words.quantity(systematic, unit, 2)
-        return f"± {first} (random), ± {second} (systematic)"
-
-    return (
-        both(float(temperature_error(matrix)), fixed.temperature_total_k, "K"),
-        both(100.0 * float(column_error(matrix)), 100.0 * fixed.column_total, "%"),
-    )
-
-
-def _no_temperature(seen: Look) -> str:
-    """Return why the temperature is not measured."""
-    if seen.use.instrument.opening.kind == "imager":
-        return "a filter adds all of them up"
-    return "they rise from one upper energy only"
-
-
-def _limit_sentence(seen: Look, header: dict[str, Entry], occasion: str) -> str:
-    snr, state = words.short(seen.request.fade.significance), seen.state
-    given, kelvin = words.quantity(state.column_m2, "m-2"), words.quantity(state.temperature_k, "K")
-    return (
-        f"Detection limits {occasion} (SNR {snr} expected): at a vertical column of {given} the coldest "
-        f"temperature is {header['coldest_temperature']}; at {kelvin} the smallest column is "
-        f"{header['smallest_column']}."
-    )
-
-
-def _precision_sentence(seen: Look, open_s: float, occasion: str) -> str:
-    known = (
-        f"at a given temperature the column has a random error of "
-        f"{words.percent(1.0 / float(seen.visit.snr(open_s)))} and a systematic one of "
-        f"{words.percent(seen.systematic.fixed_total)}"
-    )
-    if not np.isfinite(temperature_error(seen.visit.yields(open_s))):
-        return f"These lines give no temperature: {_no_temperature(seen)}; {known} {occasion}."
-    kelvin, percent = _errors(seen, open_s)
-    return f"Known {occasion}: the temperature to {kelvin}, the column to {percent}; {known}."
-
-
-def _header(seen: Look, chosen: str) -> dict[str, Entry]:
-    track, plan, operation = seen.track, seen.detail.plan, seen.use.instrument.operation
-    beam, figure = seen.moment.beam, seen.request.target.figure
-    on_source = float(plan.shutter_share[0]) * (operation.on_fraction if operation.nod == "off-slit" else 1.0)
-    vertical = words.quantity(seen.state.column_m2, "m-2")
-    along = words.quantity(float(line_of_sight_column_m2(figure, seen.state.column_m2)), "m-2")
-    noise = words.listing(
-        [
-            f"{name} {words.percent(float(part))}"
-            for name, part in zip(NOISE_SOURCES, seen.detail.variance_share, strict=True)
-            if part >= 0.005
-        ]
-    )
-    in_space = not np.isfinite(track.airmass[0])
-    return {
-        "request": Entry(seen.request.name),
-        "instrument": Entry(seen.use.instrument.name),
-        "setting": Entry(seen.use.setting.name),
-        "moment": Entry(seen.when, text=f"{words.moment(seen.when)} ({chosen})"),
-        "conditions": Entry(conditions_words(seen.use, seen.air)),
-        "airmass": Entry(float(track.airmass[0]), text="in space" if in_space else ""),
-        "temperature": Entry(seen.state.temperature_k, "K"),
-        "column": Entry(
-            seen.state.column_m2, "m-2", text=f"{vertical} vertical, {along} along the line of sight"
-        ),
-        "range_rate": Entry(1e-3 * float(track.range_rate_m_s[0]), "km s-1"),
-        "light_share": Entry(float(beam.light_share[0]), label="share of the planet's light in the aperture"),
-        "integration": Entry(float(plan.integration_s[0]), "s"),
-        "coadds": Entry(int(plan.coadds[0]), label="co-adds at one position"),
-        "well_fill": Entry(float(plan.well_fill[0]), digits=2),
-        "on_source_fraction": Entry(on_source, digits=3, label="on-source share of the clock"),
-        "variance": Entry(noise, label="share of the variance"),
-        "systematic_column": Entry(
-            seen.systematic.fixed_total, label="systematic error of N at this T", digits=2
-        ),
-        "systematic_temperature": Entry(
-            seen.systematic.temperature_total_k, "K", digits=2, label="systematic error of T"
-        ),
-    }
 
 
 def _lines_table(detail: Detail) -> Table:

@@ -9,8 +9,8 @@ from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
 
 from coldglow.answers.edges import refined
-from coldglow.answers.expose import Look, look
 from coldglow.answers.jobs import progress
+from coldglow.answers.moment import Look, look
 from coldglow.answers.seasons import COLUMNS, TEMPERATURES, Night, best_night, information_grid
 from coldglow.describe.records import Orbit, Request, Use
 from coldglow.errors import RangeError

@@ -12,13 +12,14 @@ from coldglow.answers.choice import Choice, choose
 from coldglow.answers.chosen import Stretch, asked_for
 from coldglow.answers.compare import compare_of, judge, rivals
 from coldglow.answers.cover import cover_of
-from coldglow.answers.expose import Look, expose_of, look, median_moment
+from coldglow.answers.expose import expose_of
 from coldglow.answers.fade import fade_of
 from coldglow.answers.fading import Fading, fading
 from coldglow.answers.hours import hours_of
+from coldglow.answers.moment import Look, look
 from coldglow.answers.nights import told
 from coldglow.answers.requesting import Plan, Wanted, chances_of, planned, weather_of
-from coldglow.answers.scenes import Also, scenes
+from coldglow.answers.scenes import Also, median_moment, scenes
 from coldglow.answers.standards import Standard, standards_for
 from coldglow.answers.visit import Need, Visit, needs
 from coldglow.describe.records import Request

@@ -7,6 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from coldglow.answers.inputs import NamePath, Quantity, as_target, in_si, place_errors
+from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Target
 from coldglow.light.emission import (
     equilibrium_warnings,
@@ -18,7 +19,6 @@ from coldglow.light.emission import (
     validity_warnings,
 )
 from coldglow.light.lines import lines_in, load_lines
-from coldglow.light.shell import line_of_sight_column_m2
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, column, table
 
@@ -64,7 +64,7 @@ def glow(
     if column_density is None:
         fraction = emission.lte_fraction.value
         shining = emission.column_m2.value * fraction
-        along_m2 = float(line_of_sight_column_m2(record.figure, shining))
+        along_m2 = shining * mean_path_factor(record.figure)
         kind = "along the line of sight, mean over the visible disk"
     else:
         fraction = 1.0

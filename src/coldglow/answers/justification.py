@@ -11,9 +11,9 @@ from coldglow.answers.findings import Exposed, Findings, quickest
 from coldglow.answers.headline import measured, request_entries, span, time_entry
 from coldglow.answers.nightswords import climate_words
 from coldglow.answers.scenes import conditions_words, unseen_words
+from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Orbit
 from coldglow.detect.exposure import NOISE_SOURCES
-from coldglow.light.shell import line_of_sight_column_m2
 from coldglow.plan.goal import column_error, temperature_error
 from coldglow.report import words
 from coldglow.report.proposal import Justification
@@ -59,7 +59,7 @@ def _state(found: Findings) -> str:
     emission, cooling = emission_of(found.request), target.cooling
     kelvin = words.with_error(emission.temperature_k.value, emission.temperature_k.uncertainty, "K")
     column = words.with_error(emission.column_m2.value, emission.column_m2.uncertainty, "m-2")
-    along = words.quantity(float(line_of_sight_column_m2(target.figure, emission.column_m2.value)), "m-2", 2)
+    along = words.quantity(emission.column_m2.value * mean_path_factor(target.figure), "m-2", 2)
     then = target.emission.temperature_k.value
     law = ""
     if abs(then - emission.temperature_k.value) >= 1.0:

@@ -79,9 +79,7 @@ def within_budget(plan: Plan) -> bool:
         return False
     budget, chosen = plan.request.budget, plan.order[: plan.chosen + 1]
     hours = float(plan.offers.observable_s[chosen].sum()) / 3600.0
-    return (budget.nights is None or plan.nights_until(plan.chosen) <= budget.nights + 1e-9) and (
-        budget.hours is None or hours <= budget.hours + 1e-9
-    )
+    return budget.allows(plan.nights_until(plan.chosen), hours)
 
 
 def sentences_of(plan: Plan, choice: Choice | None) -> list[str]:

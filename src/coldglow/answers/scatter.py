@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.offers import Offers
-from coldglow.answers.scenes import information_rate
+from coldglow.answers.scenes import median_moment
 from coldglow.describe.records import Orbit, Quartiles, Request
 from coldglow.plan.goal import marginalise
 from coldglow.plan.nights import scatter_factors
@@ -35,10 +35,7 @@ class Response:
 
 def response_of(request: Request, scene: Scenario) -> Response:
     """Return how the information of a scene changes with the ionosphere and with the air."""
-    index = np.flatnonzero(scene.usable)
-    rates = information_rate(scene)[index]
-    middle = int(index[np.argsort(rates, kind="stable")[(index.size - 1) // 2]])
-    track = scene.track.take([middle])
+    track = scene.track.take([median_moment(scene)])
 
     def rate(state: State, air: Air) -> float:
         seen = expose_sight(sight(request, scene.use, track, air), state)

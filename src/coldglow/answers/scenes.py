@@ -82,6 +82,13 @@ def information_rate(scene: Scenario) -> NDArray[np.float64]:
     return rate
 
 
+def median_moment(scene: Scenario) -> int:
+    """Return the usable step whose information rate is the median of all usable ones."""
+    index = np.flatnonzero(scene.usable)
+    rate = information_rate(scene)[index]
+    return int(index[np.argsort(rate, kind="stable")[(index.size - 1) // 2]])
+
+
 def hour_snr(scene: Scenario) -> NDArray[np.float64]:
     """Return the SNR that one hour on the clock at each step would bring, floors applied, ndarray[time]."""
     operation, share = scene.use.instrument.operation, scene.steps.shutter_share

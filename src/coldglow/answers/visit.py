@@ -17,8 +17,8 @@ from coldglow.plan.goal import (
     demanded_information,
     marginalise,
     required_snr,
+    snr,
     temperature_error,
-    with_floor,
     without_floor,
 )
 from coldglow.report import words
@@ -44,8 +44,7 @@ class Visit:
 
     def snr(self, open_s: ArrayLike) -> Array:
         """Return SNR = 1/sigma(ln N) at fixed temperature, floors applied."""
-        visit = with_floor(self.yields(open_s)[..., 0, 0], self.operation.visit_floor)
-        return np.asarray(np.sqrt(with_floor(visit, self.operation.common_floor)))
+        return snr(self.yields(open_s)[..., 0, 0], self.operation.visit_floor, self.operation.common_floor)
 
     def clock_s(self, open_s: ArrayLike) -> Array:
         """Return the time on the clock, overheads included."""

@@ -18,21 +18,21 @@ import math
 from coldglow.describe.records import Estimate, Figure
 
 
-def mean_path_factor(radius_m: float, shell_height_m: float) -> float:
+def mean_path_factor(figure: Figure) -> float:
     """Return mean line-of-sight column over vertical column (2 for a shell without height)."""
-    ratio = radius_m / (radius_m + shell_height_m)
+    ratio = figure.equatorial_radius_m / (figure.equatorial_radius_m + figure.shell_height_m)
     return 2 / ratio**2 * (1 + math.sqrt(1 - ratio**2))
 
 
 def vertical_column(line_of_sight: Estimate, figure: Figure) -> Estimate:
     """Return the vertical column of a line-of-sight column (mean over the visible disk)."""
-    factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
-    return Estimate(
-        line_of_sight.value / factor, line_of_sight.uncertainty / factor, line_of_sight.scatter / factor
-    )
+    return _times(line_of_sight, 1.0 / mean_path_factor(figure))
 
 
 def line_of_sight_column(vertical: Estimate, figure: Figure) -> Estimate:
     """Return the line-of-sight column (mean over the visible disk) of a vertical column."""
-    factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
-    return Estimate(vertical.value * factor, vertical.uncertainty * factor, vertical.scatter * factor)
+    return _times(vertical, mean_path_factor(figure))
+
+
+def _times(estimate: Estimate, factor: float) -> Estimate:
+    return Estimate(estimate.value * factor, estimate.uncertainty * factor, estimate.scatter * factor)

@@ -279,6 +279,11 @@ class Setting:
     continuum_prior: float  # relative 1-sigma prior on the continuum level; inf = none
     source: str
 
+    @property
+    def middle_m(self) -> float:
+        """Middle of the band, at which the blur of the image is taken."""
+        return 0.5 * (self.band_m[0] + self.band_m[1])
+
 
 @dataclass(frozen=True, slots=True)
 class Detector:
@@ -422,6 +427,12 @@ class Budget:
 
     nights: float | None
     hours: float | None
+
+    def allows(self, nights: float, hours: float) -> bool:
+        """Return whether so many nights, with so many hours in them, stay within the budget."""
+        return (self.nights is None or nights <= self.nights + 1e-9) and (
+            self.hours is None or hours <= self.hours + 1e-9
+        )
 
 
 @dataclass(frozen=True, slots=True)

@@ -109,10 +109,9 @@ def _look(
 ) -> Beam:
     """Return the beam at each geometry, one by one."""
     system = spot_system(target, track)
-    middle_m = 0.5 * (setting.band_m[0] + setting.band_m[1])
 
     def spread(airmass: float) -> PointSpread:
-        return point_spread(instrument.image, instrument.telescope, middle_m, seeing_rad, airmass)
+        return point_spread(instrument.image, instrument.telescope, setting.middle_m, seeing_rad, airmass)
 
     @lru_cache(maxsize=256)  # the same points serve every airmass
     def points(latitude_rad: float, longitude_rad: float, spacing: float) -> ShellPoints:

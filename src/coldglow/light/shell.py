@@ -23,7 +23,6 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Figure, LongitudeSystem, Spot
 from coldglow.errors import RangeError
 from coldglow.sky.orientation import planetocentric_rad
@@ -273,9 +272,3 @@ def path_factor(figure: Figure, sub_observer_latitude_rad: float) -> float:
     """
     view = view_of(figure, sub_observer_latitude_rad)
     return float(uniform_points(view)[2].sum() / (np.pi * view.outline_pole))
-
-
-def line_of_sight_column_m2(figure: Figure, vertical_column_m2: ArrayLike) -> Floats:
-    """Return the mean column over the visible disk of an even shell of given vertical column (sphere)."""
-    factor = mean_path_factor(figure.equatorial_radius_m, figure.shell_height_m)
-    return np.asarray(vertical_column_m2, dtype=np.float64) * factor

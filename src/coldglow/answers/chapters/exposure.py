@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.expose import Look
 from coldglow.answers.findings import Exposed
+from coldglow.answers.moment import Look
 from coldglow.detect.beam import Disk, point_spread, slit_angle
 from coldglow.detect.season import longitude_for_spots_rad, spot_system
 from coldglow.light.shell import view_of
