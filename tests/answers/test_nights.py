@@ -75,6 +75,22 @@ def test_a_goal_too_deep_is_said_to_be():
 # ---------------------------------------------------------------- coverage
 
 
+def test_insurance_keeps_apart_from_the_clouds_of_the_best_night():
+    asked = request("jupiter-ovals", "2027-03-01", "2027-03-20", clear_fraction=0.7, correlation=0.3)
+    asked = replace(asked, weather=replace(asked.weather, probability=0.905))
+    asked = replace(asked, dates=replace(asked.dates, unit="night"))
+    asked = replace(asked, coverage=replace(asked.coverage, candidates="night"))
+    result = nights(asked)
+    # every night reaches the goal: two of the same weather 1 - 0.3 (0.3 + 0.7 x 0.3^d), d days apart
+    assert result.header["nights"].value == 2.0
+    assert any("1 night of it insures against the weather" in sentence for sentence in result.sentences)
+    first, second = (np.datetime64(day) for day in result.table("requested")["night"])
+    apart = int((second - first) / np.timedelta64(1, "D"))
+    expected = 1.0 - 0.3 * (0.3 + 0.7 * 0.3**apart)
+    assert result["probability"][1] == pytest.approx(expected, abs=1e-9)
+    assert expected > 0.905 > 1.0 - 0.3 * (0.3 + 0.7 * 0.3**2)
+
+
 def test_one_night_is_not_spoken_of_as_many():
     result = nights(request(first="2028-10-01", last="2028-10-01"))
     assert result.sentences[0].startswith("1 night reaches SNR 5 with a probability of only 0 %")

@@ -114,9 +114,10 @@ def _answer(plan: Plan) -> Iterator[str]:
     )
     if plan.needed and plan.needed - 1 < plan.chosen:
         extra = float(chances.cost[plan.chosen] - chances.cost[plan.needed - 1])
+        price = given.price(extra)
         yield (
-            f"If every night were clear, {asked_words(plan, plan.needed - 1)} would do; "
-            f"{given.price(extra)} of it insure against the weather."
+            f"If every night were clear, {asked_words(plan, plan.needed - 1)} would do; {price} of it "
+            f"{'insures' if price == '1 night' else 'insure'} against the weather."
         )
     if not within_budget(plan):
         budget = request.budget

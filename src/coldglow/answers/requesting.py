@@ -154,6 +154,12 @@ def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
         place = other.smallest(request.weather.probability)
         if place is not None and other.cost[place] <= chances.cost[chosen]:
             order, chances, chosen, method = again, other, place, how
+    if choice is None and chosen is not None and weather.correlation > 0.0:
+        again = _apart(given, goals, order, weather, factors, max(_needed(goals, order), fixed.size), chosen)
+        other = chances_of(goals, given, again, weather, factors)
+        place = other.smallest(request.weather.probability)
+        if place is not None and other.cost[place] < chances.cost[chosen]:
+            order, chances, chosen = again, other, place
     return Plan(
         request,
         given,
@@ -186,9 +192,37 @@ def _with_insurance(
         cover.chosen,
         given.weather_day,
         factors,
-        enough=min(request.weather.probability + SPARE, CERTAIN),
+        enough=min(request.weather.probability + SPARE, CERTAIN) if cost_max is None else np.inf,
     )
     return np.concatenate((cover.chosen, found.added)), found.method
+
+
+def _apart(
+    given: Offers,
+    goals: Sequence[Wanted],
+    order: Index,
+    weather: Weather,
+    factors: Array | None,
+    size: int,
+    chosen: int,
+) -> Index:
+    """Return an order that begins with so many of the first and goes on with the best against the weather.
+
+    The best nights often follow one another and share their clouds; a slightly worse one some days away may
+    be the better insurance.
+    """
+    base = order[:size]
+    found = robust_set(
+        given.candidates(),
+        goals[0].gain,
+        goals[0].demand,
+        Rules(cost_max=float(given.cost[order[: chosen + 1]].sum())),
+        weather,
+        base,
+        given.weather_day,
+        factors,
+    )
+    return preference(given, np.concatenate((base, found.added)))
 
 
 def chances_of(
