@@ -25,7 +25,7 @@ from coldglow.describe.records import (
     Target,
     Use,
 )
-from coldglow.detect.exposure import Exposure, Moments, expose_moments
+from coldglow.detect.exposure import Exposure, Glow, Moments, expose_moments
 from coldglow.detect.integration import visit_overhead_s
 from coldglow.detect.season import beams
 from coldglow.light.atmosphere import Atmosphere, load_atmosphere
@@ -181,16 +181,18 @@ def sight(request: Request, use: Use, track: Track, air: Air | None = None) -> S
     return Sight(target, use, air, request.goal.lines, track, usable, chosen, moments, air_over(instrument))
 
 
+def glow_in(target: Target, state: State) -> Glow:
+    """Return what shines when the ionosphere of a target is in some state."""
+    return Glow(load_lines(), state.temperature_k, state.shining_m2, target.continuum)
+
+
 def expose_sight(seen: Sight, state: State) -> Exposure | None:
     """Return the information at the moments of a sight in some state of the ionosphere."""
     if seen.moments is None:
         return None
     return expose_moments(
         seen.moments,
-        load_lines(),
-        state.temperature_k,
-        state.shining_m2,
-        seen.target.continuum,
+        glow_in(seen.target, state),
         seen.atmosphere,
         seen.use.instrument,
         seen.use.setting,

@@ -11,6 +11,7 @@ from scipy.constants import c, h, k
 from scipy.integrate import quad
 
 from coldglow.detect.beam import Beam
+from coldglow.detect.bench import Glow
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import nod_noise
@@ -56,7 +57,7 @@ def test_snr_of_one_integration_is_that_of_the_ccd_equation(make):
     """Howell 1989, PASP 101, 616, as in the library: source, sky, dark and read noise of n pixels."""
     made = camera(make)
     moments = make.moments_of(made, beam=box())
-    exposure = expose_moments(moments, LINES, 600.0, 3e15, make.dark, None, made, made.settings[0])
+    exposure = expose_moments(moments, Glow(LINES, 600.0, 3e15, make.dark), None, made, made.settings[0])
     t = exposure.integration_s[0]
     # by hand, from Planck's law and the line list
     etendue = math.pi / 4 * 4.0**2 * (1 - 0.2**2) * 49 * (0.2 * ARCSEC) ** 2
@@ -81,7 +82,7 @@ def test_on_band_and_off_band_by_hand(make):
     off = (3.90e-6, 3.901e-6)  # between lines of any strength
     made = camera(make, off_band_m=off, on_band_share=0.6, continuum_prior=math.inf)
     moments = make.moments_of(made, beam=box())
-    detail = expose_one(moments, LINES, 600.0, 3e15, make.grey, None, made, made.settings[0])
+    detail = expose_one(moments, Glow(LINES, 600.0, 3e15, make.grey), None, made, made.settings[0])
     t = 3600.0
     snr = math.sqrt(marginalise(detail.matrix * t)[0, 0])
     # N = on - r * off, r the ratio of the widths in continuum photons; variances of the two rates
@@ -95,7 +96,11 @@ def test_one_band_alone_is_refused(make):
     made = camera(make, continuum_prior=math.inf)
     with pytest.raises(RangeError, match="cannot tell lines from continuum") as caught:
         expose_moments(
-            make.moments_of(made, beam=box()), LINES, 600.0, 1e15, make.grey, None, made, made.settings[0]
+            make.moments_of(made, beam=box()),
+            Glow(LINES, 600.0, 1e15, make.grey),
+            None,
+            made,
+            made.settings[0],
         )
     assert caught.value.key == "settings.L.off_band"
 
@@ -103,14 +108,21 @@ def test_one_band_alone_is_refused(make):
 def test_no_line_in_the_setting(make):
     made = make.instrument("space", settings={"band_m": (4.00012e-6, 4.00025e-6)})
     with pytest.raises(RangeError, match="no line"):
-        expose_moments(make.moments_of(made), LINES, 600.0, 1e15, make.grey, None, made, made.settings[0])
+        expose_moments(
+            make.moments_of(made), Glow(LINES, 600.0, 1e15, make.grey), None, made, made.settings[0]
+        )
 
 
 def test_a_goal_line_outside_the_setting(make):
     made = make.instrument("space")
     with pytest.raises(NotFoundError, match=r"Q\(1,5\)"):
         expose_moments(
-            make.moments_of(made), LINES, 600.0, 1e15, make.grey, None, made, made.settings[0], ("Q(1,5)",)
+            make.moments_of(made),
+            Glow(LINES, 600.0, 1e15, make.grey),
+            None,
+            made,
+            made.settings[0],
+            ("Q(1,5)",),
         )
 
 
@@ -141,7 +153,7 @@ def test_nod_patterns_as_simulated(make, nod, fraction, rows):
 
 def test_the_parts_of_the_variance_make_the_whole(make):
     made = make.instrument("ifu", detector={"sampling": "ramp", "reads": 10})
-    one = expose_one(make.moments_of(made), LINES, 700.0, 1e16, make.grey, None, made, made.settings[0])
+    one = expose_one(make.moments_of(made), Glow(LINES, 700.0, 1e16, make.grey), None, made, made.settings[0])
     factor = 6 * 101 / (5 * 10 * 11)
     expected = 0.5 * factor * (one.line_e_s + one.continuum_e_s) + 1.0 * (
         factor * (one.sky_e_s + one.telescope_e_s + one.dark_e_s) + one.readout_e2_s
@@ -156,9 +168,9 @@ def test_more_ions_never_lower_the_snr(make, scale):
     made = make.instrument("ifu")
     moments = make.moments_of(made)
     low, high = (
-        marginalise(expose_moments(moments, LINES, 550.0, n, make.grey, None, made, made.settings[0]).matrix)[
-            0, 0, 0
-        ]
+        marginalise(
+            expose_moments(moments, Glow(LINES, 550.0, n, make.grey), None, made, made.settings[0]).matrix
+        )[0, 0, 0]
         for n in (1e15, 1e15 * scale)
     )
     assert high > low
@@ -172,9 +184,9 @@ def test_warmer_is_brighter_below_1000_k(make, cold, step):
     made = make.instrument("ifu")
     moments = make.moments_of(made)
     low, high = (
-        marginalise(expose_moments(moments, LINES, t, 1e15, make.grey, None, made, made.settings[0]).matrix)[
-            0, 0, 0
-        ]
+        marginalise(
+            expose_moments(moments, Glow(LINES, t, 1e15, make.grey), None, made, made.settings[0]).matrix
+        )[0, 0, 0]
         for t in (cold, min(cold + step, 1000.0))
     )
     assert high > low
@@ -183,7 +195,7 @@ def test_warmer_is_brighter_below_1000_k(make, cold, step):
 def test_snr_grows_with_the_root_of_the_time_and_halves_add(make):
     made = make.instrument("ifu")
     moments = make.moments_of(made, range_rate_m_s=(-20e3, 1e3, 15e3))
-    exposure = expose_moments(moments, LINES, 550.0, 1e15, make.grey, None, made, made.settings[0])
+    exposure = expose_moments(moments, Glow(LINES, 550.0, 1e15, make.grey), None, made, made.settings[0])
     whole = (exposure.matrix * 600.0).sum(axis=0)
     halves = (exposure.matrix * 300.0).sum(axis=0) + (exposure.matrix * 300.0).sum(axis=0)
     assert halves == pytest.approx(whole, rel=1e-12)
@@ -194,7 +206,7 @@ def test_snr_grows_with_the_root_of_the_time_and_halves_add(make):
 def test_an_imager_tells_no_temperature_whatever_its_lines(make):
     made = camera(make, band_m=(3.4e-6, 4.0e-6))
     moments = make.moments_of(made, beam=box())
-    detail = expose_one(moments, LINES, 600.0, 3e15, make.grey, None, made, made.settings[0])
+    detail = expose_one(moments, Glow(LINES, 600.0, 3e15, make.grey), None, made, made.settings[0])
     assert len(detail.lines) > 10
     assert detail.temperature_share == pytest.approx(0.0)
     assert temperature_error(marginalise(detail.matrix * 3600.0 + detail.prior)) == math.inf

@@ -7,6 +7,7 @@ import pytest
 from scipy.constants import c, h, k
 from scipy.stats import norm
 
+from coldglow.detect.bench import Glow
 from coldglow.detect.detail import expose_one, temperature_shares
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import CONTINUUM_UNIT
@@ -122,7 +123,7 @@ def test_scatter_of_estimates_is_what_the_matrix_says(make, case):
     kind, setting, goal, free, seconds, column = CASES[case]
     made = make.instrument(kind, settings=setting, detector={"full_well_e": 1e9})
     moments = make.moments_of(made, range_rate_m_s=(6e3,))
-    detail = expose_one(moments, LINES, 600.0, column, make.grey, AIR, made, made.settings[0], goal)
+    detail = expose_one(moments, Glow(LINES, 600.0, column, make.grey), AIR, made, made.settings[0], goal)
     estimates = simulated_estimates(made, moments, detail, 600.0, seconds, free, np.random.default_rng(20))
     matrix = detail.matrix * seconds
     promised = np.linalg.inv(matrix[np.ix_(free, free)])
@@ -150,7 +151,9 @@ def test_two_line_thermometer(make):
     pair = ("Q(1,0)", "Q(3,0)")
 
     def matrix(*names):
-        exposure = expose_moments(moments, LINES, 600.0, 1e14, make.grey, AIR, made, made.settings[0], names)
+        exposure = expose_moments(
+            moments, Glow(LINES, 600.0, 1e14, make.grey), AIR, made, made.settings[0], names
+        )
         return exposure.matrix[0, :2, :2]  # continuum and zero known
 
     snr = [math.sqrt(matrix(name)[0, 0]) for name in pair]
@@ -163,7 +166,7 @@ def test_one_line_gives_no_temperature(make):
     made = make.instrument()
     moments = make.moments_of(made)
     exposure = expose_moments(
-        moments, LINES, 600.0, 1e15, make.grey, AIR, made, made.settings[0], ("Q(1,0)",)
+        moments, Glow(LINES, 600.0, 1e15, make.grey), AIR, made, made.settings[0], ("Q(1,0)",)
     )
     rest = marginalise(exposure.matrix[0] * 3600.0)
     assert rest[0, 0] > 0.0
@@ -174,7 +177,7 @@ def test_one_line_gives_no_temperature(make):
 def test_shares_of_the_temperature_information(make):
     made = make.instrument("ifu", settings={"resolving_power": 60000.0}, detector={"full_well_e": 1e9})
     moments = make.moments_of(made)
-    detail = expose_one(moments, LINES, 600.0, 1e14, make.grey, AIR, made, made.settings[0])
+    detail = expose_one(moments, Glow(LINES, 600.0, 1e14, make.grey), AIR, made, made.settings[0])
     assert detail.temperature_share.sum() == pytest.approx(1.0)
     # what the shares are shares of: the information on T when N is free and the rest known
     slope, weight = detail.temperature_slope, detail.line_information

@@ -13,6 +13,7 @@ from scipy.constants import c, h, k
 from scipy.signal import fftconvolve
 
 from coldglow.detect import bench
+from coldglow.detect.bench import Glow
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import CONTINUUM_UNIT
@@ -106,7 +107,7 @@ def test_information_as_simulated(make, case):
     moments = make.moments_of(made, airmass=(airmass,), range_rate_m_s=(rate,), latitude_rad=0.2)
     derivatives, variance = simulate(made, moments, 600.0, column, 1e-4, AIR)
     expected = (derivatives / variance) @ derivatives.T
-    arguments = (LINES, 600.0, column, make.grey, AIR, made, made.settings[0])
+    arguments = (Glow(LINES, 600.0, column, make.grey), AIR, made, made.settings[0])
     exact = expose_one(moments, *arguments)
     assert exact.plan.integration_s[0] == 120.0
     fast = expose_moments(moments, *arguments)
@@ -130,7 +131,7 @@ def test_the_fast_path_is_the_slow_one(make, monkeypatch):
     moments = make.moments_of(
         made, airmass=rng.uniform(1.0, 2.0, 25), range_rate_m_s=rng.uniform(-30e3, 30e3, 25), latitude_rad=0.2
     )
-    arguments = (LINES, 550.0, 1e15, make.grey, AIR, made, made.settings[0])
+    arguments = (Glow(LINES, 550.0, 1e15, make.grey), AIR, made, made.settings[0])
     fast = marginalise(expose_moments(moments, *arguments).matrix)
     monkeypatch.setattr(bench, "LINES_KEPT", 1.0)
     slow = np.array(
@@ -150,7 +151,7 @@ def test_dropped_lines_carry_a_thousandth_of_the_information(make, monkeypatch):
             settings={"resolving_power": power, "band_m": band}, detector={"full_well_e": 1e12}
         )
         moments = make.moments_of(made, airmass=(1.0,), range_rate_m_s=(8e3,))
-        arguments = (LINES, 500.0, 1e14, make.grey, AIR, made, made.settings[0])
+        arguments = (Glow(LINES, 500.0, 1e14, make.grey), AIR, made, made.settings[0])
         part = expose_one(moments, *arguments)
         with monkeypatch.context() as patch:
             patch.setattr(bench, "LINES_KEPT", 1.0)
@@ -163,7 +164,7 @@ def test_dropped_lines_carry_a_thousandth_of_the_information(make, monkeypatch):
 def test_an_array_of_moments_is_each_of_them(make):
     made = make.instrument("ifu", detector={"full_well_e": 1e9})
     moments = make.moments_of(made, airmass=(1.3, 1.3), range_rate_m_s=(4e3, -9e3))
-    arguments = (LINES, 500.0, 1e15, make.grey, AIR, made, made.settings[0])
+    arguments = (Glow(LINES, 500.0, 1e15, make.grey), AIR, made, made.settings[0])
     both = expose_moments(moments, *arguments)
     for i in range(2):
         one = expose_moments(moments.take(slice(i, i + 1)), *arguments)
@@ -175,7 +176,9 @@ def test_a_line_under_a_telluric_one_loses(make):
     """The same line, moved over the telluric structure by the Earth's motion."""
     made = make.instrument(settings={"band_m": (3.40e-6, 3.48e-6)}, detector={"full_well_e": 1e9})
     moments = make.moments_of(made, airmass=np.full(61, 1.5), range_rate_m_s=np.linspace(-30e3, 30e3, 61))
-    found = expose_moments(moments, LINES, 600.0, 1e15, make.grey, AIR, made, made.settings[0], ("R(3,3)u",))
+    found = expose_moments(
+        moments, Glow(LINES, 600.0, 1e15, make.grey), AIR, made, made.settings[0], ("R(3,3)u",)
+    )
     snr = np.sqrt(marginalise(found.matrix)[:, 0, 0])
     order = np.argsort(found.line_transmission)
     assert found.line_transmission[order[-1]] > 1.3 * found.line_transmission[order[0]]
@@ -185,7 +188,7 @@ def test_a_line_under_a_telluric_one_loses(make):
 def test_other_lines_are_light_without_information(make):
     made = make.instrument("ifu", detector={"full_well_e": 1e9})
     moments = make.moments_of(made)
-    arguments = (LINES, 600.0, 1e17, make.grey, AIR, made, made.settings[0])
+    arguments = (Glow(LINES, 600.0, 1e17, make.grey), AIR, made, made.settings[0])
     every, one = expose_moments(moments, *arguments), expose_moments(moments, *arguments, ("Q(1,0)",))
     assert one.signal_e_s[0] < every.signal_e_s[0]
     assert one.matrix[0, 0, 0] < every.matrix[0, 0, 0]

@@ -8,6 +8,7 @@ from scipy.constants import c
 
 from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Figure
+from coldglow.detect.bench import Glow
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.systematics import systematic_errors
@@ -44,7 +45,7 @@ def test_limit_on_neptune_in_2017(make):
     )
     column = 1e12  # far below the limit: the noise is that of the empty sky
     exposure = expose_moments(
-        moments, LINES, 550.0, column, make.grey, load_atmosphere(4200.0), made, made.settings[0]
+        moments, Glow(LINES, 550.0, column, make.grey), load_atmosphere(4200.0), made, made.settings[0]
     )
     visit = marginalise(exposure.matrix.mean(axis=0) * 15.4 * 3600.0)
     vertical = column / float(snr(visit[0, 0]))
@@ -91,7 +92,7 @@ def test_a_space_ifu_measures_the_temperature_of_uranus(make):
         operation={"nod": "off-slit", "on_fraction": 0.5, "nod_time_s": 500.0},
     )
     moments = make.moments_of(made, latitude_rad=0.9)
-    detail = expose_one(moments, LINES, 430.0, 1e15, make.grey, None, made, made.settings[0])
+    detail = expose_one(moments, Glow(LINES, 430.0, 1e15, make.grey), None, made, made.settings[0])
     random_k = float(temperature_error(marginalise(detail.matrix * 1000.0 / 0.5)))
     systematic = systematic_errors(
         detail.lines.wavelength_m,

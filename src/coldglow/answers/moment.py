@@ -14,8 +14,7 @@ from coldglow.detect.exposure import Exposure, Moments, expose_moments
 from coldglow.detect.integration import Integrations
 from coldglow.detect.systematics import SystematicErrors, systematic_errors
 from coldglow.light.atmosphere import transmission_error
-from coldglow.light.lines import load_lines
-from coldglow.scenario import Air, State, air_of, air_over, moments_of, state_of
+from coldglow.scenario import Air, State, air_of, air_over, glow_in, moments_of, state_of
 from coldglow.sky.clock import iso_from_tt
 from coldglow.sky.track import Track
 
@@ -54,13 +53,10 @@ class Look:
 
     def visit_in(self, temperature_k: float, column_m2: float) -> Visit:
         """Return the visit in another state of the ionosphere."""
-        target, instrument = self.request.target, self.use.instrument
+        instrument = self.use.instrument
         exposure = expose_moments(
             self.moment,
-            load_lines(),
-            temperature_k,
-            column_m2 * self.state.lte_fraction,
-            target.continuum,
+            glow_in(self.request.target, State(temperature_k, column_m2, self.state.lte_fraction)),
             air_over(instrument),
             instrument,
             self.use.setting,
@@ -77,10 +73,7 @@ def look(request: Request, use: Use, track: Track) -> Look:
     moment = moments_of(target, instrument, use.setting, track, air)
     detail = expose_one(
         moment,
-        load_lines(),
-        state.temperature_k,
-        state.shining_m2,
-        target.continuum,
+        glow_in(target, state),
         air_over(instrument),
         instrument,
         use.setting,

@@ -52,6 +52,19 @@ class Moments:
 
 
 @dataclass(frozen=True, slots=True)
+class Glow:
+    """What shines: ions in a state, and the target's continuum under their lines.
+
+    `column_m2` is the mean *vertical* column of ions in local equilibrium.
+    """
+
+    lines: LineList
+    temperature_k: float
+    column_m2: float
+    continuum: Continuum
+
+
+@dataclass(frozen=True, slots=True)
 class Bench:
     """All that stays the same from moment to moment: pixels, table, lines kept and what they emit.
 
@@ -96,23 +109,20 @@ def goal_mask(lines: LineList, goal_lines: tuple[str, ...]) -> np.ndarray:
 
 def set_up(
     moments: Moments,
-    lines: LineList,
-    temperature_k: float,
-    column_m2: float,
-    continuum: Continuum,
+    glow: Glow,
     atmosphere: Atmosphere | None,
     instrument: Instrument,
     setting: Setting,
     goal_lines: tuple[str, ...] = (),
 ) -> Bench:
     """Prepare a setting for some moments; arguments as in `expose_moments`."""
-    pixels = make_pixels(setting)
+    lines, pixels = glow.lines, make_pixels(setting)
     table = pixel_table(
         instrument,
         setting,
         pixels,
         atmosphere,
-        continuum,
+        glow.continuum,
         moments.airmass,
         moments.water_m,
         float(np.median(moments.sun_distance_m)),
@@ -129,8 +139,8 @@ def set_up(
             "settings.band",
         )
     wanted = goal_mask(band, goal_lines)
-    radiance = photon_radiance_s_m2_sr(band, temperature_k, 1.0)
-    slope = log_temperature_slope(band, temperature_k)
+    radiance = photon_radiance_s_m2_sr(band, glow.temperature_k, 1.0)
+    slope = log_temperature_slope(band, glow.temperature_k)
     kept = _lines_that_count(band, radiance, slope, pixels, table) | (wanted if goal_lines else False)
     band = band.take(kept)
     nod, factor = nod_noise(instrument.operation), photon_variance_factor(instrument.detector)
@@ -145,8 +155,8 @@ def set_up(
         radiance[kept],
         slope[kept],
         wanted[kept].astype(float),
-        column_m2,
-        float(thermal_sigma_m_s(temperature_k)),
+        glow.column_m2,
+        float(thermal_sigma_m_s(glow.temperature_k)),
         nod,
         np.concatenate([table.continuum, table.sky, table.telescope[None, :], ones]),
         np.array([1] * nodes + [2] * nodes + [3, 4, 5]),

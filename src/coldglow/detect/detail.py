@@ -6,8 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from coldglow.describe.records import Continuum, Instrument, Setting
-from coldglow.detect.bench import NOISE_SOURCES, Moments, set_up
+from coldglow.describe.records import Instrument, Setting
+from coldglow.detect.bench import NOISE_SOURCES, Glow, Moments, set_up
 from coldglow.detect.counts import count, line_rates, variance_shares
 from coldglow.detect.exposure import continuum_prior
 from coldglow.detect.information import fisher
@@ -72,10 +72,7 @@ def temperature_shares(information: np.ndarray, slope: np.ndarray) -> np.ndarray
 
 def expose_one(
     moment: Moments,
-    lines: LineList,
-    temperature_k: float,
-    column_m2: float,
-    continuum: Continuum,
+    glow: Glow,
     atmosphere: Atmosphere | None,
     instrument: Instrument,
     setting: Setting,
@@ -85,9 +82,7 @@ def expose_one(
 
     `moment` holds arrays of length 1.
     """
-    bench = set_up(
-        moment, lines, temperature_k, column_m2, continuum, atmosphere, instrument, setting, goal_lines
-    )
+    bench = set_up(moment, glow, atmosphere, instrument, setting, goal_lines)
     prior = continuum_prior(bench, moment)
     rates, clear = line_rates(bench, moment)
     velocity = float(moment.range_rate_m_s[0] + moment.beam.velocity_m_s[0])

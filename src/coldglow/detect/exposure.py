@@ -13,9 +13,9 @@ from dataclasses import dataclass, fields
 import numpy as np
 from scipy.constants import c as LIGHT_M_S
 
-from coldglow.describe.records import Continuum, Instrument, Setting
+from coldglow.describe.records import Instrument, Setting
 from coldglow.detect.background import collecting_area_m2
-from coldglow.detect.bench import NOISE_SOURCES, Bench, Moments, set_up
+from coldglow.detect.bench import NOISE_SOURCES, Bench, Glow, Moments, set_up
 from coldglow.detect.counts import count, line_rates, variance_shares
 from coldglow.detect.information import CONTINUUM_UNIT, fisher
 from coldglow.detect.integration import (
@@ -27,9 +27,8 @@ from coldglow.detect.integration import (
 from coldglow.detect.pixels import line_windows, profile_sigma
 from coldglow.errors import RangeError
 from coldglow.light.atmosphere import Atmosphere
-from coldglow.light.lines import LineList
 
-__all__ = ["NOISE_SOURCES", "Exposure", "Moments", "continuum_prior", "expose_moments"]
+__all__ = ["NOISE_SOURCES", "Exposure", "Glow", "Moments", "continuum_prior", "expose_moments"]
 
 VELOCITY_STEP = 0.25  # of a pixel: moments closer in velocity than this share the places of their lines
 WIDTH_STEP = 0.05  # of ln(width): the same for the width of the lines
@@ -93,10 +92,7 @@ def continuum_prior(bench: Bench, moments: Moments) -> np.ndarray:
 
 def expose_moments(
     moments: Moments,
-    lines: LineList,
-    temperature_k: float,
-    column_m2: float,
-    continuum: Continuum,
+    glow: Glow,
     atmosphere: Atmosphere | None,
     instrument: Instrument,
     setting: Setting,
@@ -106,10 +102,7 @@ def expose_moments(
 
     Args:
         moments: conditions; only moments at which the target is up.
-        lines: the line list.
-        temperature_k: of the ions.
-        column_m2: mean *vertical* column of ions in local equilibrium.
-        continuum: of the target.
+        glow: what shines.
         atmosphere: above the site; None in space.
         instrument: the instrument.
         setting: one of its settings.
@@ -122,9 +115,7 @@ def expose_moments(
         NotFoundError: a goal line that the setting does not hold.
 
     """
-    bench = set_up(
-        moments, lines, temperature_k, column_m2, continuum, atmosphere, instrument, setting, goal_lines
-    )
+    bench = set_up(moments, glow, atmosphere, instrument, setting, goal_lines)
     prior = continuum_prior(bench, moments)
     rates, clear = line_rates(bench, moments)
     level = _continuum_of_pixels(bench, moments)

@@ -15,7 +15,6 @@ from coldglow.errors import RangeError
 from coldglow.plan.goal import demanded_information, with_floor
 
 Floats = NDArray[np.float64]
-Bools = NDArray[np.bool_]
 
 NEGLIGIBLE = 1e-20  # keeps the logarithm finite; an SNR of 1e-10 in a night counts as none
 INTERVAL = (0.15865525393145707, 0.5, 0.8413447460685429)  # -1 sigma, median, +1 sigma of a normal

@@ -48,10 +48,8 @@ def write_result(result: Findings, path: Path, table: str = "") -> Path:
 def write_text(path: Path, text: str) -> None:
     """Write a text file whole or not at all.
 
-    Raises
-    ------
-    OutputError
-        The folder is missing or the place cannot be written.
+    Raises:
+        OutputError: The folder is missing or the place cannot be written.
 
     """
     try:

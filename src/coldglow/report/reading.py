@@ -20,10 +20,8 @@ _DTYPES = {"float": np.float64, "integer": np.int64, "boolean": np.bool_, "text"
 def read_result(path: str | Path) -> Result:
     """Read a result that was written as .json (everything) or .ecsv (one table).
 
-    Raises
-    ------
-    OutputError
-        The file is missing, has another extension, or was not written by Coldglow.
+    Raises:
+        OutputError: The file is missing, has another extension, or was not written by Coldglow.
 
     """
     path = Path(path)

@@ -43,10 +43,8 @@ class Result(Findings):
         .json holds everything; the others hold one table (the main one unless named), .ecsv with the
         header in its metadata.
 
-        Raises
-        ------
-        OutputError
-            The extension is unknown or the place cannot be written.
+        Raises:
+            OutputError: The extension is unknown or the place cannot be written.
 
         """
         return files.write_result(self, Path(path), table)
