@@ -96,6 +96,13 @@ def test_an_event_tells_longitudes_set_up_and_standard_stars(small):
         assert "Standard stars after: HR" in text
 
 
+def test_the_expected_snr_keeps_its_digits(small):
+    text = (small.folder / "observing.ics").read_text(encoding="utf-8").replace("\n ", "")
+    told = re.findall(r"expected SNR ([\d.]+)", text.replace("\r", ""))
+    for shown, stretch in zip(told, small.found.stretches, strict=True):
+        assert float(shown) == pytest.approx(stretch.snr, rel=5e-3)
+
+
 def test_the_calendar_does_not_know_when_it_was_made(small):
     pairs = list(zip(small.found.stretches, small.found.standards, strict=True))
     with time_machine.travel("2031-02-03"):

@@ -32,6 +32,14 @@ def test_equal_nights_are_binomial():
     assert found.smallest(0.9999999) is None
 
 
+def test_exact_chances_of_correlated_nights_have_no_error_at_all():
+    weather = replace(PLAIN, clear_fraction=0.7, correlation=0.3)
+    demand = Amount(np.atleast_1d(demanded_information(6.28)))
+    found = curve(one(np.full(40, 2.1)), demand, np.arange(40), np.ones(40), np.arange(40), weather)
+    assert 0.0 < found.probability[28] < 1.0
+    assert np.all(found.probability_error == 0.0)
+
+
 def test_floors_ask_for_more_nights():
     # each night SNR 5 with a floor of 10 %: I' = 25/1.25 = 20; goal SNR 9 with 5 % common: 81/(1-0.2025)
     clear = replace(PLAIN, clear_fraction=1.0)

@@ -69,7 +69,8 @@ def _event(request: Request, stretch: Stretch, stars: Sequence[Standard]) -> Eve
         (
             f"First integration {_clock(stretch.exposing_tt_s)} UTC, after acquisition and standard star",
             *describe_stretch(facts),
-            f"{scene.use.instrument.operation.nod}: {frames_words(stretch)}; expected SNR {stretch.snr:.0f}",
+            f"{scene.use.instrument.operation.nod}: {frames_words(stretch)}; "
+            f"expected SNR {words.number(stretch.snr)}",
         ),
         f"{name}{where}",
     )
@@ -180,7 +181,7 @@ def _steps(stretch: Stretch, stars: Sequence[Standard]) -> list[str]:
         f"{_clock(stretch.exposing_tt_s)} first integration ({stretch.scene.use.setting.name}, "
         f"{instrument.operation.nod}): {frames_words(stretch)}; the brightest pixel fills "
         f"{words.percent(fill)} of the well; {_longitudes(stretch)}, "
-        f"expected SNR {stretch.snr:.0f}"
+        f"expected SNR {words.number(stretch.snr)}"
     )
     last = f"{_clock(stretch.end_tt_s)} end of the stretch"
     if after:

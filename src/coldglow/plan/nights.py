@@ -199,13 +199,13 @@ def curve(
         return joint_curve([(gain, demand)], day, cost, order, weather, factors)
     day, order = np.asarray(day, dtype=float), np.asarray(order, dtype=np.int64)
     found = [success(gain[order[:n]], demand, day[order[:n]], weather) for n in range(1, order.size + 1)]
-    low = np.maximum.accumulate([each[0] for each in found])  # a bound for fewer units is one for more
-    high = np.array([each[0] + each[1] for each in found])
+    own, width = np.array(found).T
+    low = np.maximum.accumulate(own)  # a bound for fewer units is one for more
     return Curve(
         units=np.arange(1, order.size + 1),
         cost=np.cumsum(np.asarray(cost, dtype=float)[order]),
         probability=low,
-        probability_error=np.maximum(high - low, 0.0),
+        probability_error=np.maximum(width - (low - own), 0.0),
     )
 
 
