@@ -45,12 +45,14 @@ def coverage(
     are hatched and say so; bins below their goal are marked by colour and by an open top.
     """
     room = min(0.24 * max(len(visits), 3), 5.0)
+    longest = max((len(visit.label) for visit in visits), default=0)
+    names_in = min(max(1.3, 0.25 + 0.07 * longest), 2.6)
     figure, ((bins, blank), (rows, scale)) = look.panels(
         2.75 + room,
         rows=(1.35, room),
         columns=(1, 0.022),
         gap_in=(0.55, 0.2),
-        margins_in=(1.3, 0.5, 0.35, 0.5),
+        margins_in=(names_in, 0.5, 0.35, 0.5),
     )
     blank.axis("off")
     width = np.diff(bin_edges_deg)
