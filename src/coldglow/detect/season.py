@@ -14,13 +14,13 @@ from scipy.interpolate import RegularGridInterpolator
 from coldglow.describe.records import Instrument, LongitudeSystem, Setting, Target
 from coldglow.detect.beam import Beam, Disk, PointSpread, join_beams, point_spacing, point_spread, see_disk
 from coldglow.light.shell import ShellPoints, view_of, visible_points
-from coldglow.sky.clock import tdb_from_tt
+from coldglow.sky.clock import DAY_S, tdb_from_tt
 from coldglow.sky.orientation import in_system_rad
 from coldglow.sky.track import Track
 
 Array = NDArray[np.float64]
 
-DATE_SPACING_S = 25 * 86400.0
+DATE_SPACING_S = 25 * DAY_S
 LONGITUDES = 72  # with spots
 FEW = 100  # up to so many instants each is looked at by itself
 
