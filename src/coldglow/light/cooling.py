@@ -39,6 +39,13 @@ def state_at(emission: Emission, cooling: Cooling, dates: str | Sequence[str]) -
     the law leaves 150-1500 K. A straight line with a floor stops there instead.
     """
     time_s = seconds_since(cooling.epoch, dates)
+    temperature_k, column_m2 = _state(emission, cooling, time_s)
+    _refuse_outside(cooling, time_s, temperature_k)
+    return temperature_k, column_m2
+
+
+def _state(emission: Emission, cooling: Cooling, time_s: Floats) -> tuple[Floats, Floats]:
+    """Return the state as the law has it, whatever the temperature; dates beyond the law are refused."""
     _refuse_late(cooling, time_s)
     temperature_k = _temperature(
         cooling,
@@ -48,7 +55,6 @@ def state_at(emission: Emission, cooling: Cooling, dates: str | Sequence[str]) -
         cooling.floor_k.value if cooling.floor_k else None,
         cooling.time_scale_s.value if cooling.time_scale_s else None,
     )
-    _refuse_outside(cooling, time_s, temperature_k)
     column_m2 = _column(cooling, time_s, emission.column_m2.value, cooling.column_rate_s.value)
     return temperature_k, column_m2
 
@@ -59,10 +65,14 @@ def emission_at(emission: Emission, cooling: Cooling, date: str) -> Emission:
     Each uncertain parameter (T, rate, floor, time scale; N and its rate) is moved by 1 sigma and the changes
     of the result add in quadrature; the scatter from night to night stays as it is.
 
-    Raises: RangeError as `state_at`.
+    Raises: RangeError as `state_at`; but a temperature that lies outside what the line list covers from the
+    start is left to the warnings of those who use it.
     """
-    (kelvin,), (column_m2,) = state_at(emission, cooling, date)
     time_s = seconds_since(cooling.epoch, date)
+    temperature_k, (column_m2,) = _state(emission, cooling, time_s)
+    if COLDEST_K <= emission.temperature_k.value <= HOTTEST_K:
+        _refuse_outside(cooling, time_s, temperature_k)
+    kelvin = temperature_k[0]
     parameters = (emission.temperature_k, cooling.rate_k_s, cooling.floor_k, cooling.time_scale_s)
     central = [None if each is None else each.value for each in parameters]
     changes = [0.0]
@@ -147,7 +157,7 @@ def _temperature(
         return np.asarray(floor_k + (start_k - floor_k) * np.exp(-time_s / time_scale_s))
     if cooling.law == "linear":
         line = start_k + rate_k_s * time_s
-        return np.asarray(line if floor_k is None else np.maximum(line, floor_k))
+        return np.asarray(line if floor_k is None else np.maximum(line, np.minimum(floor_k, start_k)))
     return np.asarray(start_k + 0.0 * time_s)
 
 

@@ -11,6 +11,7 @@ import json
 import math
 import os
 import tempfile
+import warnings
 from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -136,9 +137,11 @@ def _strict(value: Any) -> Any:
 
 def to_qtable(result: Findings, name: str = "") -> QTable:
     """Return one table as an astropy QTable; texts stay texts, flags booleans."""
-    from astropy import units
-    from astropy.table import Column as PlainColumn
-    from astropy.table import QTable
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore")  # where no home can be written it says so, which is no matter here
+        from astropy import units
+        from astropy.table import Column as PlainColumn
+        from astropy.table import QTable
 
     table = result.table(name)
     quantities = QTable()
