@@ -186,7 +186,7 @@ def add_compare(parser: argparse.ArgumentParser) -> None:
 def run_compare(words: argparse.Namespace) -> Result:
     """Run `compare`."""
     from coldglow.answers import compare
-    from coldglow.answers.jobs import processes
+    from coldglow.answers.common.jobs import processes
 
     with processes(words.jobs) as executor:
         return compare(words.word, words.instruments, executor)

@@ -6,9 +6,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from coldglow.answers.common.jobs import processes
 from coldglow.answers.compare import compare, rivals
 from coldglow.answers.expose import expose
-from coldglow.answers.jobs import processes
 from coldglow.answers.nights import nights
 from coldglow.cli import parse
 from coldglow.describe.load import load_instrument, load_request, load_target, names

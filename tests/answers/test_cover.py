@@ -7,13 +7,13 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from coldglow.answers.choice import choose
+from coldglow.answers.common.offers import WHOLE, offers
+from coldglow.answers.common.scenes import scenes
 from coldglow.answers.cover import cover, cover_of
-from coldglow.answers.coverage import longitudes_seen, spot_and_rest, view_of_bins, visit_gains
-from coldglow.answers.coverwords import phase_errors_rad
-from coldglow.answers.offers import WHOLE, offers
-from coldglow.answers.outofreach import bin_ranges
-from coldglow.answers.scenes import scenes
+from coldglow.answers.covering.choice import choose
+from coldglow.answers.covering.coverage import longitudes_seen, spot_and_rest, view_of_bins, visit_gains
+from coldglow.answers.covering.outofreach import bin_ranges
+from coldglow.answers.covering.words import phase_errors_rad
 from coldglow.describe.load import load_instrument, load_request, load_target
 from coldglow.describe.records import Use
 from coldglow.detect.season import beams

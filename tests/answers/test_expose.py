@@ -4,9 +4,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from coldglow.answers.common.moment import look
+from coldglow.answers.common.visit import Visit, needs
 from coldglow.answers.expose import expose
-from coldglow.answers.moment import look
-from coldglow.answers.visit import Visit, needs
 from coldglow.describe.load import load_instrument, load_request
 from coldglow.describe.records import Estimate, Goal, Use
 from coldglow.errors import NotFoundError, RangeError

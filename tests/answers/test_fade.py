@@ -4,13 +4,13 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from coldglow.answers.common.scenes import visits
 from coldglow.answers.expose import expose
 from coldglow.answers.fade import fade
-from coldglow.answers.fading import fading, glow_of, tabulated_glow
+from coldglow.answers.fading.forecast import fading, glow_of, tabulated_glow
+from coldglow.answers.fading.seasons import STEP_S, best_night, whole_year
 from coldglow.answers.glow import glow
 from coldglow.answers.hours import hours
-from coldglow.answers.scenes import visits
-from coldglow.answers.seasons import STEP_S, best_night, whole_year
 from coldglow.describe.load import load_instrument, load_request, load_target
 from coldglow.describe.records import Budget, Estimate, Use
 from coldglow.errors import DateError, NotFoundError, RangeError

@@ -7,8 +7,8 @@ import subprocess
 import numpy as np
 import pytest
 
-from coldglow.answers.headline import measured, quickest, time_entry
-from coldglow.answers.justification import justification_of
+from coldglow.answers.planning.headline import measured, quickest, time_entry
+from coldglow.answers.planning.justification import justification_of
 from coldglow.report import words
 from coldglow.report.proposal import justification_markdown
 
@@ -69,7 +69,7 @@ def test_a_brighter_planet_takes_less_time(small):
 def test_a_hopeless_request_says_so(small):
     from dataclasses import replace
 
-    from coldglow.answers.findings import find_out
+    from coldglow.answers.planning.findings import find_out
     from coldglow.sky.stars import load_standards
 
     goal = replace(small.request.goal, snr=1e6, probability=0.5)

@@ -7,12 +7,12 @@ import numpy as np
 import pytest
 from scipy.stats import binom
 
-from coldglow.answers.choice import choose
+from coldglow.answers.asking.requesting import plan_of
+from coldglow.answers.asking.scatter import factors_of, response_of
+from coldglow.answers.common.offers import offers
+from coldglow.answers.common.scenes import scenes
+from coldglow.answers.covering.choice import choose
 from coldglow.answers.nights import nights, nights_of
-from coldglow.answers.offers import offers
-from coldglow.answers.requesting import plan_of
-from coldglow.answers.scatter import factors_of, response_of
-from coldglow.answers.scenes import scenes
 from coldglow.describe.load import load_request
 from coldglow.describe.records import Budget, Estimate, Quartiles
 

@@ -6,8 +6,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from coldglow.answers.offers import FIRST, SECOND, STRETCH, WHOLE, offers
-from coldglow.answers.scenes import scenes
+from coldglow.answers.common.offers import FIRST, SECOND, STRETCH, WHOLE, offers
+from coldglow.answers.common.scenes import scenes
 from coldglow.describe.load import load_request
 from coldglow.plan.goal import marginalise
 from coldglow.plan.stretches import RunningSums

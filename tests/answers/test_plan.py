@@ -9,11 +9,11 @@ import numpy as np
 import pytest
 
 from coldglow.answers import plan
-from coldglow.answers.chosen import requested
-from coldglow.answers.findings import find_out
-from coldglow.answers.headline import answer, verdict
-from coldglow.answers.paperwork import assumptions_of
-from coldglow.answers.scenes import restricted, scenes
+from coldglow.answers.asking.chosen import requested
+from coldglow.answers.common.scenes import restricted, scenes
+from coldglow.answers.planning.findings import find_out
+from coldglow.answers.planning.headline import answer, verdict
+from coldglow.answers.planning.paperwork import assumptions_of
 from coldglow.describe.load import load_request
 from coldglow.describe.resolved import assumed
 from coldglow.errors import RangeError

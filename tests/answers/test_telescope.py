@@ -17,9 +17,9 @@ from hypothesis import strategies as st
 from icalendar import Calendar
 from skyfield.api import Star, load, load_file, wgs84
 
-from coldglow.answers.findings import find_out
-from coldglow.answers.standards import sexagesimal, standards_for
-from coldglow.answers.telescope import calendar_of, frames_words, pages_of
+from coldglow.answers.planning.findings import find_out
+from coldglow.answers.planning.standards import sexagesimal, standards_for
+from coldglow.answers.planning.telescope import calendar_of, frames_words, pages_of
 from coldglow.describe.load import load_request
 from coldglow.sky.ephemeris import _packaged_kernel
 from coldglow.sky.stars import Stars, load_standards

@@ -8,13 +8,13 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from coldglow.answers.inputs import NamePath, as_request
-from coldglow.answers.jobs import progress
-from coldglow.answers.moment import Look, look
+from coldglow.answers.common.inputs import NamePath, as_request
+from coldglow.answers.common.jobs import progress
+from coldglow.answers.common.moment import Look, look
+from coldglow.answers.common.offers import offers
+from coldglow.answers.common.scenes import conditions_words, median_moment, unseen_words
+from coldglow.answers.common.visit import Need, needs
 from coldglow.answers.nights import nights_of
-from coldglow.answers.offers import offers
-from coldglow.answers.scenes import conditions_words, median_moment, unseen_words
-from coldglow.answers.visit import Need, needs
 from coldglow.describe.load import load_instrument_for, names
 from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.exposure import NOISE_SOURCES

@@ -7,13 +7,13 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.choice import Choice, choose
-from coldglow.answers.coverage import longitudes_seen
-from coldglow.answers.coverwords import header_of, sentences_of, within_budget
-from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.lightcurve import light_curve_table
-from coldglow.answers.offers import PARTS, Offers
-from coldglow.answers.scenes import Also, scenes, unseen_words
+from coldglow.answers.common.inputs import NamePath, as_request, described, place_errors
+from coldglow.answers.common.offers import PARTS, Offers
+from coldglow.answers.common.scenes import Also, scenes, unseen_words
+from coldglow.answers.covering.choice import Choice, choose
+from coldglow.answers.covering.coverage import longitudes_seen
+from coldglow.answers.covering.lightcurve import light_curve_table
+from coldglow.answers.covering.words import header_of, sentences_of, within_budget
 from coldglow.describe.records import Request
 from coldglow.plan.demand import TemperatureError
 from coldglow.plan.goal import temperature_error, with_floor

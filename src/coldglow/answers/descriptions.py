@@ -9,7 +9,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from coldglow.answers.inputs import NamePath
+from coldglow.answers.common.inputs import NamePath
 from coldglow.describe.draft import draft as draft_text
 from coldglow.describe.load import load_any, load_instrument, load_target, names
 from coldglow.describe.records import Instrument, Request, Target

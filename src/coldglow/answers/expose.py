@@ -5,12 +5,12 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.edges import coldest_temperatures, refined, smallest_columns
-from coldglow.answers.exposewords import header_of, limit_sentence, precision_sentence, yields_of
-from coldglow.answers.inputs import NamePath, Quantity, as_request, described, in_si, place_errors
-from coldglow.answers.moment import Look, look
-from coldglow.answers.scenes import choose_use, median_moment, unseen_words
-from coldglow.answers.visit import Need, Visit, needs
+from coldglow.answers.common.inputs import NamePath, Quantity, as_request, described, in_si, place_errors
+from coldglow.answers.common.moment import Look, look
+from coldglow.answers.common.scenes import choose_use, median_moment, unseen_words
+from coldglow.answers.common.visit import Need, Visit, needs
+from coldglow.answers.exposing.edges import coldest_temperatures, refined, smallest_columns
+from coldglow.answers.exposing.words import header_of, limit_sentence, precision_sentence, yields_of
 from coldglow.describe.records import Request, Use
 from coldglow.detect.detail import Detail
 from coldglow.detect.exposure import NOISE_SOURCES

@@ -6,10 +6,10 @@ from dataclasses import replace
 
 import numpy as np
 
-from coldglow.answers.fadewords import header, sentences
-from coldglow.answers.fading import MAP_SPAN, Fading, fading
-from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.scenes import choose_use
+from coldglow.answers.common.inputs import NamePath, as_request, described, place_errors
+from coldglow.answers.common.scenes import choose_use
+from coldglow.answers.fading.forecast import MAP_SPAN, Fading, fading
+from coldglow.answers.fading.words import header, sentences
 from coldglow.describe.records import Request
 from coldglow.errors import RangeError
 from coldglow.light.emission import COLDEST_K, validity_warnings

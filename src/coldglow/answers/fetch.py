@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.inputs import NamePath, Quantity, as_instrument, as_target, in_si
+from coldglow.answers.common.inputs import NamePath, Quantity, as_instrument, as_target, in_si
 from coldglow.answers.sky import place_words, site_of
 from coldglow.describe.records import Instrument, Site, Target
 from coldglow.errors import OutputError, RangeError

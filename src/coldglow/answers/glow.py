@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from coldglow.answers.inputs import NamePath, Quantity, as_target, in_si, place_errors
+from coldglow.answers.common.inputs import NamePath, Quantity, as_target, in_si, place_errors
 from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Target
 from coldglow.light.emission import (

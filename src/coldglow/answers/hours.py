@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from coldglow.answers.inputs import NamePath, Quantity, as_request, in_si
-from coldglow.answers.scenes import Also, conditions_words, scenes, unseen_words, visits
+from coldglow.answers.common.inputs import NamePath, Quantity, as_request, in_si
+from coldglow.answers.common.scenes import Also, conditions_words, scenes, unseen_words, visits
 from coldglow.describe.records import Request
 from coldglow.errors import RangeError
 from coldglow.plan.stretches import Stretches, best_windows

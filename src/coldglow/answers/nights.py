@@ -7,12 +7,12 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.choice import Choice, choose
+from coldglow.answers.asking.requesting import Plan, planned
+from coldglow.answers.asking.words import header_of, sentences_of, within_budget
+from coldglow.answers.common.inputs import NamePath, as_request, described, place_errors
+from coldglow.answers.common.scenes import Also, scenes, unseen_words
 from coldglow.answers.cover import chosen_table
-from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.nightswords import header_of, sentences_of, within_budget
-from coldglow.answers.requesting import Plan, planned
-from coldglow.answers.scenes import Also, scenes, unseen_words
+from coldglow.answers.covering.choice import Choice, choose
 from coldglow.describe.records import Request
 from coldglow.plan.account import time_account
 from coldglow.plan.nights import Curve

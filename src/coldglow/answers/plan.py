@@ -5,9 +5,9 @@ from __future__ import annotations
 import os
 from pathlib import Path
 
-from coldglow.answers.findings import Tell, find_out
-from coldglow.answers.inputs import NamePath, as_request, described, place_errors
-from coldglow.answers.scenes import Also
+from coldglow.answers.common.inputs import NamePath, as_request, described, place_errors
+from coldglow.answers.common.scenes import Also
+from coldglow.answers.planning.findings import Tell, find_out
 from coldglow.describe.records import Request
 from coldglow.report.results import Entry, Result, column, table
 from coldglow.sky.stars import load_standards
@@ -51,7 +51,7 @@ def plan(
 
     """
     # what draws is loaded for a report only, so that the other commands start sooner
-    from coldglow.answers.reporting import papers_of, report_of
+    from coldglow.answers.planning.reporting import papers_of, report_of
     from coldglow.report.folder import check_free, report_files, write_folder
 
     record, place = as_request(request), Path(out)

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from scipy.constants import arcsec, au
 
-from coldglow.answers.inputs import (
+from coldglow.answers.common.inputs import (
     BARE_LIMITS,
     NamePath,
     Quantity,

@@ -9,7 +9,7 @@ observing blocks:
 
 >>> from dataclasses import replace
 >>> from coldglow import hours, load_request
->>> from coldglow.answers.chosen import requested
+>>> from coldglow.answers.asking.chosen import requested
 >>> from coldglow.bridges.astroplan import constraint_mask, observing_blocks, offline
 >>> with offline():
 ...     from astropy import units as u

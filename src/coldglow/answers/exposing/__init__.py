@@ -1,0 +1,1 @@
+"""Behind `expose`: where detection begins, and its words."""

@@ -1,0 +1,1 @@
+"""Behind `fade`: the best night of each year, the forecast, its words."""

@@ -1,0 +1,1 @@
+"""Behind `plan`: every answer worked out once, and turned into the report and the papers of the folder."""
