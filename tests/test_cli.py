@@ -255,6 +255,16 @@ def test_an_interruption_is_status_130(capsys, monkeypatch):
     assert run(capsys, "show")[0] == 130
 
 
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="this system has no device that is always full")
+def test_an_answer_that_cannot_be_written_is_told_in_a_sentence():
+    words = [sys.executable, "-m", "coldglow.cli", "show"]
+    with Path("/dev/full").open("w") as full:
+        found = subprocess.run(words, stdout=full, stderr=subprocess.PIPE, text=True, check=False)
+    assert found.returncode == 2
+    assert "could not be written" in found.stderr
+    assert "Traceback" not in found.stderr
+
+
 def folder_contents(folder):
     return {
         str(p.relative_to(folder)): p.read_bytes() for p in sorted(Path(folder).rglob("*")) if p.is_file()

@@ -15,5 +15,6 @@ from coldglow.answers import show as show
 from coldglow.describe.load import load_instrument as load_instrument
 from coldglow.describe.load import load_request as load_request
 from coldglow.describe.load import load_target as load_target
+from coldglow.report.reading import read_result as read_result
 
 __version__: str

@@ -504,7 +504,7 @@ def run(arguments: Sequence[str]) -> int:
         return DONE
     for path in words.write:
         answer.write(path)
-    print(answer)
+    print(answer, flush=True)
     return NOT_FEASIBLE if words.strict and not answer.feasible else DONE
 
 
@@ -539,6 +539,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except BrokenPipeError:
         sys.stderr.close()
         return DONE
+    except OSError as error:
+        print(f"coldglow: {error.strerror or error}; the answer could not be written", file=sys.stderr)
+        return WRONG_INPUT
     except Exception as error:
         import traceback
 

@@ -5,14 +5,21 @@ from __future__ import annotations
 import numpy as np
 
 from coldglow.answers.common.inputs import NamePath, Quantity, as_request, in_si
-from coldglow.answers.common.scenes import Also, conditions_words, scenes, unseen_words, visits
+from coldglow.answers.common.scenes import (
+    Also,
+    conditions_words,
+    longitude_words,
+    scenes,
+    unseen_words,
+    visits,
+)
 from coldglow.describe.records import Request
 from coldglow.errors import RangeError
 from coldglow.plan.stretches import Stretches, best_windows
 from coldglow.report import words
 from coldglow.report.results import Entry, Result, column, table
 from coldglow.scenario import Scenario
-from coldglow.sky.clock import iso_from_tt
+from coldglow.sky.clock import iso_from_tt, tdb_from_tt
 
 PRINTED = 20
 
@@ -83,6 +90,9 @@ def hours_of(request: Request, found: tuple[Scenario, ...], wanted_s: float | No
     ]
     printed = range(min(PRINTED, snr.size))
     sentences = [_sentence(s, part, wanted_s) for s, part in zip(found, rows, strict=True)]
+    if snr.size:
+        track = found[0].track
+        sentences.append(longitude_words(track.system, tdb_from_tt(track.grid.tt_s[[0, -1]])))
     return Result(
         "hours",
         {

@@ -16,12 +16,12 @@ from coldglow.answers.common.inputs import (
     in_si,
     place_errors,
 )
+from coldglow.answers.common.scenes import longitude_words
 from coldglow.describe.records import Instrument, LongitudeSystem, Orbit, Rotation, Site, Target
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.report import words
 from coldglow.report.results import Column, Entry, Result, column, table
 from coldglow.sky.clock import iso_from_tt, span_grid, tdb_from_tt, times_grid
-from coldglow.sky.orientation import absolute_phase_uncertainty_rad
 from coldglow.sky.track import Track, make_track
 
 
@@ -99,15 +99,10 @@ def sky(
             raise RangeError("give an instrument or a site")
         track = make_track(record, place, limits, grid, system, ephemeris)
     tdb_s = tdb_from_tt(grid.tt_s)
-    unsure_deg = float(np.degrees(np.max(absolute_phase_uncertainty_rad(system, tdb_s))))
     sentences = [f"`observable` means {meaning}. Altitudes are airless, airmass is that of Young 1994."]
     if not track.observable.any():
         sentences.append(f"The target is never observable at these times: {track.why_not}.")
-    known = "known to" if unsure_deg < 180.0 else "unknown: the rotation period leaves"
-    sentences.append(
-        f"Longitudes are in system {system.name} and grow {system.grows}ward; the absolute longitude is "
-        f"{known} ± {words.number(unsure_deg, 2)}° at these dates (1 sigma of the period since its epoch)."
-    )
+    sentences.append(longitude_words(system, tdb_s))
     return Result(
         "sky",
         {"sky": table(*_columns(track, isinstance(place, Orbit)), caption=f"{record.name} from {name}")},

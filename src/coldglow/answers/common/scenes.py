@@ -10,12 +10,13 @@ from numpy.typing import NDArray
 from scipy.constants import arcsec
 
 from coldglow.answers.common.inputs import described, place_errors
-from coldglow.describe.records import Orbit, Request, Use
+from coldglow.describe.records import LongitudeSystem, Orbit, Request, Use
 from coldglow.errors import NotFoundError, RangeError
 from coldglow.plan.goal import marginalise, snr
 from coldglow.plan.stretches import Stretches, runs, table
 from coldglow.report import words
 from coldglow.scenario import Air, Scenario, scenario, watch
+from coldglow.sky.orientation import absolute_phase_uncertainty_rad
 from coldglow.sky.track import Track
 
 Also = NDArray[np.bool_] | Callable[[Track], NDArray[np.bool_]] | None
@@ -102,6 +103,16 @@ def conditions_words(use: Use, air: Air) -> str:
         return "in space, no air"
     seeing = words.quantity(air.seeing_rad / arcsec, "arcsec", 2)
     return f"seeing {seeing} at 0.5 µm, {words.quantity(1e3 * air.water_m, 'mm', 2)} of water"
+
+
+def longitude_words(system: LongitudeSystem, tdb_s: NDArray[np.float64]) -> str:
+    """Return the longitude system and how well its phase is known at instants (TDB seconds from J2000)."""
+    unsure_deg = float(np.degrees(np.max(absolute_phase_uncertainty_rad(system, tdb_s))))
+    known = "known to" if unsure_deg < 180.0 else "unknown: the rotation period leaves"
+    return (
+        f"Longitudes are in system {system.name} and grow {system.grows}ward; the absolute longitude is "
+        f"{known} ± {words.number(unsure_deg, 2)}° at these dates (1 sigma of the period since its epoch)."
+    )
 
 
 def unseen_words(scene: Scenario) -> str:

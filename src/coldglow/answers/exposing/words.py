@@ -13,6 +13,8 @@ from coldglow.plan.limits import Edge
 from coldglow.report import words
 from coldglow.report.results import Entry
 
+NO_TEMPERATURE = "none: this setting gives no temperature"
+
 
 def header_of(seen: Look, chosen: str) -> dict[str, Entry]:
     """Return moment, conditions and set-up as header values; `chosen` says how the moment came about."""
@@ -51,7 +53,11 @@ def header_of(seen: Look, chosen: str) -> dict[str, Entry]:
             seen.systematic.fixed_total, label="systematic error of N at this T", digits=2
         ),
         "systematic_temperature": Entry(
-            seen.systematic.temperature_total_k, "K", digits=2, label="systematic error of T"
+            seen.systematic.temperature_total_k,
+            "K",
+            text="" if np.isfinite(seen.systematic.temperature_total_k) else NO_TEMPERATURE,
+            digits=2,
+            label="systematic error of T",
         ),
     }
 
@@ -70,7 +76,11 @@ def yields_of(seen: Look, open_s: float, occasion: str, coldest: Edge, smallest:
         "snr": Entry(float(visit.snr(open_s)), label=f"SNR {occasion}", digits=3),
         "temperature_error": Entry(float(temperature_error(matrix)), "K", text=kelvin, label="error of T"),
         "column_error": Entry(float(column_error(matrix)), text=percent, label="error of N, T free"),
-        "correlation": Entry(float(correlation(matrix)), label="correlation of ln N and T"),
+        "correlation": Entry(
+            float(correlation(matrix)),
+            text="" if np.isfinite(temperature_error(matrix)) else NO_TEMPERATURE,
+            label="correlation of ln N and T",
+        ),
         "coldest_temperature": Entry(
             coldest.value, "K", label=f"coldest T at this N, SNR {snr}", text=edge_words(coldest, "K", 4)
         ),

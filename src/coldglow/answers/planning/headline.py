@@ -31,7 +31,9 @@ def verdict(found: Findings) -> str:
     if "nights" not in found.nights.header:
         return "Not feasible as it stands: the nights offered are not enough"
     if found.choice is not None and not found.choice.cover.covered.all():
-        return "Not feasible as it stands: a part of the longitudes stays out of reach"
+        some = found.choice.cover.covered.any()
+        part = "a part of the longitudes stays" if some else "all longitudes stay"
+        return f"Not feasible as it stands: {part} out of reach"
     return f"Not feasible as it stands: it takes {found.nights.header['nights']}, more than the budget"
 
 

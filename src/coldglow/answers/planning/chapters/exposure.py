@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import arcsec, c
 
 from coldglow.answers.common.moment import Look
 from coldglow.answers.planning.findings import Exposed
@@ -20,7 +21,6 @@ from coldglow.report.record import Picture, Section
 from coldglow.report.results import Result
 from coldglow.scenario import air_over
 
-ARCSEC_PER_RAD = 206264.80624709636
 POINTS = 150  # of a curve
 
 
@@ -52,7 +52,8 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
     where, clear = np.empty(0), np.empty(0)
     span = float(wavelength.min()), float(wavelength.max())
     setting = seen.use.setting
-    if seen.use.instrument.opening.kind == "imager":
+    imager = seen.use.instrument.opening.kind == "imager"
+    if imager:
         edges = [1e6 * edge for band in (setting.band_m, setting.off_band_m) if band for edge in band]
         span = min(edges), max(edges)
     if atmosphere is not None:
@@ -60,7 +61,7 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
         clear = atmosphere.transmission(
             1e-6 * where, float(seen.moment.airmass[0]), float(seen.moment.water_m[0])
         )
-    shift = 1.0 + float(seen.track.range_rate_m_s[0]) / 299792458.0
+    shift = 1.0 + float(seen.track.range_rate_m_s[0]) / c
     wanted = lines["wanted"]
     strongest = int(np.argmax(np.where(wanted, lines["snr_one_hour"], 0.0)))
     figure = spectrum(
@@ -73,7 +74,7 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
         lines["wavelength"] * shift,
         [str(label) for label in lines["label"]],
         lines["snr_one_hour"],
-        "electrons s⁻¹ per pixel",
+        "e⁻ s⁻¹ in the aperture" if imager else "e⁻ s⁻¹ per spectral pixel, whole aperture",
         span,
     )
     best = f"{lines['label'][strongest]} at {lines['wavelength'][strongest]:.4f} µm"
@@ -143,7 +144,7 @@ def _disk(seen: Look, tag: str) -> Picture:
     system = spot_system(target, track)
     figure = beam_on_disk(
         DiskView(
-            2.0 * radius_rad * ARCSEC_PER_RAD,
+            2.0 * radius_rad / arcsec,
             target.figure.polar_radius_m / target.figure.equatorial_radius_m,
             float(np.degrees(track.sub_observer_latitude_rad[0])),
             float(np.degrees(longitude_for_spots_rad(target, track)[0])),
@@ -152,12 +153,12 @@ def _disk(seen: Look, tag: str) -> Picture:
         ),
         OpeningView(
             f"{kind} of {seen.use.instrument.name}",
-            opening.width_rad * ARCSEC_PER_RAD,
-            opening.length_rad * ARCSEC_PER_RAD,
+            opening.width_rad / arcsec,
+            opening.length_rad / arcsec,
             float(np.degrees(slit_angle(opening, disk) + disk.pole_angle_rad)),
-            opening.offset_rad * ARCSEC_PER_RAD,
+            opening.offset_rad / arcsec,
         ),
-        spread.fwhm_rad * ARCSEC_PER_RAD,
+        spread.fwhm_rad / arcsec,
         [
             SpotView(
                 spot.name,
