@@ -1,5 +1,6 @@
 """The reader: every leaf a text, every key path with its line, hostile files refused in bounded time."""
 
+import os
 import time
 
 import pytest
@@ -8,6 +9,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from coldglow.describe import reader
+from coldglow.describe.reader import read_tree
 from coldglow.errors import DescriptionError, NotFoundError
 
 
@@ -53,16 +55,16 @@ def test_a_file_above_one_megabyte_is_refused(tmp_path):
     path = tmp_path / "large.yaml"
     path.write_bytes(b"a: 1 # " + b"x" * reader.LARGEST_BYTES)
     with pytest.raises(DescriptionError, match="larger than 1 MB"):
-        reader.read_tree(path)
+        read_tree(path)
     path.write_bytes(b"a: 1 #".ljust(reader.LARGEST_BYTES, b"x"))
-    assert reader.read_tree(path).data == {"a": "1"}
+    assert read_tree(path).data == {"a": "1"}
 
 
 def test_a_file_that_is_not_there(tmp_path):
     with pytest.raises(NotFoundError, match="cannot be read"):
-        reader.read_tree(tmp_path / "none.yaml")
+        read_tree(tmp_path / "none.yaml")
     with pytest.raises(NotFoundError, match="cannot be read"):
-        reader.read_tree(tmp_path)
+        read_tree(tmp_path)
 
 
 @pytest.mark.parametrize(
@@ -113,3 +115,11 @@ def test_any_bytes_give_a_tree_or_problems(content):
         lines = [line for _, line in tree.lines.values()]
     assert lines
     assert 1 <= min(lines) <= max(lines) <= content.count(b"\n") + content.count(b"\r") + 400
+
+
+@pytest.mark.skipif(not hasattr(os, "mkfifo"), reason="this system has no named pipes")
+def test_a_pipe_is_refused_before_it_is_emptied(tmp_path):
+    pipe = tmp_path / "request.yaml"
+    os.mkfifo(pipe)
+    with pytest.raises(NotFoundError, match="save the description as a file first"):
+        read_tree(pipe)

@@ -57,7 +57,7 @@ def check(files: Sequence[NamePath]) -> Result:
         except DescriptionError as error:
             problems += error.problems
         except ColdglowError as error:
-            problems.append(Problem(name, 1, "", str(error)))
+            problems.append(Problem(name, 1, "", str(error).removeprefix(f"{name}: ")))
     if problems:
         raise DescriptionError(problems)
     return Result(

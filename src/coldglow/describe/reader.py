@@ -64,6 +64,8 @@ def read_tree(path: Path) -> Tree:
 
     Raises `NotFoundError` when the file cannot be opened, `DescriptionError` with all mistakes of form.
     """
+    if path.exists() and not path.is_file() and not path.is_dir():
+        raise NotFoundError(f"{path}: a pipe or device cannot be read; save the description as a file first")
     try:
         with path.open("rb") as file:
             content = file.read(LARGEST_BYTES + 1)
