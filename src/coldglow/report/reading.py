@@ -27,6 +27,7 @@ def read_result(path: str | Path) -> Result:
     >>> written = coldglow.glow("uranus", band=("3.9 um", "4.0 um")).write("glow.ecsv")
     >>> read_result(written).header["target"].value
     'Uranus'
+
     """
     path = Path(path)
     readers = {".json": _read_json, ".ecsv": _read_ecsv}
