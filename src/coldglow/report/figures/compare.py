@@ -32,7 +32,7 @@ def comparison(
     """
     count = len(labels)
     left = min(0.3 + 0.068 * max(map(len, labels), default=10), 2.6)
-    figure, ((main,),) = look.panels(1.0 + _ROW_IN * count, margins_in=(left, 2.0, 0.45, 0.5))
+    figure, ((main,),) = look.panels(1.0 + _ROW_IN * count, margins_in=(left, 2.15, 0.45, 0.5))
     finite = time_to_goal_h[np.isfinite(time_to_goal_h)]
     low, high = (float(finite.min()), float(finite.max())) if finite.size else (0.1, 10.0)
     low, high = 10 ** np.floor(np.log10(low) - 0.3), 10 ** np.ceil(np.log10(high) + 0.1)
