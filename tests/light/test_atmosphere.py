@@ -313,3 +313,11 @@ def test_an_edited_own_table_is_read_again(tmp_path):
         pytest.approx(-math.log(0.5)),
         pytest.approx(-math.log(0.7)),
     )
+
+
+@pytest.mark.parametrize(
+    ("water_m", "beyond"), [(0.00019, True), (0.00021, False), (0.0079, False), (0.0081, True)]
+)
+def test_the_span_of_water_that_was_checked(water_m, beyond):
+    # 0.2 to 8 mm: the notes of the table, data/atmosphere.md
+    assert bool(atmosphere.validity_warnings(AIR, 2.0, water_m)) is beyond
