@@ -168,7 +168,14 @@ def test_the_nights_page_has_a_sheet_for_each_night(small):
     text = (small.folder / "nights.html").read_text(encoding="utf-8")
     nights = list(dict.fromkeys(stretch.night for stretch in small.found.stretches))
     assert len(re.findall(r'<section class="sheet"', text)) == len(nights)
-    for word in ("sunset", "dark from", "transit", "standard star HR", "first integration", "Slit angle"):
+    for word in (
+        "sunset",
+        "sun below −18° from",
+        "transit",
+        "standard star HR",
+        "first integration",
+        "Slit angle",
+    ):
         assert word.lower() in text.lower()
     assert "<script" not in text
 

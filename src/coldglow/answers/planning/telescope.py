@@ -154,8 +154,8 @@ def _events(request: Request, scene: Scenario, night: str) -> dict[str, Entry]:
     events = night_events(place, [night], "" if stored else body, request.ephemeris)
     names: Mapping[str, str] = {
         "sunset": "sunset",
-        "astronomical_dusk": "dark from",
-        "astronomical_dawn": "dark until",
+        "astronomical_dusk": "Sun below −18° from",
+        "astronomical_dawn": "Sun below −18° until",
         "sunrise": "sunrise",
         "rise": f"{request.target.name} rises",
         "transit": "transit",

@@ -73,7 +73,10 @@ def _chart(scene: Scenario, chosen: Sequence[Stretch], tag: str, why: str) -> Pi
         frames,
     )
     name = scene.use.instrument.name
-    outline = "" if in_space else "the outline is the dark part of the night, "
+    sun = float(np.degrees(scene.use.instrument.limits.sun_altitude_max_rad))
+    outline = (
+        "" if in_space else f"the outline is the time with the Sun below {words.quantity(sun, 'deg', 2)}, "
+    )
     frame = f"{outline}the frames are {why}" if frames else outline.removesuffix(", ")
     return Picture(
         f"season{tag}",
