@@ -15,6 +15,7 @@ from coldglow.detect.exposure import NOISE_SOURCES
 from coldglow.plan.goal import column_error, temperature_error
 from coldglow.report import words
 from coldglow.report.results import Entry
+from coldglow.scenario import emission_of
 
 DATES_NAMED = 4
 
@@ -209,7 +210,7 @@ def _outlook(found: Findings) -> Iterator[str]:
 
 def _assumed(found: Findings) -> str:
     best = quickest(found.exposed)
-    state, emission = best.seen.state, found.request.target.emission
+    state, emission = best.seen.state, emission_of(found.request)
     kelvin = words.with_error(state.temperature_k, emission.temperature_k.uncertainty, "K")
     column = words.with_error(state.column_m2, emission.column_m2.uncertainty, "m-2")
     climate = "" if found.plan is None else f"; {climate_words(found.request, found.plan.offers)}"
