@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from itertools import combinations, product
 
 import numpy as np
@@ -104,6 +105,20 @@ def test_halves_and_whole_nights_against_all_subsets(seed, rules):
     parts = np.where(rng.random((3, 2, 3)) < 0.6, rng.uniform(0.2, 1.2, (3, 2, 3)), 0.0)
     gain = np.stack((1.1 * parts.sum(axis=1), parts[:, 0], parts[:, 1]), axis=1).reshape(9, 3)
     check(with_halves(3), gain, Amount(np.full(3, 1.5)), rules)
+
+
+@pytest.mark.parametrize("kind", ["amount", "temperature"])
+@pytest.mark.parametrize("seed", range(40, 80))
+def test_what_misses_by_less_than_the_solver_sees_is_missed(kind, seed):
+    # gains in tenths less a few ten-millionths: sums that look like 1.3 lack less than the solver's tolerance
+    rng = np.random.default_rng(seed)
+    gain = np.round(rng.random((7, 2)), 1) * (1.0 - 3e-7 * rng.random((7, 2)))
+    candidates = replace(nights(7), cost=np.round(rng.random(7) + 0.5, 1))
+    if kind == "amount":
+        check(candidates, gain, Amount(np.full(2, 1.3)), Rules())
+    else:  # independent of the column: 0.01 of information on T each, 1.3 of which is the goal
+        matrices = gain[..., None, None] * np.diag([1.0, 0.01])
+        check(candidates, matrices, TemperatureError(np.full(2, np.sqrt(1.0 / 0.013))), Rules())
 
 
 def visit_matrices(rng, candidates: int, bins: int) -> np.ndarray:

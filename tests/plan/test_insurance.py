@@ -36,8 +36,9 @@ def test_small_case_is_the_best_of_all_sets(seed):
     assert found.probability_error == 0.0
 
 
-def test_heuristic_comes_near_the_best_and_never_claims_more(monkeypatch):
-    rng = np.random.default_rng(1)
+@pytest.mark.parametrize("seed", range(8))
+def test_heuristic_comes_near_the_best_and_never_claims_more(monkeypatch, seed):
+    rng = np.random.default_rng(seed)
     gain, demand = rng.random((10, 3)), Amount(np.full(3, 1.5))
     best = robust_set(nights(10), gain, demand, Rules(cost_max=5.0), WEATHER)
     monkeypatch.setattr(insurance, "BRUTE_SETS", 0)
@@ -61,6 +62,14 @@ def test_insurance_keeps_the_base_and_raises_the_chance():
     assert np.all(np.diff(chances) > 0.0)
     kinds = np.bincount(found.chosen % 3)
     assert kinds.tolist() == [3, 3, 3]  # insurance is spread over what can fail
+
+
+def test_no_more_is_added_than_is_enough(monkeypatch):
+    monkeypatch.setattr(insurance, "BRUTE_SETS", 0)
+    gain, demand, rules = np.ones((12, 1)), Amount(np.ones(1)), Rules(cost_max=8.0)
+    found = robust_set(nights(12), gain, demand, rules, WEATHER, enough=0.8)
+    one_less = success(gain[found.added[:-1]], demand, np.sort(found.added[:-1]), WEATHER)[0]
+    assert one_less < 0.8 <= found.probability
 
 
 def test_under_persistent_weather_insurance_is_put_far_away():
