@@ -4,9 +4,10 @@ Not part of the normal run: ``python tests/long/mutate.py [--seconds S] [--seed 
 [PACKAGE ...]`` (1500, 1, mutants.jsonl, and `light detect plan`). Every comparison, sum, product, number,
 truth value and `return` of the packages can be made wrong; the sample is drawn from all of them by the seed
 and worked through until the time is up. Each fault lives in a child process alone, no file is changed, and
-the tests of its layer are run on it: first those of its own module, then the others. Results are appended to
-the state file, from which an interrupted run goes on; lines left over from another program are passed over.
-At the end the score and the faults that nothing noticed are printed.
+the tests of its layer are run on it: first the quickest of those that reach its line (measured once, before
+all faults), then all others that could notice it. Results are appended to the state file, from which an
+interrupted run goes on; lines left over from another program are passed over. At the end the score and the
+faults that nothing noticed are printed.
 """
 
 from __future__ import annotations
@@ -22,15 +23,28 @@ import random
 import resource
 import signal
 import sys
+import tempfile
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import asdict, dataclass
+from importlib import import_module
 from pathlib import Path
 
 ROOT = Path(__file__).parents[2]
 SOURCE = ROOT / "src" / "coldglow"
 CHILD_S = 60  # of processor time; the tests of a layer take 10 to 20
+QUICK = 12  # tests that are tried before all the others
+KEEPS_NOTHING = ("plan",)  # no caches, no shared fixtures: who does not reach a line cannot notice it
 CLOCKS = "not fast and not little_time and not takes_little"  # tests that measure time say nothing here
+PRELOADED = (  # what every child needs is loaded once
+    "astropy.table",
+    "hypothesis.strategies",
+    "pydantic",
+    "pytest",
+    "scipy.interpolate",
+    "scipy.optimize",
+    "scipy.stats",
+)
 COMPARE = {
     ast.Lt: ast.LtE,
     ast.LtE: ast.Lt,
@@ -154,39 +168,90 @@ class Changed(importlib.abc.MetaPathFinder, importlib.abc.Loader):
         exec(compile(self.tree, str(self.path), "exec"), module.__dict__)
 
 
-def noticed(fault: Fault, where: tuple[int, int] | None) -> str:
-    """Return how the tests took the fault: 'killed', 'late' (it ran for ever) or 'survived'.
-
-    Without a place nothing is changed.
-    """
+def in_child(task: Callable[[], int], seconds: int) -> int:
+    """Run the task in a silent child process with so much processor time; return its wait status."""
     child = os.fork()
     if child == 0:
         resource.setrlimit(resource.RLIMIT_AS, (6 << 30, 6 << 30))
-        resource.setrlimit(resource.RLIMIT_CPU, (CHILD_S, CHILD_S))
+        resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds))
         quiet = os.open(os.devnull, os.O_WRONLY)
         os.dup2(quiet, 1)
         os.dup2(quiet, 2)
-        os._exit(_tests(fault, faulty(fault.file, where or (-1, 0))))
-    _, status = os.waitpid(child, 0)
+        os.chdir(ROOT)
+        os._exit(task())
+    return os.waitpid(child, 0)[1]
+
+
+def noticed(fault: Fault, where: tuple[int, int], reached: list[str]) -> str:
+    """Return how the tests took the fault: 'killed', 'late' (it ran for ever) or 'survived'."""
+
+    def task() -> int:
+        name = "coldglow." + fault.file.removesuffix(".py").replace("/", ".")
+        sys.meta_path.insert(0, Changed(name, SOURCE / fault.file, faulty(fault.file, where)))
+        layer = fault.file.split("/")[0]
+        if reached and layer in KEEPS_NOTHING:
+            return run(reached)
+        return (run(reached[:QUICK]) if reached else 0) or run([str(ROOT / "tests" / layer)])
+
+    status = in_child(task, CHILD_S)
     if os.WIFSIGNALED(status) and os.WTERMSIG(status) in (signal.SIGXCPU, signal.SIGKILL):
         return "late"
     return "survived" if os.waitstatus_to_exitcode(status) == 0 else "killed"
 
 
-def _tests(fault: Fault, tree: ast.Module) -> int:
-    """Run the tests of the fault's module, then those of its layer; return 0 when all of them pass."""
+def run(tests: list[str], *plugins: object) -> int:
+    """Run tests until one fails; return 0 when all of them pass."""
     import pytest
 
-    os.chdir(ROOT)
-    name = "coldglow." + fault.file.removesuffix(".py").replace("/", ".")
-    sys.meta_path.insert(0, Changed(name, SOURCE / fault.file, tree))
-    layer, module = fault.file.split("/")
-    own = ROOT / "tests" / layer / f"test_{module}"
     words = ["-x", "-q", "-p", "no:cacheprovider", "-p", "no:xdist", "-k", CLOCKS]
-    folder = [str(ROOT / "tests" / layer)]
-    if own.is_file():
-        folder = [str(own), *sorted(str(path) for path in own.parent.glob("test_*.py") if path != own)]
-    return int(pytest.main([*words, *folder], [Profile()]))
+    words += ["--hypothesis-seed=1", "-W", "ignore:Module already imported:pytest.PytestAssertRewriteWarning"]
+    return int(pytest.main([*words, *tests], [Profile(), *plugins]))
+
+
+def reaching(layer: str) -> dict[str, dict[int, list[str]]]:
+    """Return the tests of a layer that reach each line of each of its files, the quickest first."""
+    from coverage import Coverage
+
+    with tempfile.TemporaryDirectory() as folder:
+        seconds = Path(folder) / "seconds.json"
+
+        def task() -> int:
+            coverage = Coverage(data_file=f"{folder}/lines", source=[str(SOURCE / layer)], config_file=False)
+            watch = Watch(coverage)
+            coverage.start()
+            end = run([str(ROOT / "tests" / layer)], watch)
+            coverage.stop()
+            coverage.save()
+            seconds.write_text(json.dumps(watch.seconds), encoding="utf-8")
+            return end
+
+        if in_child(task, 10 * CHILD_S) != 0:
+            sys.exit(f"the tests of {layer} do not pass as it is")
+        taken = json.loads(seconds.read_text(encoding="utf-8"))
+        coverage = Coverage(data_file=f"{folder}/lines", config_file=False)
+        coverage.load()
+        data = coverage.get_data()
+        return {
+            str(Path(file).relative_to(SOURCE)): {
+                line: sorted((test for test in tests if test), key=taken.__getitem__)
+                for line, tests in data.contexts_by_lineno(file).items()
+            }
+            for file in data.measured_files()
+        }
+
+
+class Watch:
+    """Notes for each test which lines it reaches, and how long it takes."""
+
+    def __init__(self, coverage) -> None:
+        self.coverage, self.seconds = coverage, {}
+
+    def pytest_runtest_logstart(self, nodeid):
+        self.coverage.switch_context(nodeid)
+        self.seconds[nodeid] = time.monotonic()
+
+    def pytest_runtest_logfinish(self, nodeid):
+        self.seconds[nodeid] = time.monotonic() - self.seconds[nodeid]
 
 
 class Profile:
@@ -216,20 +281,15 @@ def main() -> None:
     parser.add_argument("--state", type=Path, default=Path("mutants.jsonl"))
     parser.add_argument("--survivors", action="store_true", help="try again those that survived before")
     asked = parser.parse_args()
-    import astropy.table  # noqa: F401 - what every child needs is loaded once
-    import pydantic  # noqa: F401
-    import scipy.interpolate
-    import scipy.optimize
-    import scipy.stats  # noqa: F401
+    for module in PRELOADED:
+        import_module(module)
 
     before = {}
     if asked.state.is_file():
         for row in map(json.loads, asked.state.read_text(encoding="utf-8").splitlines()):
             before[Fault(**row["fault"])] = row["end"]
     every, ends, started = sample(asked.packages, asked.seed), {}, time.monotonic()
-    for file in {fault.file.split("/")[0]: fault.file for fault, _ in every}.values():
-        if noticed(Fault(file, 0, 0, "nothing", "", ""), None) != "survived":
-            sys.exit(f"the tests of {file.split('/')[0]} do not pass as it is")
+    lines = {file: tests for layer in asked.packages for file, tests in reaching(layer).items()}
     with asked.state.open("a", encoding="utf-8") as state:
         for fault, where in every:
             again = asked.survivors and before.get(fault) == "survived"
@@ -238,7 +298,7 @@ def main() -> None:
                 continue
             if (asked.survivors and not again) or time.monotonic() - started > asked.seconds:
                 continue
-            ends[fault] = noticed(fault, where)
+            ends[fault] = noticed(fault, where, lines.get(fault.file, {}).get(fault.line, []))
             state.write(json.dumps({"fault": asdict(fault), "end": ends[fault]}) + "\n")
             state.flush()
     for package in asked.packages:
