@@ -14,6 +14,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from coldglow.completion import SHELLS, Kind, Option, Syntax, completion_script
+from coldglow.encodings import allow_any_encoding
 from coldglow.errors import ColdglowError
 from coldglow.patience import teller, waiting
 
@@ -511,6 +512,7 @@ def run(arguments: Sequence[str]) -> int:
 def main(arguments: Sequence[str] | None = None) -> int:
     """Entry point of the `coldglow` command; returns the exit status."""
     words = list(sys.argv[1:] if arguments is None else arguments)
+    allow_any_encoding(sys.stdout, sys.stderr)
     if not words or words[0] in ("-h", "--help", "help"):
         print(overview())
         return DONE if words else WRONG_INPUT

@@ -12,6 +12,7 @@ import time_machine
 
 from coldglow import cli
 from coldglow.answers import hours
+from coldglow.encodings import plain_character
 
 ROOT = Path(__file__).parents[2]
 CODE = (
@@ -23,16 +24,16 @@ CODE = (
 )
 
 
-def run(words, folder, **environment):
+def run(words, folder, code=CODE, encoding="utf-8", **environment):
     """Run the command in a process of its own, warnings as errors, offline; return what it printed."""
     kept = {key: value for key, value in os.environ.items() if key not in ("LC_ALL", "LANG", "TZ", "HOME")}
     found = subprocess.run(
-        [sys.executable, "-W", "error", "-c", CODE, *map(str, words)],
+        [sys.executable, "-W", "error", "-c", code, *map(str, words)],
         env={**kept, "HOME": str(folder), **environment},
         cwd=folder,
         capture_output=True,
         text=True,
-        encoding="utf-8",
+        encoding=encoding,
     )
     assert found.returncode == 0, found.stderr
     # matplotlib itself says where it keeps its fonts when there is no home for them
@@ -84,6 +85,57 @@ def test_the_same_words_in_every_locale_and_zone(write, tmp_path):
     said = {name: run(["hours", request], tmp_path, **place) for name, place in PLACES.items()}
     assert "best from" in said["plain C"]
     assert {name: text for name, text in said.items() if text != said["plain C"]} == {}
+
+
+LOCALES = {"de_DE.UTF-8": "utf-8", "tr_TR.ISO-8859-9": "iso-8859-9"}  # decimal comma; dotless i, few letters
+SPOKEN = CODE.replace(
+    "from coldglow",
+    "import locale\n"
+    "locale.setlocale(locale.LC_ALL, '')\n"
+    "assert locale.localeconv()['decimal_point'] == ',', 'the locale is not in effect'\n"
+    "from coldglow",
+    1,
+)
+
+
+@pytest.fixture(scope="module")
+def locales(tmp_path_factory):
+    """Folder of locales that are made for the test; skipped where their sources are not installed."""
+    folder = tmp_path_factory.mktemp("locales")
+    for name in LOCALES:
+        language, _, letters = name.partition(".")
+        try:
+            words = ["localedef", "-i", language, "-f", letters, str(folder / name)]
+            subprocess.run(words, check=True, capture_output=True)
+        except (OSError, subprocess.CalledProcessError) as error:
+            if os.environ.get("COLDGLOW_LOCALES_REQUIRED"):
+                raise
+            pytest.skip(f"no sources of locales here: {error}")
+    return folder
+
+
+@pytest.mark.parametrize("name", LOCALES)
+def test_the_same_answer_in_locales_with_other_commas_and_letters(write, tmp_path, locales, name):
+    request = write(SOON, nights=("2027-11-20", "2027-11-20"))
+    place = {"LC_ALL": name, "LOCPATH": str(locales)}
+    said = run(["hours", request], tmp_path, SPOKEN, LOCALES[name], **place)
+    lacking = {letter for letter in str(hours(request)) if not encodable(letter, LOCALES[name])}
+    assert bool(lacking) == (name != "de_DE.UTF-8")
+    assert said == "".join(
+        plain_character(letter) if letter in lacking else letter for letter in f"{hours(request)}\n"
+    )
+    run(["plan", request, "--out", tmp_path / "plain"], tmp_path, LC_ALL="C.UTF-8")
+    run(["plan", request, "--out", tmp_path / "foreign"], tmp_path, SPOKEN, LOCALES[name], **place)
+    plain, foreign = (
+        {file.relative_to(tmp_path / folder): file.read_bytes() for file in _files(tmp_path / folder)}
+        for folder in ("plain", "foreign")
+    )
+    assert plain == foreign
+
+
+def encodable(letter, encoding):
+    """Return whether the encoding has the letter."""
+    return letter.encode(encoding, "ignore") != b""
 
 
 def test_decimal_commas_of_a_locale_do_not_reach_the_numbers(write, monkeypatch):

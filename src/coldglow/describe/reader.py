@@ -2,12 +2,14 @@
 
 Nothing is guessed: ``NO``, ``1e5`` and ``-30:14:16`` stay as written until the schema types them. The
 file is read as a stream of YAML events into a tree of our own, so that no tag can construct anything and
-no nesting can exhaust the stack. Duplicate keys, anchors, aliases, tags, several documents, files above
-1 MB, nesting deeper than 12 and keys longer than 100 characters are refused, all mistakes at once.
+no nesting can exhaust the stack. Duplicate keys, anchors, aliases, tags, several documents, characters that
+steer a terminal or turn the direction of writing, files above 1 MB, nesting deeper than 12 and keys longer
+than 100 characters are refused, all mistakes at once.
 """
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -24,6 +26,7 @@ LARGEST_BYTES = 1_000_000
 DEEPEST = 12
 LONGEST_KEY = 100
 MOST_PROBLEMS = 100
+HIDDEN = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x84\x86-\x9f\u061c\u200e\u200f\u202a-\u202e\u2066-\u2069]")
 _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
 
 
@@ -94,8 +97,7 @@ def parse_tree(content: bytes, file: str) -> Tree:
         builder.problems.append(Problem(file, mark.line + 1 if mark else 1, "", what))
     except yaml.reader.ReaderError as error:
         line = _line_of_character(text, error)
-        what = f"this is not YAML: the character U+{int(error.character):04X} is not allowed in it"
-        builder.problems.append(Problem(file, line, "", what))
+        builder.problems.append(Problem(file, line, "", _not_allowed(int(error.character))))
     if builder.problems:
         raise DescriptionError(capped(builder.problems))
     return tree
@@ -109,6 +111,10 @@ def capped(problems: list[Problem]) -> list[Problem]:
     last = ordered[MOST_PROBLEMS]
     more = f"and {len(ordered) - MOST_PROBLEMS} more mistakes"
     return [*ordered[:MOST_PROBLEMS], Problem(last.file, last.line, "", more)]
+
+
+def _not_allowed(character: int) -> str:
+    return f"the character U+{character:04X} is not allowed here"
 
 
 def _line_of_character(text: str, error: yaml.reader.ReaderError) -> int:
@@ -193,7 +199,9 @@ class _Builder:
         return str(event.value)
 
     def check_mark(self, event: Any, key: str) -> None:
-        """Complain of anchors, aliases and tags."""
+        """Complain of anchors, aliases, tags and hidden characters."""
+        if isinstance(event, yaml.ScalarEvent) and (hidden := HIDDEN.search(event.value)):
+            self.complain(event, key, _not_allowed(ord(hidden[0])), "remove it")
         if isinstance(event, yaml.AliasEvent):
             what = f"aliases such as {quoted(f'*{event.anchor}')} are not read"
             self.complain(event, key, what, "write it out")
