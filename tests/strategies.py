@@ -379,7 +379,7 @@ def requests(draw):
             angle_max_rad=draw(floats(0.1, 1.5)),
             lit=draw(st.sampled_from(["any", "day", "night"])),
             spot=draw(st.sampled_from(["", *spots])),
-            candidates=draw(st.sampled_from(["night", "half-night", "stretch"])),
+            candidates=draw(st.sampled_from(["night", "stretch", unit])),
             stretch_s=draw(floats(61, 86000)),
             consecutive=draw(st.booleans()),
             block_nights=draw(st.integers(1, 60)),

@@ -208,6 +208,33 @@ def test_same_answer_again_and_no_earlier_exchange():
             assert np.any(demand.share(rest + gain[other]) < 1.0 - 1e-9)
 
 
+def test_of_equally_cheap_covers_the_nights_worth_most_are_taken():
+    candidates, gain = season_instance()
+    worth = np.round(np.random.default_rng(2).random(gain.shape[0]), 2)
+    demand = Amount(np.ones(12))
+    found, plain = cover(candidates, gain, demand, worth=worth), cover(candidates, gain, demand)
+    assert found.cost == plain.cost
+    assert found.covered.all()
+    assert worth[found.chosen].sum() > worth[plain.chosen].sum()
+    for each in found.chosen:
+        rest = gain[np.setdiff1d(found.chosen, each)].sum(axis=0)
+        better = (worth > worth[each]) | ((worth == worth[each]) & (np.arange(worth.size) < each))
+        for other in np.setdiff1d(np.flatnonzero(better), found.chosen):
+            assert np.any(demand.share(rest + gain[other]) < 1.0 - 1e-9)
+
+
+@pytest.mark.parametrize("seed", range(8))
+def test_the_worthiest_of_the_cheapest_covers_against_all_subsets(seed):
+    rng = np.random.default_rng(seed)
+    gain, worth, demand = rng.random((9, 2)), rng.random(9), Amount(np.full(2, 1.7))
+    found = cover(nights(9), gain, demand, worth=worth)
+    alike = [list(each) for each in combinations(range(9), int(found.cost))]
+    full = [each for each in alike if np.all(demand.share(gain[each].sum(axis=0)) >= 1.0)]
+    assert len(full) > 1
+    assert found.cost == cover(nights(9), gain, demand).cost
+    assert worth[found.chosen].sum() == pytest.approx(max(worth[each].sum() for each in full), rel=1e-12)
+
+
 def test_time_limit_ends_with_an_honest_gap():
     candidates, gain = season_instance(92, 36, 1.3)
     found = cover(candidates, gain, Amount(np.ones(36)), seconds=0.3)

@@ -147,7 +147,8 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
     given = offers(request, (scene,), "night")
     best = int(np.argmax(given.information))
     common = use.instrument.operation.common_floor
-    open_s, fixed_k = max(need.open_s for need in wanted), seen.systematic.temperature_total_k
+    open_s = max(need.open_s for need in wanted)
+    fixed_k = seen.systematic(float(given.shutter_s[best])).temperature_total_k
     nights = float(planned.header["nights"].value) if "nights" in planned.header else np.inf
     feasible = bool(np.isfinite(open_s)) and planned.feasible
     return Verdict(

@@ -129,7 +129,7 @@ def expose_of(seen: Look, chosen: str = "", clock_s: float | None = None) -> Res
                 column("variance_share", detail.variance_share, digits=2),
                 caption="Where the noise comes from",
             ),
-            "systematics": _systematics_table(seen.systematic),
+            "systematics": _systematics_table(seen.systematic(open_s), occasion),
             "spectrum": _spectrum_table(detail),
         },
         header,
@@ -224,13 +224,13 @@ def _lines_table(detail: Detail) -> Table:
     )
 
 
-def _systematics_table(errors: SystematicErrors) -> Table:
+def _systematics_table(errors: SystematicErrors, occasion: str) -> Table:
     return table(
         column("cause", CAUSES),
         column("column_at_this_temperature", errors.fixed, digits=2, infinite="none"),
         column("column", errors.column, digits=2, infinite="none"),
         column("temperature", np.round(errors.temperature_k, 9), "K", digits=2, infinite="none"),
-        caption="Errors that no exposure time lowers, 1 sigma",
+        caption=f"Errors from elsewhere than counting, 1 sigma, {occasion}; more time lowers them little",
     )
 
 

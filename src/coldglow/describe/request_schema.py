@@ -193,6 +193,9 @@ class RequestSchema(Block):
         """Yield what one block says against another."""
         if not self.instruments:
             yield Refused("there is no instrument", "at least one", "instruments")
+        if self.coverage.candidates == "half-night" and self.dates.unit == "night":
+            what = "half-nights, but the telescope gives whole ones (`dates.unit: night`)"
+            yield Refused(what, "`unit: half-night` there, or `night` here", "coverage.candidates")
         last = self.fade.last_year
         if last is not None and self.fade.first_year is None and last < int(self.dates.first[:4]):
             yield Refused("the outlook ends before the first night", "a later year", "fade.last_year")

@@ -121,9 +121,17 @@ def _rounded_up(goal: Row) -> Row:
 
 
 def cover(
-    candidates: Candidates, gain: Array, demand: Demand, rules: Rules = NO_RULES, seconds: float = 60.0
+    candidates: Candidates,
+    gain: Array,
+    demand: Demand,
+    rules: Rules = NO_RULES,
+    seconds: float = 60.0,
+    worth: Array | None = None,
 ) -> Cover:
     """Choose the cheapest candidates that reach the goal in every bin that can be reached.
+
+    Of the full covers that cost no more, the one worth most is taken, and in any choice no candidate can be
+    exchanged for one of the same cost that is worth more, or as much and earlier.
 
     Where the rules (a limit on nights, runs of nights) leave no full cover, the choice of the largest sum
     of those bins' shares min(got/goal, 1) is made instead. Where no bin can be reached at all, the shares
@@ -135,6 +143,7 @@ def cover(
         demand: goal per bin.
         rules: limits on the choice.
         seconds: time limit; a choice that could not be proven by then carries its gap.
+        worth: ndarray[candidate], decides between equally good choices; default: all are worth the same.
 
     Returns:
         The choice; `chosen` is empty where nothing helps or nothing was found.
@@ -150,6 +159,10 @@ def cover(
     if bound == np.inf or hopeless:
         kind, bound = "most", np.inf
         chosen, gap = _most(question, reachable | hopeless, begin + seconds)
+    if gap == 0.0:
+        if worth is not None and kind == "full":
+            chosen = _worthiest(question, chosen, worth, reachable, begin + seconds)
+        chosen = _tidy(question, chosen, np.zeros(question.size) if worth is None else worth)
     share = question.share(chosen)
     taken = np.flatnonzero(chosen > 0.5)
     return Cover(
@@ -186,9 +199,18 @@ def _full(question: _Question, wanted: NDArray[np.bool_], end: float) -> tuple[A
         return np.zeros(cost.size), bound, np.inf
     gap = max(1.0 - bound / float(cost @ chosen), 0.0) if cost @ chosen > 0.0 else 0.0
     gap = gap if gap > GAP_ROUNDING else 0.0
-    if gap == 0.0:
-        chosen = _tidy(question, chosen)
     return chosen, float(bound), float(gap)
+
+
+def _worthiest(
+    question: _Question, chosen: Array, worth: Array, wanted: NDArray[np.bool_], end: float
+) -> Array:
+    """Full cover of the largest worth that costs no more than the chosen one; that one if time runs out."""
+    cost = question.model.candidates.cost
+    most = float(cost @ chosen)
+    question.cuts.append((np.arange(cost.size), cost, -np.inf, most + 1e-9 * most))
+    answer = question.settle(-worth, wanted, True, end)
+    return answer.chosen if answer.ended and answer.chosen is not None else chosen
 
 
 def _most(question: _Question, aim: NDArray[np.bool_], end: float) -> tuple[Array, float]:
@@ -199,19 +221,17 @@ def _most(question: _Question, aim: NDArray[np.bool_], end: float) -> tuple[Arra
         return np.zeros(size), 0.0 if answer.infeasible else np.inf
     got = float(np.minimum(question.share(answer.chosen), 1.0)[aim].sum())
     gap = max(-answer.bound - got, 0.0) / got if got > 0.0 else float(-answer.bound > ROUNDING)
-    if gap > ROUNDING:
-        return answer.chosen, gap
-    return _tidy(question, answer.chosen), 0.0
+    return answer.chosen, gap if gap > ROUNDING else 0.0
 
 
-def _tidy(question: _Question, chosen: Array) -> Array:
-    """Leave out what adds nothing, then exchange for earlier candidates of the same cost while one can.
+def _tidy(question: _Question, chosen: Array, worth: Array) -> Array:
+    """Leave out what adds nothing, exchange for what costs as much and is worth more (or is earlier).
 
     Neither lowers the covered share of any bin's goal below what it was (or 1), nor breaks a rule.
     """
     candidates, gain, rules = question.model.candidates, question.gain, question.model.rules
     least = np.minimum(question.share(chosen), REACHED)
-    order = np.lexsort((candidates.place, candidates.start_s))
+    order = np.lexsort((candidates.place, candidates.start_s, -worth))
     position = np.empty(order.size)
     position[order] = np.arange(order.size)
     free = allowed(candidates, rules)

@@ -142,12 +142,13 @@ def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
         order = preference(given, fixed)
     else:
         goals = [coverage_goal(choice), *goals]
-        order, method = _with_insurance(choice, goals[0], weather, factors)
+        base = _clear(choice, goals)
+        order, method = _with_insurance(choice, base, goals[0], weather, factors)
         order = preference(given, order) if choice.question.rules == Rules() else order[:MOST]
     chances = chances_of(goals, given, order, weather, factors)
     chosen = chances.smallest(request.weather.probability)
-    if choice is not None and chosen is not None and chosen >= choice.cover.chosen.size:
-        better, how = _with_insurance(choice, goals[0], weather, factors, float(chances.cost[chosen]))
+    if choice is not None and chosen is not None and chosen >= base.size:
+        better, how = _with_insurance(choice, base, goals[0], weather, factors, float(chances.cost[chosen]))
         again = np.concatenate((better, order[~np.isin(order, better)]))
         again = preference(given, again) if choice.question.rules == Rules() else better
         other = chances_of(goals, given, again, weather, factors)
@@ -174,27 +175,42 @@ def plan_of(request: Request, given: Offers, choice: Choice | None) -> Plan:
     )
 
 
+def _clear(choice: Choice, goals: list[Wanted]) -> Index:
+    """Return the cover and the brightest nights beyond it that reach every goal when all is clear."""
+    cover = choice.cover.chosen
+    if choice.stare or choice.question.rules != Rules():
+        return cover
+    order = preference(choice.question.offers, cover)
+    return order[: max(_needed(goals, order), cover.size)]
+
+
 def _with_insurance(
-    choice: Choice, goal: Wanted, weather: Weather, factors: Array | None, cost_max: float | None = None
+    choice: Choice,
+    base: Index,
+    goal: Wanted,
+    weather: Weather,
+    factors: Array | None,
+    cost_max: float | None = None,
 ) -> tuple[Index, str]:
-    """Return the cover and what helps most against the weather, in the order of asking, and the method."""
+    """Return the base and what helps most against the weather, in the order of asking, and the method."""
     question, cover, request = choice.question, choice.cover, choice.question.request
     given, rules = question.offers, question.rules
     if choice.stare:
         return np.arange(given.size), ""
-    most = min(rules.cost_max, 3.0 * cover.cost + 3.0 * float(given.cost.max()))
+    cost = float(given.cost[base].sum())
+    most = min(rules.cost_max, cost + 2.0 * cover.cost + 3.0 * float(given.cost.max()))
     found = robust_set(
         given.candidates(),
         goal.gain,
         goal.demand,
         replace(rules, cost_max=most if cost_max is None else cost_max),
         weather,
-        cover.chosen,
+        base,
         given.weather_day,
         factors,
         enough=min(request.weather.probability + SPARE, CERTAIN) if cost_max is None else np.inf,
     )
-    return np.concatenate((cover.chosen, found.added)), found.method
+    return np.concatenate((base, found.added)), found.method
 
 
 def _apart(

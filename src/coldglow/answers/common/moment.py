@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from coldglow.answers.common.visit import Visit
+from coldglow.answers.common.visit import LONGEST_S, Visit
 from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.detail import Detail, expose_one
 from coldglow.detect.exposure import Exposure, Moments, expose_moments
@@ -30,7 +30,7 @@ class Look:
     air: Air
     moment: Moments
     detail: Detail
-    systematic: SystematicErrors
+    telluric_error: NDArray[np.float64]  # ndarray[line], relative
 
     @property
     def when(self) -> str:
@@ -50,6 +50,22 @@ class Look:
         positions = 1 if self.use.instrument.operation.nod == "stare" else 2
         filters = 1 if self.use.setting.off_band_m is None else 2
         return positions * filters * float(plan.coadds[0] * plan.integration_s[0])
+
+    def systematic(self, open_s: float = 3600.0) -> SystematicErrors:
+        """Return the errors from elsewhere than counting, in a fit to so much open shutter.
+
+        The longer the exposure, the more lines have a say, and the less those errors count that are
+        independent from line to line.
+        """
+        detail = self.detail
+        return systematic_errors(
+            detail.lines.wavelength_m,
+            np.where(detail.wanted, detail.line_information, 0.0),
+            detail.temperature_slope,
+            self.telluric_error,
+            self.use.instrument.operation,
+            open_shutter_s=min(open_s, LONGEST_S),
+        )
 
     def visit_in(self, temperature_k: float, column_m2: float) -> Visit:
         """Return the visit in another state of the ionosphere."""
@@ -79,14 +95,8 @@ def look(request: Request, use: Use, track: Track) -> Look:
         use.setting,
         request.goal.lines,
     )
-    systematic = systematic_errors(
-        detail.lines.wavelength_m,
-        np.where(detail.wanted, detail.line_information, 0.0),
-        detail.temperature_slope,
-        _telluric_error(detail, instrument, moment),
-        instrument.operation,
-    )
-    return Look(request, use, track, state, air, moment, detail, systematic)
+    telluric_error = _telluric_error(detail, instrument, moment)
+    return Look(request, use, track, state, air, moment, detail, telluric_error)
 
 
 def _telluric_error(detail: Detail, instrument: Instrument, moment: Moments) -> NDArray[np.float64]:

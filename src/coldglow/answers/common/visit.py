@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -92,19 +92,29 @@ class Need:
     text: str
 
 
-def needs(goal: Goal, visit: Visit, systematic: SystematicErrors) -> tuple[Need, ...]:
-    """Return what each goal of a request needs; goals in errors are on the random error."""
+def told_after_s(wanted: Sequence[Need]) -> float:
+    """Return the open shutter after which errors are told: when all that can be reached is, or an hour."""
+    return max((need.open_s for need in wanted if np.isfinite(need.open_s)), default=3600.0)
+
+
+def needs(goal: Goal, visit: Visit, systematic: Callable[[float], SystematicErrors]) -> tuple[Need, ...]:
+    """Return what each goal of a request needs; goals in errors are on the random error.
+
+    `systematic` gives the errors from elsewhere for a time of open shutter.
+    """
     found = []
     if goal.snr is not None:
         found.append(_snr_need(goal.snr, goal.probability, visit))
     if goal.temperature_error_k is not None:
-        wanted, fixed = goal.temperature_error_k, systematic.temperature_total_k
+        wanted = goal.temperature_error_k
         open_s = visit.time_to(lambda matrix: temperature_error(matrix) ** -2.0, wanted**-2.0)
+        fixed = systematic(open_s).temperature_total_k
         beyond = f"{words.number(fixed, 2)} K" if fixed > wanted else ""
         found.append(_error_need("temperature", f"{words.short(wanted)} K", beyond, open_s, visit))
     if goal.column_error is not None:
-        wanted, fixed = goal.column_error, systematic.column_total
+        wanted = goal.column_error
         open_s = visit.time_to(lambda matrix: column_error(matrix) ** -2.0, wanted**-2.0)
+        fixed = systematic(open_s).column_total
         beyond = words.percent(fixed) if fixed > wanted else ""
         found.append(_error_need("column", f"{words.short(100.0 * wanted)} %", beyond, open_s, visit))
     return tuple(found)
@@ -133,8 +143,12 @@ def _snr_need(goal: float, probability: float, visit: Visit) -> Need:
 def _error_need(kind: str, shown: str, beyond: str, open_s: float, visit: Visit) -> Need:
     clock_s = float(visit.clock_s(open_s))
     text = f"The {kind} is known to ± {shown} (random) in {words.duration(clock_s)}"
+    if 0.0 < open_s <= visit.shortest_s:
+        text += ", the shortest visit there is"
     if not np.isfinite(open_s):
         text = f"The {kind} is never known to ± {shown}: these lines alone do not give it"
     elif beyond:
-        text += f", but the systematic error of ± {beyond} is larger than that and no time lowers it"
+        text += (
+            f", but the systematic error of ± {beyond} is larger than that, and more time lowers it little"
+        )
     return Need(f"time_to_{kind}_error", open_s, clock_s, text)

@@ -27,7 +27,8 @@ class Choice:
 def choose(request: Request, found: tuple[Scenario, ...]) -> Choice | None:
     """Return the smallest choice that covers; None where nothing can be observed.
 
-    Nights and half-nights come as `coverage.candidates` says. A single use in space becomes one stare.
+    Nights and half-nights come as `coverage.candidates` says; of equally good choices the brightest nights
+    are taken, those of the most information on the whole disk. A single use in space becomes one stare.
     """
     if is_space(request):
         return _stare(request, found[0])
@@ -36,7 +37,10 @@ def choose(request: Request, found: tuple[Scenario, ...]) -> Choice | None:
     if not given.size:
         return None
     question = question_of(request, given)
-    answer = cover(given.candidates(), question.gain, question.demand, question.rules, coverage.time_limit_s)
+    worth = np.round(given.information / max(float(given.information.max()), 1e-300), 6)
+    answer = cover(
+        given.candidates(), question.gain, question.demand, question.rules, coverage.time_limit_s, worth
+    )
     return Choice(question, answer, False)
 
 

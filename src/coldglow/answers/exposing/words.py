@@ -49,16 +49,6 @@ def header_of(seen: Look, chosen: str) -> dict[str, Entry]:
         "well_fill": Entry(float(plan.well_fill[0]), digits=2),
         "on_source_fraction": Entry(on_source, digits=3, label="on-source share of the clock"),
         "variance": Entry(noise, label="share of the variance"),
-        "systematic_column": Entry(
-            seen.systematic.fixed_total, label="systematic error of N at this T", digits=2
-        ),
-        "systematic_temperature": Entry(
-            seen.systematic.temperature_total_k,
-            "K",
-            text="" if np.isfinite(seen.systematic.temperature_total_k) else NO_TEMPERATURE,
-            digits=2,
-            label="systematic error of T",
-        ),
     }
 
 
@@ -67,6 +57,7 @@ def yields_of(seen: Look, open_s: float, occasion: str, coldest: Edge, smallest:
     visit, figure = seen.visit, seen.request.target.figure
     matrix, snr = visit.yields(open_s), words.short(seen.request.fade.significance)
     kelvin, percent = _errors(seen, open_s)
+    fixed = seen.systematic(open_s)
     faintest = edge_words(smallest, "m-2", 3)
     if smallest.kind != "none":
         along = smallest.value * mean_path_factor(figure)
@@ -76,6 +67,14 @@ def yields_of(seen: Look, open_s: float, occasion: str, coldest: Edge, smallest:
         "snr": Entry(float(visit.snr(open_s)), label=f"SNR {occasion}", digits=3),
         "temperature_error": Entry(float(temperature_error(matrix)), "K", text=kelvin, label="error of T"),
         "column_error": Entry(float(column_error(matrix)), text=percent, label="error of N, T free"),
+        "systematic_column": Entry(fixed.fixed_total, label="systematic error of N at this T", digits=2),
+        "systematic_temperature": Entry(
+            fixed.temperature_total_k,
+            "K",
+            text="" if np.isfinite(fixed.temperature_total_k) else NO_TEMPERATURE,
+            digits=2,
+            label="systematic error of T",
+        ),
         "correlation": Entry(
             float(correlation(matrix)),
             text="" if np.isfinite(temperature_error(matrix)) else NO_TEMPERATURE,
@@ -100,7 +99,7 @@ def edge_words(edge: Edge, unit: str, digits: int = 3) -> str:
 
 def _errors(seen: Look, open_s: float) -> tuple[str, str]:
     """Return the errors of temperature and column (T free) in words, random and systematic."""
-    matrix, fixed = seen.visit.yields(open_s), seen.systematic
+    matrix, fixed = seen.visit.yields(open_s), seen.systematic(open_s)
 
     def both(random: float, systematic: float, unit: str) -> str:
         if not np.isfinite(random):
@@ -137,7 +136,7 @@ def precision_sentence(seen: Look, open_s: float, occasion: str) -> str:
     known = (
         f"at a given temperature the column has a random error of "
         f"{words.percent(1.0 / float(seen.visit.snr(open_s)))} and a systematic one of "
-        f"{words.percent(seen.systematic.fixed_total)}"
+        f"{words.percent(seen.systematic(open_s).fixed_total)}"
     )
     if not np.isfinite(temperature_error(seen.visit.yields(open_s))):
         return f"These lines give no temperature: {_no_temperature(seen)}; {known} {occasion}."

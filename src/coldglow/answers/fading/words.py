@@ -52,7 +52,7 @@ def header(found: Fading) -> dict[str, Entry]:
         "seed": Entry(request.weather.seed),
     }
     if found.middle is not None and night is not None:
-        fixed = found.middle.systematic
+        fixed = found.middle.systematic(float(found.middle.visit.open_s(found.equal_s)))
         entries |= {
             "night": Entry(
                 night.date, text=words.day(night.date), label="night of the first year, its evening"

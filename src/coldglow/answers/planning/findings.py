@@ -164,7 +164,7 @@ def brightness_of(seen: Look) -> Brightness:
         bright, faint = (needs(seen.request.goal, visit, seen.systematic) for visit in pair)
         return tuple((one.clock_s, other.clock_s) for one, other in zip(bright, faint, strict=True))
 
-    air = seen.systematic.fixed[CAUSES.index("telluric table")]
+    air = seen.systematic().fixed[CAUSES.index("telluric table")]
     fixed = float(np.hypot(air, EINSTEIN_A_ERROR))
     pair, planned_rate = visits(random), float(seen.visit.yields(3600.0)[0, 0])
     bright, faint = (float(visit.yields(3600.0)[0, 0]) / planned_rate for visit in pair)

@@ -9,6 +9,7 @@ import numpy as np
 from coldglow.answers.asking.requesting import Plan
 from coldglow.answers.asking.words import climate_words
 from coldglow.answers.common.scenes import conditions_words, unseen_words
+from coldglow.answers.common.visit import told_after_s
 from coldglow.answers.fading.words import dropout_sentence
 from coldglow.answers.planning.findings import Exposed, Findings, quickest
 from coldglow.detect.exposure import NOISE_SOURCES
@@ -110,8 +111,8 @@ def _nights(plan: Plan, place: int | None) -> str:
 def measured(each: Exposed) -> dict[str, Entry]:
     """Return temperature and column as one visit to the goal (or of an hour's open shutter) measures them."""
     seen, state = each.seen, each.seen.state
-    finite = [need.open_s for need in each.needs if np.isfinite(need.open_s)]
-    matrix = seen.visit.yields(max(finite, default=3600.0))
+    open_s = told_after_s(each.needs)
+    matrix, systematic = seen.visit.yields(open_s), seen.systematic(open_s)
     kelvin, relative = float(temperature_error(matrix)), float(column_error(matrix))
     numbers = {}
     if np.isfinite(kelvin):
@@ -119,23 +120,23 @@ def measured(each: Exposed) -> dict[str, Entry]:
             state.temperature_k,
             "K",
             random_error=kelvin,
-            systematic_error=seen.systematic.temperature_total_k,
+            systematic_error=systematic.temperature_total_k,
             label="temperature as measured",
         )
         numbers["column"] = Entry(
             state.column_m2,
             "m-2",
             random_error=relative * state.column_m2,
-            systematic_error=seen.systematic.column_total * state.column_m2,
+            systematic_error=systematic.column_total * state.column_m2,
             label="vertical column as measured",
         )
     else:
-        fixed = 1.0 / float(seen.visit.snr(max(finite, default=3600.0)))
+        fixed = 1.0 / float(seen.visit.snr(open_s))
         numbers["column"] = Entry(
             state.column_m2,
             "m-2",
             random_error=fixed * state.column_m2,
-            systematic_error=seen.systematic.fixed_total * state.column_m2,
+            systematic_error=systematic.fixed_total * state.column_m2,
             label="vertical column as measured, T given",
         )
     for name in ("coldest_temperature", "smallest_column"):
@@ -191,7 +192,7 @@ def _coverage(found: Findings) -> Iterator[str]:
 
 def _limits(found: Findings) -> str:
     best = quickest(found.exposed)
-    share, fixed = best.seen.detail.variance_share, best.seen.systematic
+    share, fixed = best.seen.detail.variance_share, best.seen.systematic(told_after_s(best.needs))
     order = np.argsort(-share, kind="stable")[:2]
     noise = words.listing(
         [f"{NOISE_SOURCES[i]} ({words.percent(float(share[i]))})" for i in order if share[i] > 0.05]
@@ -200,7 +201,9 @@ def _limits(found: Findings) -> str:
     if np.isfinite(fixed.temperature_total_k):
         kelvin = words.quantity(fixed.temperature_total_k, "K", 2)
         known = f"± {kelvin} in temperature and ± {words.percent(fixed.column_total)} in column"
-    return f"What limits: noise of {noise}; systematic errors of {known}, which no exposure lowers."
+    return (
+        f"What limits: noise of {noise}; systematic errors of {known}, which a longer exposure lowers little."
+    )
 
 
 def _outlook(found: Findings) -> Iterator[str]:

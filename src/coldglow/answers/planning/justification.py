@@ -9,6 +9,7 @@ import numpy as np
 from coldglow.answers.asking.chosen import stretches_table
 from coldglow.answers.asking.words import climate_words
 from coldglow.answers.common.scenes import conditions_words, unseen_words
+from coldglow.answers.common.visit import told_after_s
 from coldglow.answers.planning.findings import Exposed, Findings, quickest
 from coldglow.answers.planning.headline import measured, request_entries, span, time_entry
 from coldglow.describe.column import mean_path_factor
@@ -106,13 +107,15 @@ def _sensitivity(each: Exposed) -> str:
 
 
 def _precision(each: Exposed) -> str:
-    seen, fixed = each.seen, each.seen.systematic
-    finite = [need.open_s for need in each.needs if np.isfinite(need.open_s)]
-    matrix = seen.visit.yields(max(finite, default=3600.0))
-    occasion = "Then" if finite else "After one hour of open shutter"
+    seen = each.seen
+    open_s = told_after_s(each.needs)
+    matrix, fixed = seen.visit.yields(open_s), seen.systematic(open_s)
+    occasion = (
+        "Then" if any(np.isfinite(need.open_s) for need in each.needs) else "After one hour of open shutter"
+    )
     kelvin, relative = float(temperature_error(matrix)), 100.0 * float(column_error(matrix))
     if not np.isfinite(kelvin):
-        random = 100.0 / float(seen.visit.snr(max(finite, default=3600.0)))
+        random = 100.0 / float(seen.visit.snr(open_s))
         return (
             f"{occasion} the column at a given temperature is known to ± {words.quantity(random, '%', 2)} "
             f"(random) ± {words.quantity(100.0 * fixed.fixed_total, '%', 2)} (systematic); these lines give "
@@ -123,7 +126,7 @@ def _precision(each: Exposed) -> str:
         f"± {words.quantity(fixed.temperature_total_k, 'K', 2)} (systematic) and the column to "
         f"± {words.quantity(relative, '%', 2)} (random) "
         f"± {words.quantity(100.0 * fixed.column_total, '%', 2)} (systematic); the latter come from flux "
-        "calibration, Einstein coefficients, the air and the floors, and no exposure lowers them."
+        "calibration, Einstein coefficients, the air and the floors; a longer exposure lowers them little."
     )
 
 

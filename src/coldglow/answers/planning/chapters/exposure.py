@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 from scipy.constants import arcsec, c
 
 from coldglow.answers.common.moment import Look
+from coldglow.answers.common.visit import told_after_s
 from coldglow.answers.planning.findings import Exposed
 from coldglow.detect.beam import Disk, point_spread, slit_angle
 from coldglow.detect.season import longitude_for_spots_rad, spot_system
@@ -186,17 +187,18 @@ def _ellipse(each: Exposed, tag: str) -> list[Picture]:
     Nothing where these lines give no temperature.
     """
     seen = each.seen
-    open_s = max((need.open_s for need in each.needs if np.isfinite(need.open_s)), default=3600.0)
+    open_s = told_after_s(each.needs)
     matrix = seen.visit.yields(open_s)
     kelvin, fraction = float(temperature_error(matrix)), float(column_error(matrix))
     if not np.isfinite(kelvin):
         return []
+    fixed = seen.systematic(open_s)
     rho, sigma = float(correlation(matrix)), np.array([fraction, kelvin])
     figure = error_ellipse(
         seen.state.temperature_k,
         seen.state.column_m2,
         np.outer(sigma, sigma) * np.array([[1.0, rho], [rho, 1.0]]),
-        (seen.systematic.column_total, seen.systematic.temperature_total_k),
+        (fixed.column_total, fixed.temperature_total_k),
     )
     hours = words.duration(float(seen.visit.clock_s(open_s)))
     text = (
