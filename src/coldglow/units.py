@@ -225,7 +225,8 @@ def write_quantity(value: float, kind: str) -> str:
     """
     shown, kept = KINDS[kind].shown, KINDS[kind].si
     guess = from_si(value * parse_unit(kept).ratio, shown)
-    for number in (guess, math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)):
+    short = float(f"{guess:.12g}")  # as somebody would have written it
+    for number in (short, guess, math.nextafter(guess, math.inf), math.nextafter(guess, -math.inf)):
         text = f"{_plain(number)} {shown}".strip()
         if parse_quantity(text, kind) == value:
             return text

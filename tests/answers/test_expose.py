@@ -105,7 +105,7 @@ def test_limits_give_the_goal_when_put_back(uranus):
 def test_limits_against_time_give_the_goal_nearly(uranus):
     # the table interpolates over 40 temperatures and 56 columns: measured within 1e-4 of the SNR
     asked, table, state = request(), uranus.table(), state_of(request())
-    for row in (0, 6, 13):
+    for row in (0, 6, -1):
         clock_s = 3600.0 * float(table["clock_time"][row])
         colder = in_state(asked, float(table["coldest_temperature"][row]), state.column_m2)
         fewer = in_state(asked, state.temperature_k, float(table["smallest_column"][row]))

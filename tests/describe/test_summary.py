@@ -31,13 +31,13 @@ def test_instruments():
 
 def test_a_goal_without_snr(repository):
     rows = dict(summary(load_request(repository / "examples" / "uranus-space.yaml")))
-    assert rows["goal"] == "temperature to 5 K; column to 5 %; with probability 0.9"
+    assert rows["goal"] == "temperature to 5 K; column to 5 %"
 
 
 def test_a_request(repository):
     rows = summary(load_request(repository / "examples" / "neptune-two-sites.yaml"))
     assert [label for label, _ in rows].count("instrument") == 2
-    assert ("goal", "SNR 3 in all lines of the setting; with probability 0.9") in rows
+    assert ("goal", "SNR 3 in all lines of the setting with probability 0.9") in rows
 
 
 @settings(deadline=None, suppress_health_check=[HealthCheck.too_slow, HealthCheck.data_too_large])

@@ -121,6 +121,7 @@ def nights_map() -> Figure:
         needed,
         (480.0, 1e15),
         (25.0, 3e14),
+        "2027",
         [str(2027 + i) for i in range(10)],
         path,
         np.full(10, 1e15) * 0.97 ** np.arange(10),

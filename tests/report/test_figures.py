@@ -259,10 +259,10 @@ HARD = {
     "no error": lambda: state.error_ellipse(480.0, 1e15, np.zeros((2, 2))),
     "huge error": lambda: state.error_ellipse(480.0, 1e15, np.diag([400.0, 1e6]), (0.1, 9.0)),
     "never anywhere": lambda: state.nights_map(
-        TK, NM2, np.full((3, 4), np.inf), (480.0, 1e15), (0.0, 0.0), budget_nights=3
+        TK, NM2, np.full((3, 4), np.inf), (480.0, 1e15), (0.0, 0.0), "2027", budget_nights=3
     ),
     "same anywhere": lambda: state.nights_map(
-        TK, NM2, np.ones((3, 4)), (480.0, 1e15), (0.0, 0.0), budget_nights=1
+        TK, NM2, np.ones((3, 4)), (480.0, 1e15), (0.0, 0.0), "2027", budget_nights=1
     ),
     "never up": lambda: season.season_chart(["2027-11-01"], HOURS, np.full((1, 9), np.nan)),
     "three years": lambda: season.season_chart(

@@ -12,7 +12,7 @@ from coldglow.answers.common.inputs import NamePath, as_request
 from coldglow.answers.common.jobs import progress
 from coldglow.answers.common.moment import Look, look
 from coldglow.answers.common.offers import offers
-from coldglow.answers.common.scenes import conditions_words, median_moment, unseen_words
+from coldglow.answers.common.scenes import conditions_words, dates_words, median_moment, unseen_words
 from coldglow.answers.common.visit import Need, needs
 from coldglow.answers.nights import nights_of
 from coldglow.describe.load import load_instrument_for, names
@@ -248,7 +248,7 @@ def compare_of(request: Request, verdicts: Sequence[Verdict]) -> Result:
             "target": Entry(request.target.name),
             "nights": Entry(
                 f"{request.dates.first} to {request.dates.last}",
-                text=f"evenings of {words.days(request.dates.first, request.dates.last)}",
+                text=dates_words(request),
             ),
             "feasible": Entry(int(feasible.sum()), text=f"{int(feasible.sum())} of {len(verdicts)} settings"),
         },

@@ -128,11 +128,19 @@ def bins_table(choice: Choice) -> Table:
 def nights_table(choice: Choice) -> Table:
     """Return what was chosen, one row each, in order of time."""
     question, chosen = choice.question, choice.cover.chosen
-    return chosen_table(question.offers, chosen, question.information)
+    spot = question.request.coverage.spot
+    if spot:
+        return chosen_table(question.offers, chosen, question.information[:, 0], f"the spot “{spot}”")
+    return chosen_table(question.offers, chosen, question.offers.information)
 
 
-def chosen_table(given: Offers, chosen: NDArray[np.int64], information: Array) -> Table:
-    """Return offers as rows: date, part, times, longitudes passed while exposing, instrument, SNR, cost."""
+def chosen_table(
+    given: Offers, chosen: NDArray[np.int64], information: Array, of_what: str = "the whole disk"
+) -> Table:
+    """Return offers as rows: date, part, times, longitudes passed while exposing, instrument, SNR, cost.
+
+    `information` ndarray[offer] is on ln N of what `of_what` names.
+    """
     several = len(given.scenes) > 1
     scenes = [given.scenes[k] for k in given.scene[chosen]]
     period_s = np.array([scene.track.system.period_s for scene in scenes])
@@ -146,10 +154,16 @@ def chosen_table(given: Offers, chosen: NDArray[np.int64], information: Array) -
         column("part", [PARTS[part] for part in given.part[chosen]]),
         column("start", iso_from_tt(start_s, "m"), description="UTC"),
         column("end", iso_from_tt(end_s, "m"), description="UTC"),
-        column("longitude_start", np.mod(end - turn, 360.0), "deg", decimals=1),
+        column(
+            "longitude_start",
+            np.mod(end - turn, 360.0),
+            "deg",
+            decimals=1,
+            description="at the first integration, after acquisition",
+        ),
         column("longitude_end", end, "deg", decimals=1),
         column("turn", turn, "deg", decimals=0, description="longitude passed while exposing"),
-        column("snr", np.sqrt(information[chosen].sum(axis=1)), digits=3),
+        column("snr", np.sqrt(information[chosen]), digits=3, description=f"of {of_what}"),
         column("instrument", [scene.use.instrument.name for scene in scenes], shown=several),
         column("setting", [scene.use.setting.name for scene in scenes], shown=several),
         column("cost", given.cost[chosen], "h" if unit == "h" else "", digits=3),

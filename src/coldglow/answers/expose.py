@@ -101,7 +101,9 @@ def expose_of(seen: Look, chosen: str = "", clock_s: float | None = None) -> Res
     detail, visit, goal = seen.detail, seen.visit, seen.request.goal
     wanted = needs(goal, visit, seen.systematic)
     open_s, occasion = _occasion(visit, wanted, clock_s)
-    times_s = np.array(SHUTTER_S)
+    times_s = np.array(
+        [time_s for time_s in SHUTTER_S if time_s >= visit.shortest_s or time_s == SHUTTER_S[-1]]
+    )
     edges = _edges(seen, np.append(times_s, open_s))
     header = header_of(seen, chosen)
     for need in wanted:
@@ -217,7 +219,7 @@ def _lines_table(detail: Detail) -> Table:
             description="of the information on T, column free",
         ),
         caption=(
-            f"The {best.size} lines of {len(lines)} that count most, one hour of open shutter. The last "
+            f"The {len(lines)} lines (printed are those that count most), one hour of open shutter. The last "
             "column is each line's share of the information on the temperature (column free)"
         ),
         rows=best.tolist(),

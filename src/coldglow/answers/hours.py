@@ -8,6 +8,7 @@ from coldglow.answers.common.inputs import NamePath, Quantity, as_request, in_si
 from coldglow.answers.common.scenes import (
     Also,
     conditions_words,
+    dates_words,
     longitude_words,
     scenes,
     unseen_words,
@@ -79,7 +80,13 @@ def hours_of(request: Request, found: tuple[Scenario, ...], wanted_s: float | No
         column("duration", join("duration_s")[order] / 3600.0, "h", decimals=2),
         column("airmass_min", join("airmass_min")[order], decimals=2, shown=in_air),
         column("airmass_max", join("airmass_max")[order], decimals=2, shown=in_air),
-        column("longitude_start", np.degrees(join("longitude_start_rad"))[order], "deg", decimals=1),
+        column(
+            "longitude_start",
+            np.degrees(join("longitude_start_rad"))[order],
+            "deg",
+            decimals=1,
+            description="where the stretch begins, acquisition included",
+        ),
         column("longitude_end", np.degrees(join("longitude_end_rad"))[order], "deg", decimals=1),
         column("range_rate", 1e-3 * join("range_rate_m_s")[order], "km s-1", decimals=2),
         column("line_transmission", join("line_transmission")[order], decimals=3, shown=in_air),
@@ -95,11 +102,7 @@ def hours_of(request: Request, found: tuple[Scenario, ...], wanted_s: float | No
         sentences.append(longitude_words(track.system, tdb_from_tt(track.grid.tt_s[[0, -1]])))
     return Result(
         "hours",
-        {
-            "hours": table(
-                *columns, caption=f"The {len(printed)} best of {snr.size} stretches", rows=list(printed)
-            )
-        },
+        {"hours": table(*columns, caption="Stretches of the season, the best first", rows=list(printed))},
         _header(request, found, rows),
         sentences,
         sorted({warning for scene in found for warning in scene.warnings}),
@@ -146,9 +149,7 @@ def _header(request: Request, found: tuple[Scenario, ...], rows: list[Stretches]
     return {
         "request": Entry(request.name),
         "target": Entry(request.target.name),
-        "nights": Entry(
-            f"{dates.first} to {dates.last}", text=f"evenings of {words.days(dates.first, dates.last)}"
-        ),
+        "nights": Entry(f"{dates.first} to {dates.last}", text=dates_words(request)),
         "goal": Entry(_goal_words(request)),
         "longitudes": Entry(request.longitudes),
         "observable_time": Entry(seen_h, "h"),

@@ -88,14 +88,18 @@ def _chances_table(plan: Plan) -> Table:
     base = 0 if plan.choice is None else int(plan.choice.cover.chosen.size)
     first = max(base - 1, 0)
     return table(
-        column("nights", plan.nights[:size], digits=3, description="requested, best first"),
+        column(
+            "nights",
+            plan.nights[:size],
+            digits=3,
+            description="in space days of time" if given.in_space else "requested, in the order of asking",
+        ),
         column("probability", chances.probability[:size], decimals=3),
         column("probability_error", chances.probability_error[:size], digits=2),
         column("observable_time", np.cumsum(given.observable_s[kept]) / 3600.0, "h", decimals=1),
         column("cost", chances.cost[:size], "h" if given.cost_unit == "h" else "", digits=4, shown=False),
         column("added", [given.name(int(i)) for i in kept]),
-        caption="Probability that the clear ones among the nights requested reach every goal"
-        + (", from the cover on" if base else ""),
+        caption="Probability that the clear ones among the nights requested reach every goal",
         rows=range(first, min(size, max((plan.chosen or 0) + BEYOND, first + 8))),
     )
 
@@ -112,7 +116,7 @@ def _requested_table(plan: Plan) -> Table:
     given, chosen = plan.offers, plan.order[: (plan.chosen or 0) + 1]
     science = set(plan.order[: plan.needed].tolist())
     chosen = chosen[np.argsort(given.start_tt_s[chosen], kind="stable")]
-    rows = chosen_table(given, chosen, given.information[:, None])
+    rows = chosen_table(given, chosen, given.information)
     purpose = ["goal" if int(i) in science else "insurance" for i in chosen]
     columns = (*rows.columns, column("purpose", purpose, description="if every night were clear"))
     return replace(rows, columns=columns, caption="What to request, in order of time")

@@ -462,3 +462,8 @@ class Request:
     fade: Fade
     ephemeris: str  # '' packaged DE421; 'builtin'; or path of an SPK file
     origin: Origin = field(default_factory=Origin, compare=False, repr=False)
+
+    @property
+    def in_space(self) -> bool:
+        """Whether all its instruments are in space."""
+        return all(isinstance(use.instrument.place, Orbit) for use in self.uses)

@@ -142,13 +142,14 @@ def _request(request: Request) -> Rows:
     aims = []
     if goal.snr is not None:
         aims.append(
-            f"SNR {goal.snr:g} in {', '.join(goal.lines) if goal.lines else 'all lines of the setting'}"
+            f"SNR {goal.snr:g} in {', '.join(goal.lines) if goal.lines else 'all lines of the setting'} with "
+            f"probability {goal.probability:g}"
         )
     if goal.temperature_error_k is not None:
         aims.append(f"temperature to {goal.temperature_error_k:g} K")
     if goal.column_error is not None:
         aims.append(f"column to {100 * goal.column_error:g} %")
-    rows.append(("goal", f"{'; '.join(aims)}; with probability {goal.probability:g}"))
+    rows.append(("goal", "; ".join(aims)))
     rows.append(("coverage", f"{request.coverage.bins} bins of longitude, by {request.coverage.candidates}"))
     rows.append(("conditions", request.conditions.name))
     rows.append(

@@ -38,9 +38,9 @@ class InformationGrid:
 class Rules:
     """What counts as detected, and what can be spent.
 
-    1/SNR^2 of n equal nights = (1/I + visit_floor^2)/n + common_floor^2. `budget_nights` are whole nights,
-    inf without a budget; `clear_nights` is the probability of 0, 1, ... budget clear nights among them,
-    None = all are clear.
+    1/SNR^2 of n equal nights = (1/I + visit_floor^2)/n + common_floor^2. `budget_nights` is inf without a
+    budget; `clear_nights` is the probability of 0, 1, ... budget clear nights among them, None = all are
+    clear. Nights are used as `whole` ones, or by the hour, as in space.
     """
 
     snr: float
@@ -48,6 +48,7 @@ class Rules:
     visit_floor: float = 0.0
     common_floor: float = 0.0
     clear_nights: Floats | None = None
+    whole: bool = True
 
 
 @dataclass(frozen=True, slots=True)
@@ -130,11 +131,13 @@ def night_information(
 
 
 def nights_for(information: ArrayLike, rules: Rules) -> Floats:
-    """Return the whole clear nights that reach the goal, inf where nothing does; shape as `information`."""
+    """Return the clear nights that reach the goal, inf where nothing does; shape as `information`."""
     per_night = with_floor(information, rules.visit_floor)
     demand = demanded_information(rules.snr, rules.common_floor)
     with np.errstate(divide="ignore", over="ignore"):
         exact = demand / per_night
+    if not rules.whole:
+        return np.asarray(exact)
     return np.maximum(1.0, np.ceil(exact * (1.0 - 1e-12)))  # exactly reached is reached, despite rounding
 
 

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coldglow.answers.asking.scatter import factors_of
-from coldglow.answers.common.offers import STRETCH, Offers, offers
+from coldglow.answers.common.offers import Offers, offers
 from coldglow.answers.covering.choice import Choice
 from coldglow.describe.records import Request
 from coldglow.plan.demand import Amount, Demand, TemperatureError
@@ -52,16 +52,13 @@ class Plan:
     factors: Array | None  # ndarray[trial, offer]
 
     def nights_until(self, place: int) -> float:
-        """Return the nights of the order up to a place: their cost, or different nights of stretches."""
+        """Return the nights of the order up to a place, as `nights` counts them."""
         return float(self.nights[place])
 
     @property
     def nights(self) -> Array:
         """Nights requested, ndarray[place in the order]."""
-        if not (self.offers.part == STRETCH).any():
-            return self.chances.cost
-        days = self.offers.day[self.order]
-        return np.array([np.unique(days[: n + 1]).size for n in range(days.size)], dtype=float)
+        return self.offers.nights_along(self.order)
 
 
 def goals_of(request: Request, given: Offers) -> list[Wanted]:

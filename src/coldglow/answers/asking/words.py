@@ -21,7 +21,7 @@ LISTED = 6
 def climate_words(request: Request, given: Offers) -> str:
     """Return the weather assumed."""
     weather = request.weather
-    if set(given.site.tolist()) <= set(given.cloudless):
+    if given.in_space:
         return "no clouds in space"
     climate = f"{words.percent(weather.clear_fraction)} of the nights clear"
     if weather.correlation:
@@ -68,7 +68,7 @@ def asked_words(plan: Plan, place: int) -> str:
     nights = words.count(plan.nights_until(place), "night")
     if plan.offers.cost_unit == "night":
         return nights
-    if set(plan.offers.site.tolist()) <= set(plan.offers.cloudless):
+    if plan.offers.in_space:
         nights = words.count(place + 1, "visit")
     return f"{plan.offers.price(float(plan.chances.cost[place]))} in {nights}"
 

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import day
 
 from coldglow.describe.records import Orbit, Request
 from coldglow.plan.goal import with_floor
@@ -74,6 +75,23 @@ class Offers:
         """Sites in space, where no cloud comes."""
         orbits = [isinstance(scene.use.instrument.place, Orbit) for scene in self.scenes]
         return tuple(sorted({int(s) for s, k in zip(self.site, self.scene, strict=True) if orbits[k]}))
+
+    @property
+    def in_space(self) -> bool:
+        """Whether all of them are in space."""
+        return set(self.site.tolist()) <= set(self.cloudless)
+
+    def nights_along(self, order: Index) -> NDArray[np.float64]:
+        """Nights used by offers one after another, ndarray[place in the order].
+
+        Their cost, or the different nights of stretches; in space the days that the time adds up to.
+        """
+        if self.in_space:
+            return np.asarray(np.cumsum(self.observable_s[order]) / day)
+        if self.cost_unit == "night":
+            return np.cumsum(self.cost[order])
+        days = self.day[order]
+        return np.array([np.unique(days[: n + 1]).size for n in range(days.size)], dtype=np.float64)
 
     @property
     def weather_day(self) -> NDArray[np.float64]:

@@ -105,6 +105,12 @@ def conditions_words(use: Use, air: Air) -> str:
     return f"seeing {seeing} at 0.5 µm, {words.quantity(1e3 * air.water_m, 'mm', 2)} of water"
 
 
+def dates_words(request: Request) -> str:
+    """Return the span of the request's nights, in space of its days."""
+    kind = "days" if request.in_space else "evenings"
+    return f"{kind} of {words.days(request.dates.first, request.dates.last)}"
+
+
 def longitude_words(system: LongitudeSystem, tdb_s: NDArray[np.float64]) -> str:
     """Return the longitude system and how well its phase is known at instants (TDB seconds from J2000)."""
     unsure_deg = float(np.degrees(np.max(absolute_phase_uncertainty_rad(system, tdb_s))))

@@ -250,7 +250,7 @@ def within_budget(choice: Choice) -> bool:
     """Return whether the choice stays within the request's budget of nights and of hours."""
     given, chosen, budget = choice.question.offers, choice.cover.chosen, choice.question.request.budget
     hours = float(given.observable_s[chosen].sum()) / 3600.0
-    nights = choice.cover.cost if given.cost_unit == "night" else float(np.unique(given.day[chosen]).size)
+    nights = float(given.nights_along(chosen)[-1]) if chosen.size else 0.0
     return budget.allows(nights, hours)
 
 

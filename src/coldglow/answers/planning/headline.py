@@ -7,7 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from coldglow.answers.asking.requesting import Plan
-from coldglow.answers.asking.words import climate_words
+from coldglow.answers.asking.words import asked_words, climate_words
 from coldglow.answers.common.scenes import conditions_words, unseen_words
 from coldglow.answers.common.visit import told_after_s
 from coldglow.answers.fading.words import dropout_sentence
@@ -91,7 +91,7 @@ def request_entries(found: Findings) -> dict[str, Entry]:
     nights, trailing = str(header["nights"]), ""
     chance = words.probability(float(header["probability"].value))
     if spread is not None:
-        few, many = (_nights(plan, place) for place in spread.place)
+        few, many = (_asked(plan, place) for place in spread.place)
         trailing = f" ({few} if the planet is 1σ brighter, {many} if fainter)" if few != many else ""
         bright, faint = (words.probability(each) for each in spread.probability)
         chance += f" ({bright} if the planet is 1σ brighter, {faint} if fainter)" if bright != faint else ""
@@ -101,11 +101,11 @@ def request_entries(found: Findings) -> dict[str, Entry]:
     }
 
 
-def _nights(plan: Plan, place: int | None) -> str:
-    """Return how many nights end at a place of the order; None: more than all of it."""
-    if place is None:
-        return f"more than {words.short(float(plan.nights[-1]))}"
-    return words.short(float(plan.nights[place]))
+def _asked(plan: Plan, place: int | None) -> str:
+    """Return what ends at a place of the order, without its unit of nights; None: more than all of it."""
+    last = plan.order.size - 1 if place is None else place
+    text = asked_words(plan, last).removesuffix(" nights").removesuffix(" night")
+    return f"more than {text}" if place is None else text
 
 
 def measured(each: Exposed) -> dict[str, Entry]:
@@ -156,6 +156,7 @@ def _how_long(found: Findings) -> str:
     for index, need in enumerate(best.needs):
         if np.isfinite(need.clock_s):
             text = f"{names[need.name]} takes {words.duration(need.clock_s)} of clock time"
+            text += ", the shortest visit" if need.open_s <= best.seen.visit.shortest_s else ""
             random = span(best.brightness.random_s[index])
             parts.append(f"{text} ({random} if the planet is 1σ brighter or fainter)" if random else text)
         else:
@@ -175,13 +176,14 @@ def _how_many(found: Findings) -> str:
     if len(days) <= DATES_NAMED:
         which = words.listing([words.day(day) for day in days])
     else:
-        which = f"{len(days)} evenings from {words.day(days[0])} to {words.day(days[-1])}"
+        noun = "day" if found.request.in_space else "evening"
+        which = f"{words.count(len(days), noun)} from {words.day(days[0])} to {words.day(days[-1])}"
     text = (
         f"How many nights: {header['nights']} ({which}) reach {header['goal']} with probability "
         f"{words.probability(float(header['probability'].value))}"
     )
     if plan.chosen is not None and 0 < plan.needed <= plan.chosen:
-        text += f"; if all were clear, {words.short(float(plan.nights[plan.needed - 1]))} would do"
+        text += f"; if all were clear, {asked_words(plan, plan.needed - 1)} would do"
     return f"{text}."
 
 

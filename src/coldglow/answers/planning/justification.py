@@ -8,7 +8,7 @@ import numpy as np
 
 from coldglow.answers.asking.chosen import stretches_table
 from coldglow.answers.asking.words import climate_words
-from coldglow.answers.common.scenes import conditions_words, unseen_words
+from coldglow.answers.common.scenes import conditions_words, dates_words, unseen_words
 from coldglow.answers.common.visit import told_after_s
 from coldglow.answers.planning.findings import Exposed, Findings, quickest
 from coldglow.answers.planning.headline import measured, request_entries, span, time_entry
@@ -44,13 +44,12 @@ def _request(found: Findings) -> str:
     uses = [
         f"{each.seen.use.instrument.name} (setting {each.seen.use.setting.name})" for each in found.exposed
     ]
-    span = words.days(request.dates.first, request.dates.last)
     asked = f"We ask for {header['nights']}" if "nights" in header else "We looked for nights"
     verdict = (
         "" if found.feasible else " The goal is not reached with what is offered; the numbers below say why."
     )
     return (
-        f"{asked} with {words.listing(uses, 'or')} on evenings of {span} to measure the H₃⁺ lines "
+        f"{asked} with {words.listing(uses, 'or')} on {dates_words(request)} to measure the H₃⁺ lines "
         f"[@drossart1989] of {request.target.name}. The goal is {header['goal']}.{verdict}"
     )
 
@@ -65,10 +64,11 @@ def _state(found: Findings) -> str:
     law = ""
     if abs(then - emission.temperature_k.value) >= 1.0:
         law = f" (the {words.quantity(then, 'K')} of {words.day(cooling.epoch)}, cooled to these nights)"
+    factor = words.number(float(np.exp(best.brightness.random)))
     return (
         f"The ionosphere is taken at {kelvin} with a vertical column of {column}, mean over the shell{law}; "
         f"{along} along the line of sight, mean over the visible disk. The two uncertainties together "
-        f"leave the light of these lines uncertain by {words.percent(best.brightness.random)} (1σ). Poles, "
+        f"leave the light of these lines uncertain by a factor of {factor} (1σ). Poles, "
         "meridians and radii are those of the IAU working group [@archinal2018]."
     )
 

@@ -83,7 +83,7 @@ def _decided(found: Findings, standards: str) -> Iterator[Assumption]:
         f"target {target.name}, block `emission`: `lte_fraction` (published columns assume equilibrium)",
     )
     if found.fading is not None:
-        law = f"{law_words(emission, cooling)}; applied in the outlook only"
+        law = law_words(target.emission, cooling)
         yield Assumption("cooling", law, f"target {target.name}, block `cooling`")
     for scene in found.scenes:
         use = scene.use

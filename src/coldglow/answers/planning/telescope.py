@@ -61,13 +61,14 @@ def _event(request: Request, stretch: Stretch, stars: Sequence[Standard]) -> Eve
         standards_after=tuple(str(star) for star in stars if star.when == "after"),
     )
     place, name = scene.use.instrument.place, scene.use.instrument.name
+    standard = " and standard star" if any(star.when == "before" for star in stars) else ""
     where = "" if isinstance(place, Orbit) else f", {_site_words(place)}"
     return Event(
         str(iso_from_tt(stretch.start_tt_s)),
         str(iso_from_tt(stretch.end_tt_s)),
         f"{request.target.name}, {name} ({scene.use.setting.name})",
         (
-            f"First integration {_clock(stretch.exposing_tt_s)} UTC, after acquisition and standard star",
+            f"First integration {_clock(stretch.exposing_tt_s)} UTC, after acquisition{standard}",
             *describe_stretch(facts),
             f"{scene.use.instrument.operation.nod}: {frames_words(stretch)}; "
             f"expected SNR {words.number(stretch.snr)}",
@@ -91,12 +92,15 @@ def frames_words(stretch: Stretch) -> str:
     integration_s, coadds, _ = stretch.setup
     operation = stretch.scene.use.instrument.operation
     positions = int(stretch.open_s / (integration_s * coadds) + 1e-9)
+    if operation.nod == "on-slit" and positions > 1:
+        positions -= positions % 2  # A and B alike
     each = f"{words.count(coadds, 'integration')} of {words.short(integration_s)} s"
-    total = f"{words.duration(stretch.open_s)} of open shutter"
+    total = f"{words.duration(positions * coadds * integration_s)} of open shutter"
     if operation.nod == "stare":
         return f"{words.count(positions, 'integration')} of {words.short(integration_s)} s ({total})"
     if operation.nod == "on-slit":
-        return f"{words.count(positions, 'position')}, {each} in each, the target in A and B alike ({total})"
+        alike = ", the target in A and B alike" if positions > 1 else ""
+        return f"{words.count(positions, 'position')}, {each} in each{alike} ({total})"
     share = words.percent(operation.on_fraction)
     return f"{words.count(positions, 'position')}, {each} in each, {share} of them on the target ({total})"
 
@@ -123,8 +127,9 @@ def _plan(request: Request, pairs: Pairs) -> NightPlan:
     facts["setting"] = Entry(settings)
     facts["conditions"] = Entry(conditions_words(scene.use, scene.air), label="conditions planned for")
     steps = [step for stretch, stars in pairs for step in _steps(stretch, stars)]
+    kind = "seen from the point that the telescope orbits" if in_space else "topocentric"
     notes = [
-        "Times are UTC. Right ascension and declination are astrometric (ICRS) and topocentric; rates are "
+        f"Times are UTC. Right ascension and declination are astrometric (ICRS) and {kind}; rates are "
         "relative to the stars, that of right ascension times the cosine of the declination; the longitude "
         f"is planetographic in system {scene.track.system.name}."
     ]

@@ -25,9 +25,12 @@ class ChanceCurve:
 
 @look.styled
 def probability_against_nights(
-    curves: Sequence[ChanceCurve], wanted: float, requested: float | None = None
+    curves: Sequence[ChanceCurve], wanted: float, requested: float | None = None, unit: str = "night"
 ) -> Figure:
-    """Draw one curve per kind of weather, the wanted probability, and the request that reaches it."""
+    """Draw one curve per kind of weather, the wanted probability, and the request that reaches it.
+
+    `unit` names what is asked for, in the singular.
+    """
     figure, ((main,),) = look.panels(3.4, margins_in=(0.6, 0.25, 0.65, 0.5))
     markers = "osD^v"
     for index, curve in enumerate(curves):
@@ -54,14 +57,14 @@ def probability_against_nights(
         main.axvline(requested, color=look.SOFT, linewidth=1)
         left = requested > 0.7 * most
         main.annotate(
-            f"ask for {words.count(requested, 'night')}", (requested, 0.03), xytext=(-4 if left else 4, 0),
+            f"ask for {words.count(requested, unit)}", (requested, 0.03), xytext=(-4 if left else 4, 0),
             textcoords="offset points", ha="right" if left else "left",
         )  # fmt: skip
     main.set_ylim(0, 1.06)
     main.set_yticks(np.linspace(0, 1, 6), [f"{share} %" for share in range(0, 101, 20)])
     main.set_xlim(0, most * 1.03)
     main.xaxis.get_major_locator().set_params(integer=True)
-    look.name_axes(main, "nights asked for", "probability of success")
+    look.name_axes(main, f"{unit}s asked for", "probability of success")
     if len(curves) > 1:
         main.legend(loc="lower right", bbox_to_anchor=(1, 1.0), ncols=len(curves), borderaxespad=0.2)
     return figure

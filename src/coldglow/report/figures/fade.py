@@ -23,10 +23,12 @@ def fade(
     nights_needed: Interval,
     budget_nights: float | None = None,
     last_year: float | None = None,
+    unit: str = "night",
 ) -> Figure:
     """Draw three panels over the years; `last_year` is the last in which the budget suffices.
 
-    Nights may be infinite ("never"): they leave the panel at its top.
+    `unit` names what is needed, in the singular. Nights may be infinite ("never"): they leave the panel at
+    its top.
     """
     figure, axes = look.panels(
         6.2, rows=(1, 1, 1), gap_in=(0.42, 0), margins_in=(0.65, 0.3, 0.35, 0.75), sharex=True
@@ -40,8 +42,8 @@ def fade(
     bright.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{words.short(100 * value)} %"))
     bright.yaxis.set_minor_formatter("")
     look.name_axes(bright, "", "brightness, relative to the first year")
-    _nights(cost, year, nights_needed, budget_nights)
-    look.name_axes(cost, "year", "nights needed")
+    _nights(cost, year, nights_needed, budget_nights, unit)
+    look.name_axes(cost, "year", f"{unit}s needed")
     for panel in axes[:, 0]:
         panel.set_xlim(float(year[0]), float(year[-1]) if len(year) > 1 else float(year[0]) + 1)
         if last_year is not None:
@@ -60,7 +62,9 @@ def _band(axes: Axes, year: NDArray[np.float64], interval: Interval) -> None:
     axes.plot(year, middle, color=look.BLUE, marker="o", markersize=3.5)
 
 
-def _nights(axes: Axes, year: NDArray[np.float64], interval: Interval, budget: float | None) -> None:
+def _nights(
+    axes: Axes, year: NDArray[np.float64], interval: Interval, budget: float | None, unit: str
+) -> None:
     finite = np.concatenate(
         [bound[np.isfinite(bound)] for bound in interval] + [np.array([1.0, budget or 1.0])]
     )
@@ -74,6 +78,6 @@ def _nights(axes: Axes, year: NDArray[np.float64], interval: Interval, budget: f
     if budget is not None:
         axes.axhline(budget, color=look.BRICK, linewidth=1, linestyle=look.DASHES[1])
         axes.annotate(
-            f"budget {words.count(budget, 'night')}", (0, budget), xycoords=("axes fraction", "data"),
+            f"budget {words.count(budget, unit)}", (0, budget), xycoords=("axes fraction", "data"),
             xytext=(4, 4), textcoords="offset points", color=look.BRICK,
         )  # fmt: skip

@@ -27,17 +27,20 @@ def nights_map(
     temperature_k: NDArray[np.float64],
     column_m2: NDArray[np.float64],
     nights_needed: NDArray[np.float64],
-    today: tuple[float, float],
-    today_error: tuple[float, float],
+    state: tuple[float, float],
+    state_error: tuple[float, float],
+    when: str,
     years: Sequence[str] = (),
     path_k: NDArray[np.float64] | None = None,
     path_m2: NDArray[np.float64] | None = None,
     budget_nights: float | None = None,
+    unit: str = "night",
 ) -> Figure:
     """Draw the nights needed, ndarray[column, temperature] (inf = never), and the target's way through them.
 
-    The grid has at least two steps each way. `today` is (T in K, N in m-2), `today_error` their 1-sigma
-    errors (K, m-2); `path_k`, `path_m2`: ndarray[year], named by `years`.
+    The grid has at least two steps each way. `state` is (T in K, N in m-2), `state_error` their 1-sigma
+    errors (K, m-2), `when` its year; `path_k`, `path_m2`: ndarray[year], named by `years`; `unit` names what
+    is needed, in the singular.
     """
     figure, ((main, scale),) = look.panels(
         4.5, columns=(1, 0.025), margins_in=(0.65, 0.6, 0.4, 0.85), gap_in=(0, 0.3)
@@ -58,12 +61,12 @@ def nights_map(
     )
     main.set_yscale("log")
     look.powers_of_ten(main.yaxis)
-    _draw_levels(main, temperature_k, column_m2, filled, high, budget_nights)
+    _draw_levels(main, temperature_k, column_m2, filled, high, budget_nights, unit)
     main.set_xlim(float(temperature_k[0]), float(temperature_k[-1]))
     main.set_ylim(float(column_m2[0]), float(column_m2[-1]))
     if path_k is not None and path_m2 is not None and len(path_k) > 1:
         _draw_way(main, years, path_k, path_m2)
-    _draw_today(main, today, today_error)
+    _draw_state(main, state, state_error, when)
     main.set_xlabel("temperature (K)")
     main.set_title(_COLUMN)
     main.legend(loc="upper center", bbox_to_anchor=(0.5, -0.16), ncols=3, borderaxespad=0)
@@ -73,7 +76,7 @@ def nights_map(
     scale.yaxis.set_major_formatter(lambda value, _: words.short(value))
     scale.yaxis.set_minor_formatter(NullFormatter())
     scale.tick_params(length=0, which="both")
-    scale.set_title("nights")
+    scale.set_title(f"{unit}s")
     return figure
 
 
@@ -84,6 +87,7 @@ def _draw_levels(
     filled: NDArray[np.float64],
     high: float,
     budget_nights: float | None,
+    unit: str,
 ) -> None:
     """Draw and number the lines of equal nights, and the line of the budget."""
     low, top = float(filled.min()), min(high, float(filled.max()))
@@ -97,7 +101,7 @@ def _draw_levels(
             name.set_path_effects(_HALO)
     if budget_nights is not None and low < budget_nights < float(filled.max()):
         axes.contour(temperature_k, column_m2, filled, [budget_nights], colors=look.BRICK, linewidths=2)
-        axes.plot([], [], color=look.BRICK, label=f"budget {words.count(budget_nights, 'night')}")
+        axes.plot([], [], color=look.BRICK, label=f"budget {words.count(budget_nights, unit)}")
 
 
 def _draw_way(
@@ -124,12 +128,12 @@ def _draw_way(
             )
 
 
-def _draw_today(axes: Axes, today: tuple[float, float], error: tuple[float, float]) -> None:
+def _draw_state(axes: Axes, state: tuple[float, float], error: tuple[float, float], when: str) -> None:
     angle = np.linspace(0, 2 * np.pi, 100)
-    ring = today[1] * np.exp(np.sin(angle) * error[1] / today[1])
-    axes.plot(today[0] + error[0] * np.cos(angle), ring, color=look.INK, lw=1.2, path_effects=_HALO)
+    ring = state[1] * np.exp(np.sin(angle) * error[1] / state[1])
+    axes.plot(state[0] + error[0] * np.cos(angle), ring, color=look.INK, lw=1.2, path_effects=_HALO)
     axes.plot(
-        *today, "*", color=look.INK, mec=look.PAPER, ms=12, linestyle="none", label="today, ring: its 1σ"
+        *state, "*", color=look.INK, mec=look.PAPER, ms=12, linestyle="none", label=f"{when}, ring: its 1σ"
     )
 
 

@@ -79,13 +79,15 @@ def _spectrum(seen: Look, result: Result, tag: str) -> Picture:
         span,
     )
     best = f"{lines['label'][strongest]} at {lines['wavelength'][strongest]:.4f} µm"
+    with_air = "" if atmosphere is None else " with the transmission of the air"
+    above = "" if atmosphere is None else " and the transmission of the air above"
     return Picture(
         f"spectrum{tag}",
         figure,
-        f"Forecast spectrum between {span[0]:.3f} and {span[1]:.3f} micron with the "
-        f"transmission of the air; the line that counts most is {best}.",
-        f"The H₃⁺ lines as the detector sees them, with the background under them and the transmission of "
-        f"the air above; the lines stand where the planet's motion puts them. {best} counts most.",
+        f"Forecast spectrum between {span[0]:.3f} and {span[1]:.3f} micron{with_air}; the line that counts "
+        f"most is {best}.",
+        f"The H₃⁺ lines as the detector sees them, with the background under them{above}; "
+        f"the lines stand where the planet's motion puts them. {best} counts most.",
     )
 
 
@@ -123,7 +125,8 @@ def _against_time(each: Exposed, tag: str) -> Picture:
         figure,
         f"SNR against clock time, rising to {expected[-1]:.3g} after {last_s / 3600.0:.3g} hours.",
         "How the signal-to-noise ratio of all the goal's lines together grows with time on the clock; the "
-        f"band is a planet 1σ brighter or fainter (± {words.percent(light.random)}). The bar below says "
+        f"band is a planet 1σ brighter or fainter ({words.number(float(brighter))} and "
+        f"{words.number(float(fainter))} times the light). The bar below says "
         "where the noise comes from.",
     )
 

@@ -25,7 +25,10 @@ def nights_chapter(request: Request, result: Result) -> Section:
             np.asarray(table["probability_error"], dtype=float),
         )
         figure = probability_against_nights(
-            [curve], weather.probability, None if requested is None else float(requested)
+            [curve],
+            weather.probability,
+            None if requested is None else float(requested),
+            "day" if request.in_space else "night",
         )
         wanted = words.probability(weather.probability)
         pictures = [

@@ -38,16 +38,18 @@ def _years(found: Fading, table: Table) -> list[Picture]:
         _interval(table, "nights_needed"),
         found.budget.nights,
         drops - 1.0 if np.isfinite(drops) and drops > table["year"][0] else None,
+        found.budget.unit,
     )
+    needed = f"{found.budget.unit}s needed"
     first, last = int(table["year"][0]), int(table["year"][-1])
     left = words.percent(float(table["relative_brightness"][-1]))
     return [
         Picture(
             "fade",
             figure,
-            f"Temperature, brightness and clear nights needed from {first} to {last}; {left} of the light of "
-            f"{first} is left at the end.",
-            f"Temperature, brightness over that of {first}, and clear nights needed for a detection, year by "
+            f"Temperature, brightness and {needed} from {first} to {last}; {left} of the light "
+            f"of {first} is left at the end.",
+            f"Temperature, brightness over that of {first}, and {needed} for a detection, year by "
             "year with that year's geometry. The bands hold the central 68 % of the possible planets.",
         )
     ]
@@ -69,17 +71,20 @@ def _map(found: Fading, table: Table) -> Picture:
         grid("nights_needed").T,
         (float(kelvin[0]), float(column_m2[0])),
         (spread_k, spread_m2),
+        years[0],
         years if moves else (),
         kelvin if moves else None,
         column_m2 if moves else None,
         found.budget.nights,
+        found.budget.unit,
     )
+    needed = f"{words.sentence_case(found.budget.unit)}s needed"
     way = ", with the way that the cooling law takes through them" if moves else ""
     return Picture(
         "nights-map",
         figure,
-        f"Clear nights needed over temperature and vertical column; {found.request.target.name} stands at "
+        f"{needed} over temperature and vertical column; {found.request.target.name} stands at "
         f"{kelvin[0]:.0f} K in {years[0]}.",
-        f"Clear nights needed for SNR {words.short(found.rules.snr)} over temperature and vertical column in "
+        f"{needed} for SNR {words.short(found.rules.snr)} over temperature and vertical column in "
         f"the geometry of {years[0]}{way}. The cross shows the state of that year and its uncertainty.",
     )
