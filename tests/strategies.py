@@ -39,6 +39,7 @@ from coldglow.describe.records import (
     Use,
     Weather,
 )
+from coldglow.describe.request_schema import ANGLE_MAX_RAD
 from coldglow.units import KINDS
 
 
@@ -352,6 +353,7 @@ def requests(draw):
     goals = {"snr": None, "temperature_error_k": None, "minutes": None}
     goals[bin_goal] = draw(floats(1.01, 999))
     spots = [spot.name for spot in target.emission.spots]
+    latitude = draw(latitudes) if bin_goal == "minutes" and draw(st.booleans()) else None
     return Request(
         name=draw(words),
         target=target,
@@ -375,10 +377,10 @@ def requests(draw):
         ),
         coverage=Coverage(
             bins=draw(st.integers(1, 72)),
-            latitude_rad=draw(st.none() | latitudes),
-            angle_max_rad=draw(floats(0.1, 1.5)),
-            lit=draw(st.sampled_from(["any", "day", "night"])),
-            spot=draw(st.sampled_from(["", *spots])),
+            latitude_rad=latitude,
+            angle_max_rad=ANGLE_MAX_RAD if latitude is None else draw(floats(0.1, 1.5)),
+            lit="any" if latitude is None else draw(st.sampled_from(["any", "day", "night"])),
+            spot="" if latitude is not None else draw(st.sampled_from(["", *spots])),
             candidates=draw(st.sampled_from(["night", "stretch", unit])),
             stretch_s=draw(floats(61, 86000)),
             consecutive=draw(st.booleans()),

@@ -75,6 +75,20 @@ def test_resolution_on_a_small_disk_by_hand():
     assert resolution_rad(3.0, 2.3) == pytest.approx(np.pi)  # a blurred planet resolves nothing
 
 
+@pytest.mark.parametrize("latitude", [-80.0, -30.0, 0.0, 45.0, 77.6])
+def test_resolution_where_the_disk_centre_shows_a_latitude_against_turned_points(latitude):
+    # a point half the blur east of the disk's centre, turned back into the planet's frame
+    tilt, east = latitude * DEG, 0.82 / 3.7
+    towards = np.sqrt(1.0 - east**2)
+    meridian, _ = np.cos(tilt) * towards, np.sin(tilt) * towards
+    assert resolution_rad(0.82, 3.7, 0.0, tilt) == pytest.approx(2.0 * np.arctan2(east, meridian), rel=1e-12)
+
+
+def test_seen_from_above_the_pole_nothing_is_resolved():
+    assert resolution_rad(0.01, 3.7, 0.0, 90.0 * DEG) == pytest.approx(np.pi)
+    assert resolution_rad(0.82, 3.7, 0.0, 77.6 * DEG) / DEG == pytest.approx(93.2, abs=0.1)
+
+
 def interest(latitude, angle, lit="any", sub_latitude=0.0, sun_latitude=0.0, sun_longitude=0.0) -> Interest:
     one = np.ones(1)
     return Interest(

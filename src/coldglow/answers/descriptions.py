@@ -9,13 +9,13 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from coldglow.answers.common.inputs import NamePath
+from coldglow.answers.common.inputs import NamePath, described, placed
 from coldglow.describe.draft import draft as draft_text
 from coldglow.describe.load import load_any, load_instrument, load_target, names
 from coldglow.describe.records import Instrument, Request, Target
 from coldglow.describe.resolved import resolved
 from coldglow.describe.summary import summary
-from coldglow.errors import ColdglowError, DescriptionError, NotFoundError, Problem
+from coldglow.errors import ColdglowError, DescriptionError, NotFoundError, Problem, RangeError
 from coldglow.report import words
 from coldglow.report.files import write_text
 from coldglow.report.results import Entry, Result, column, table
@@ -39,7 +39,7 @@ class Described(Result):
 
 
 def check(files: Sequence[NamePath]) -> Result:
-    """Read descriptions and say what was understood.
+    """Read descriptions, work out whether what they ask is possible at all, and say what was understood.
 
     Raises:
         DescriptionError: with every mistake of every file.
@@ -50,10 +50,14 @@ def check(files: Sequence[NamePath]) -> Result:
     """
     problems: list[Problem] = []
     rows: list[tuple[str, str, str]] = []
+    unseen: list[str] = []
     for file in files:
         name = os.fspath(file)
         try:
-            rows += [(name, label, value) for label, value in summary(load_any(file))]
+            record = load_any(file)
+            rows += [(name, label, value) for label, value in summary(record)]
+            if isinstance(record, Request):
+                unseen += _worked_out(record)
         except DescriptionError as error:
             problems += error.problems
         except ColdglowError as error:
@@ -71,8 +75,29 @@ def check(files: Sequence[NamePath]) -> Result:
             )
         },
         {},
-        [f"{words.count(len(files), 'file')} read; nothing is wrong."],
+        [f"{words.count(len(files), 'file')} read; nothing is wrong.", *unseen],
     )
+
+
+def _worked_out(request: Request) -> list[str]:
+    """Go through a request's season as far as its answers share it; say where nothing can be observed.
+
+    Raises:
+        DescriptionError: what is asked cannot be worked out.
+
+    """
+    from coldglow.answers.common.scenes import unseen_words
+    from coldglow.answers.covering.coverage import view_of_bins
+    from coldglow.scenario import scenario, watch
+
+    try:
+        found = [scenario(request, use, watch(request, use)) for use in request.uses]
+        for scene in found if request.coverage.asked else ():
+            view_of_bins(request, scene)
+    except (RangeError, NotFoundError) as error:
+        problem = placed(error, *described(request))
+        raise DescriptionError([problem or Problem(request.origin.file, 1, "", str(error))]) from None
+    return [unseen_words(scene) for scene in found if not scene.usable.any()]
 
 
 def show(name: str = "") -> Result:

@@ -96,7 +96,9 @@ def draft(target: str, instrument: str, first: str = "2027-09-01", last: str = "
         first=first,
         last=last,
         limit="airmass_max: 1.8" if ground else "longest_visit: 12 h",
-        spot=f"spot: {_scalar(spots[0])}" if spots else "latitude: 45 deg",
+        spot=f"spot: {_scalar(spots[0])}"
+        if spots
+        else "latitude: 45 deg  # with a time for each bin, not an snr",
         clear="70 %" if ground else "100 %",
         correlation="0.3" if ground else "0",
         first_year=first[:4],

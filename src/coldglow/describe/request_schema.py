@@ -28,6 +28,7 @@ from coldglow.describe.records import (
 )
 from coldglow.units import parse_quantity
 
+ANGLE_MAX_RAD = parse_quantity("60 deg", "angle")  # of a latitude of interest from the sub-observer point
 _PROBABILITY = Annotated[float, quantity("fraction", "0.001", "0.999999")]
 _SNR = Annotated[float | None, quantity("number", "0.1", "1e6")]
 _KELVIN = Annotated[float | None, quantity("temperature difference", "0.001 K", "1000 K")]
@@ -62,7 +63,8 @@ class DatesBlock(Block):
                 if " " in night and self.unit == "night":
                     yield Refused(f"`{night}` is half a night", "`unit: half-night`, or whole nights", key)
         for night in self.fixed:
-            if night in self.forbidden or (self.offered and night not in self.offered):
+            named = {night, night[:10]}
+            if named & {*self.forbidden} or (self.offered and not named & {*self.offered}):
                 yield Refused(f"the fixed night {night} is not allowed", "a night that is offered", "fixed")
 
 
@@ -89,7 +91,7 @@ class CoverageBlock(Block):
     temperature_error: _KELVIN = None
     time: Annotated[float | None, quantity("minutes", "1 min", "1000 h")] = None
     latitude: Annotated[float | None, quantity("angle", "-90 deg", "90 deg")] = None
-    angle_max: Annotated[float, quantity("angle", "1 deg", "90 deg")] = parse_quantity("60 deg", "angle")
+    angle_max: Annotated[float | None, quantity("angle", "1 deg", "90 deg")] = None
     lit: Annotated[Literal["any", "day", "night"], fields.Word] = "any"
     spot: fields.Name | None = None
     candidates: Annotated[Literal["night", "half-night", "stretch"], fields.Word] = "night"
@@ -105,6 +107,15 @@ class CoverageBlock(Block):
         given = [key for key in ("snr", "temperature_error", "time") if getattr(self, key) is not None]
         for key in given[1:]:
             yield Refused(f"the bins have the goal `{given[0]}` already", "one goal per bin", key)
+        if self.latitude is not None and self.spot is not None:
+            yield Refused("a spot has a latitude of its own", "`spot` or `latitude`", "latitude")
+        elif self.latitude is not None and given[:1] not in ([], ["time"]):
+            what = f"`{given[0]}`: the light of a latitude does not come apart from the rest of the disk"
+            yield Refused(what, "`time` with a `latitude`, or a `spot`", given[0])
+        if self.latitude is None:
+            for key, given_one in (("angle_max", self.angle_max is not None), ("lit", self.lit != "any")):
+                if given_one:
+                    yield Refused("this is asked of a `latitude`, and there is none", "both or none", key)
 
 
 class ConditionsBlock(Block):
@@ -206,8 +217,9 @@ class RequestSchema(Block):
         snr = cover.snr
         kelvin, minutes = cover.temperature_error, cover.time
         if snr is None and kelvin is None and minutes is None:  # the goal of the whole, in every bin
-            snr = goal.snr
-            kelvin = goal.temperature_error if snr is None else None
+            whole = cover.latitude is None
+            snr = goal.snr if whole else None
+            kelvin = goal.temperature_error if whole and snr is None else None
             minutes = 30.0 if snr is None and kelvin is None else None
         first_year = self.fade.first_year or int(dates.first[:4])
         return Request(
@@ -231,7 +243,7 @@ class RequestSchema(Block):
                 temperature_error_k=kelvin,
                 minutes=minutes,
                 latitude_rad=cover.latitude,
-                angle_max_rad=cover.angle_max,
+                angle_max_rad=ANGLE_MAX_RAD if cover.angle_max is None else cover.angle_max,
                 lit=cover.lit,
                 spot=cover.spot or "",
                 candidates=cover.candidates,

@@ -146,13 +146,14 @@ def _flag(value: bool) -> str:
 
 
 def _coverage(coverage: Coverage) -> dict[str, Any]:
+    has_latitude = coverage.latitude_rad is not None
     return {
         "bins": str(coverage.bins),
         "snr": _optional(coverage.snr, "number"),
         "temperature_error": _optional(coverage.temperature_error_k, "temperature difference"),
         "time": _optional(coverage.minutes, "minutes"),
         "latitude": _optional(coverage.latitude_rad, "angle"),
-        "angle_max": write_quantity(coverage.angle_max_rad, "angle"),
+        "angle_max": write_quantity(coverage.angle_max_rad, "angle") if has_latitude else None,
         "lit": coverage.lit,
         "spot": coverage.spot or None,
         "candidates": coverage.candidates,

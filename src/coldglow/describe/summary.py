@@ -5,10 +5,21 @@ from __future__ import annotations
 import math
 
 from coldglow.describe.column import line_of_sight_column
-from coldglow.describe.records import Cooling, Estimate, Instrument, Request, Setting, Site, Target
+from coldglow.describe.records import (
+    Conditions,
+    Cooling,
+    Coverage,
+    Estimate,
+    Instrument,
+    Request,
+    Setting,
+    Site,
+    Target,
+)
 from coldglow.units import KINDS, from_si, show_quantity
 
 Rows = list[tuple[str, str]]
+LISTED = 6  # nights that are named
 
 
 def summary(record: Target | Instrument | Request) -> Rows:
@@ -131,6 +142,30 @@ def _instrument(instrument: Instrument) -> Rows:
     return rows
 
 
+def _coverage(coverage: Coverage) -> str:
+    if coverage.snr is not None:
+        goal = f"SNR {coverage.snr:g}"
+    elif coverage.temperature_error_k is not None:
+        goal = f"temperature to {coverage.temperature_error_k:g} K"
+    else:
+        goal = f"{coverage.minutes:g} min"
+    where = f"{goal} in each of {coverage.bins} bins of longitude"
+    if coverage.spot:
+        where = f"{goal} on the spot {coverage.spot}"
+    elif coverage.latitude_rad is not None:
+        where += f" at latitude {show_quantity(coverage.latitude_rad, 'angle', 4)}"
+    return f"{where}, by {coverage.candidates}"
+
+
+def _conditions(conditions: Conditions) -> str:
+    stated = []
+    if conditions.seeing_rad is not None:
+        stated.append(f"seeing {show_quantity(conditions.seeing_rad, 'small angle', 3)}")
+    if conditions.water_m is not None:
+        stated.append(f"water {show_quantity(conditions.water_m, 'water', 3)}")
+    return ", ".join([conditions.name, *stated])
+
+
 def _request(request: Request) -> Rows:
     dates, goal, weather = request.dates, request.goal, request.weather
     rows = [("request", request.name), ("target", request.target.name)]
@@ -138,7 +173,12 @@ def _request(request: Request) -> Rows:
         ("instrument", f"{use.instrument.name}, setting {_setting(use.setting)}") for use in request.uses
     ]
     rows.append(("longitudes", request.longitudes))
-    rows.append(("nights", f"{dates.first} to {dates.last}, offered as {dates.unit}s"))
+    offered = "days" if request.in_space else f"offered as {dates.unit}s"
+    rows.append(("nights", f"{dates.first} to {dates.last}, {offered}"))
+    for label in ("offered", "forbidden", "fixed"):
+        if some := getattr(dates, label):
+            more = f" and {len(some) - LISTED} more" if len(some) > LISTED else ""
+            rows.append((f"{label} nights", ", ".join(some[:LISTED]) + more))
     aims = []
     if goal.snr is not None:
         aims.append(
@@ -150,15 +190,19 @@ def _request(request: Request) -> Rows:
     if goal.column_error is not None:
         aims.append(f"column to {100 * goal.column_error:g} %")
     rows.append(("goal", "; ".join(aims)))
-    rows.append(("coverage", f"{request.coverage.bins} bins of longitude, by {request.coverage.candidates}"))
-    rows.append(("conditions", request.conditions.name))
-    rows.append(
-        (
-            "weather",
-            f"{100 * weather.clear_fraction:g} % clear, correlation {weather.correlation:g}, "
-            f"wanted probability {weather.probability:g}",
+    rows.append(("coverage", _coverage(request.coverage) if request.coverage.asked else "not asked for"))
+    if not request.in_space:
+        rows.append(("conditions", _conditions(request.conditions)))
+        rows.append(
+            (
+                "weather",
+                f"{100 * weather.clear_fraction:g} % clear, correlation {weather.correlation:g}, "
+                f"wanted probability {weather.probability:g}",
+            )
         )
-    )
+    budget = [] if request.budget.nights is None else [f"{request.budget.nights:g} nights"]
+    budget += [] if request.budget.hours is None else [f"{request.budget.hours:g} h"]
+    rows.append(("budget", " and ".join(budget) or "none stated"))
     rows.append(("outlook", f"{request.fade.first_year} to {request.fade.last_year}"))
     rows.append(("ephemeris", request.ephemeris or "packaged DE421"))
     return rows

@@ -8,7 +8,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.ndimage import uniform_filter1d
+from scipy.ndimage import maximum_filter1d, uniform_filter1d
 
 from coldglow.describe.records import Continuum, Instrument, Setting
 from coldglow.detect.background import PixelTable, pixel_table
@@ -25,6 +25,7 @@ from coldglow.light.lines import LineList
 NOISE_SOURCES = ("lines", "planet continuum", "sky", "telescope", "dark", "read-out")
 LINES_KEPT = 0.999  # share of the information on N and on T; the faintest lines are left out
 SMOOTHED = 2e-4  # in ln(wavelength), +-30 km/s: what the Earth's motion does to a line in a season
+NOTHING = 1e-6  # share of the light; less of it is none at all
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,7 +116,12 @@ def set_up(
     setting: Setting,
     goal_lines: tuple[str, ...] = (),
 ) -> Bench:
-    """Prepare a setting for some moments; arguments as in `expose_moments`."""
+    """Prepare a setting for some moments; arguments and errors as in `expose_moments`."""
+    if not np.any(moments.beam.light_share > NOTHING):
+        raise RangeError(
+            "The opening sees nothing of the planet: less than a millionth of its light falls in.",
+            "opening.offset",
+        )
     lines, pixels = glow.lines, make_pixels(setting)
     table = pixel_table(
         instrument,
@@ -139,6 +145,12 @@ def set_up(
             "settings.band",
         )
     wanted = goal_mask(band, goal_lines)
+    if not np.any(_clearest(band.take(wanted), pixels, table) > NOTHING):
+        raise RangeError(
+            f"None of the light of these lines arrives: in the setting {setting.name!r} the air lets less "
+            "than a millionth of it pass.",
+            "settings.band",
+        )
     radiance = photon_radiance_s_m2_sr(band, glow.temperature_k, 1.0)
     slope = log_temperature_slope(band, glow.temperature_k)
     kept = _lines_that_count(band, radiance, slope, pixels, table) | (wanted if goal_lines else False)
@@ -162,6 +174,17 @@ def set_up(
         np.array([1] * nodes + [2] * nodes + [3, 4, 5]),
         np.array([nod.source * factor] * 2 + [nod.background * factor] * 3 + [nod.background]),
     )
+
+
+def _clearest(lines: LineList, pixels: Pixels, table: PixelTable) -> np.ndarray:
+    """Return ndarray[line]: the largest transmission of the air near each line, over the moments' nodes."""
+    clear = table.unit_continuum.max(axis=0) / pixels.width_m / table.efficiency
+    if pixels.step == 0.0:
+        return np.full(len(lines), clear.max())
+    clear = maximum_filter1d(clear, max(int(SMOOTHED / pixels.step), 1))
+    place = np.log(lines.wavelength_m / pixels.low_m[0]) / pixels.step
+    largest: np.ndarray = clear[np.clip(place.astype(int), 0, pixels.low_m.size - 1)]
+    return largest
 
 
 def _lines_that_count(

@@ -110,7 +110,8 @@ def expose_moments(
             photons only make noise.
 
     Raises:
-        RangeError: no line in the setting, or an imager without any hold on the continuum.
+        RangeError: no line in the setting, none of its light passes the air or falls into the opening, or
+            an imager without any hold on the continuum.
         SaturationError: the shortest integration fills the well.
         NotFoundError: a goal line that the setting does not hold.
 

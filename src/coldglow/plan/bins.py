@@ -49,20 +49,29 @@ class BinGains:
     visits: Index  # 1 where the candidate serves the bin at all
 
 
-def resolution_rad(seeing_fwhm_rad: ArrayLike, diameter_rad: ArrayLike, blur_rad: ArrayLike = 0.0) -> Array:
+def resolution_rad(
+    seeing_fwhm_rad: ArrayLike,
+    diameter_rad: ArrayLike,
+    blur_rad: ArrayLike = 0.0,
+    latitude_rad: ArrayLike = 0.0,
+) -> Array:
     """Effective longitude resolution (FWHM) at the disk centre: seeing on the disk, and drift.
 
-    A distance d from the centre of a disk of diameter D is the longitude arcsin(2 d/D); half the seeing
-    on either side gives 2 arcsin(seeing/D), at most half a turn.
+    A distance d along the equator's direction from the centre of a disk of diameter D, which shows the
+    latitude B, is the longitude l with tan l = r / (cos B sqrt(1 - r²)), r = 2 d/D; half the seeing on
+    either side gives twice that for r = seeing/D, at most half a turn. Seen from above the pole the
+    meridians run together, and nothing is resolved.
 
     Args:
         seeing_fwhm_rad: width of the image's blur.
         diameter_rad: equatorial diameter of the disk.
         blur_rad: drift of the longitude during one integration, added in quadrature.
+        latitude_rad: sub-observer latitude.
 
     """
     ratio = np.minimum(np.asarray(seeing_fwhm_rad, dtype=float) / diameter_rad, 1.0)
-    return np.asarray(np.minimum(np.hypot(2.0 * np.arcsin(ratio), blur_rad), np.pi))
+    half = np.arctan2(ratio, np.abs(np.cos(latitude_rad)) * np.sqrt(1.0 - np.square(ratio)))
+    return np.asarray(np.minimum(np.hypot(2.0 * half, blur_rad), np.pi))
 
 
 def _smeared_step(distance: Array, half: Array, sigma: Array) -> Array:

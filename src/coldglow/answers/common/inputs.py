@@ -72,14 +72,19 @@ def place_errors(*described: Target | Instrument | Request) -> Iterator[None]:
     try:
         yield
     except (RangeError, NotFoundError) as error:
-        key = error.key
-        for record in described:
-            where = record.origin.locate(key) if key else None
-            if where:
-                error.args = (str(Problem(*where, key, str(error))),)
-                error.key = ""  # said once
-                break
+        if problem := placed(error, *described):
+            error.args = (str(problem),)
+            error.key = ""  # said once
         raise
+
+
+def placed(error: RangeError | NotFoundError, *described: Target | Instrument | Request) -> Problem | None:
+    """Return an error with the place in these descriptions to which its key path belongs, if there is one."""
+    for record in described:
+        where = record.origin.locate(error.key) if error.key else None
+        if where:
+            return Problem(*where, error.key, str(error))
+    return None
 
 
 def described(request: Request) -> tuple[Request | Target | Instrument, ...]:

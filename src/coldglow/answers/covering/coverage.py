@@ -206,7 +206,12 @@ def longitude_resolution_rad(scene: Scenario) -> Array:
     if scene.exposure is not None:
         exposed_s = float(np.median(scene.exposure.integration_s * scene.exposure.coadds))
     blur = 2.0 * np.pi * exposed_s / track.system.period_s
-    return resolution_rad(np.hypot(spread.fwhm_rad, width), track.equatorial_diameter_rad, blur)
+    return resolution_rad(
+        np.hypot(spread.fwhm_rad, width),
+        track.equatorial_diameter_rad,
+        blur,
+        track.sub_observer_latitude_rad,
+    )
 
 
 def spot_ratio(scene: Scenario, name: str) -> Array:
