@@ -99,7 +99,7 @@ def test_one_night_is_not_spoken_of_as_many():
 @pytest.fixture(scope="module")
 def covering():
     asked = request("uranus-season", "2027-11-18", "2027-12-08", asked=True, clear_fraction=0.7)
-    asked = replace(asked, coverage=replace(asked.coverage, snr=20.0))
+    asked = replace(asked, coverage=replace(asked.coverage, snr=12.0))
     found = scenes(asked)
     return asked, found, choose(asked, found)
 
@@ -152,7 +152,7 @@ def test_coverage_probability_against_a_simulation_by_hand(covering):
 
 def test_insurance_obeys_a_run_of_nights():
     asked = request("uranus-season", "2027-11-18", "2027-12-08", asked=True, clear_fraction=0.8)
-    asked = replace(asked, coverage=replace(asked.coverage, snr=20.0, consecutive=True, candidates="night"))
+    asked = replace(asked, coverage=replace(asked.coverage, snr=10.0, consecutive=True, candidates="night"))
     result = nights(asked)
     used = np.unique(result.table("requested")["night"].astype("datetime64[D]").astype(int))
     assert np.all(np.diff(used) == 1)

@@ -6,6 +6,7 @@ pixels, adds noise by the nod pattern and differentiates by finite differences.
 """
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -17,6 +18,7 @@ from coldglow.detect.bench import Glow
 from coldglow.detect.detail import expose_one
 from coldglow.detect.exposure import expose_moments
 from coldglow.detect.information import CONTINUUM_UNIT
+from coldglow.errors import RangeError
 from coldglow.light.atmosphere import load_atmosphere
 from coldglow.light.continuum import solar_irradiance_w_m2_m
 from coldglow.light.emission import partition_function
@@ -170,6 +172,32 @@ def test_an_array_of_moments_is_each_of_them(make):
         one = expose_moments(moments.take(slice(i, i + 1)), *arguments)
         assert both.matrix[i] == pytest.approx(one.matrix[0], rel=2e-3, abs=1e-9)
         assert both.variance_share[i] == pytest.approx(one.variance_share[0], rel=1e-3)
+
+
+def test_the_planets_rotation_adds_to_its_range_rate(make):
+    made = make.instrument(detector={"full_well_e": 1e9})
+    still = make.moments_of(made, range_rate_m_s=(21e3,))
+    beam = replace(still.beam, velocity_m_s=np.array([15e3]))
+    turning = replace(make.moments_of(made, range_rate_m_s=(6e3,)), beam=beam)
+    arguments = (Glow(LINES, 500.0, 1e15, make.grey), AIR, made, made.settings[0])
+    one, other = expose_moments(still, *arguments), expose_moments(turning, *arguments)
+    np.testing.assert_allclose(other.matrix, one.matrix, rtol=1e-12)
+    away = replace(turning, range_rate_m_s=np.array([-6e3]))
+    assert not np.allclose(expose_moments(away, *arguments).matrix, one.matrix, rtol=1e-4)
+
+
+def test_an_opening_that_sees_nothing_and_a_dark_band_are_refused(make):
+    made = make.instrument(detector={"full_well_e": 1e9})
+    moments = make.moments_of(made)
+    nothing = replace(moments, beam=replace(moments.beam, light_share=np.array([1e-9])))
+    glow = Glow(LINES, 500.0, 1e15, make.grey)
+    with pytest.raises(RangeError, match="sees nothing of the planet") as beside:
+        expose_moments(nothing, glow, AIR, made, made.settings[0])
+    assert beside.value.key == "opening.offset"
+    dark = make.instrument(settings={"band_m": (2.700e-6, 2.701e-6)}, detector={"full_well_e": 1e9})
+    with pytest.raises(RangeError, match="None of the light of these lines arrives") as opaque:
+        expose_moments(make.moments_of(dark), glow, AIR, dark, dark.settings[0])
+    assert opaque.value.key == "settings.band"
 
 
 def test_a_line_under_a_telluric_one_loses(make):

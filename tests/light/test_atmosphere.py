@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 import time
 
 import numpy as np
@@ -166,6 +167,34 @@ def test_below_the_horizon_there_is_no_transmission():
     assert 0.9 < got[0, 0] < 1.0
     assert math.isnan(got[1, 0])
     assert np.isnan(atmosphere.line_transmission(AIR, 3.953e-6, 1200.0, 0.0, math.nan, 0.002)).all()
+
+
+def test_pixels_finer_than_the_table_are_means_of_straight_lines_between_its_samples():
+    # 40 pixels in three samples of the table, against a fine sum over the interpolated samples
+    step = AIR.log_step
+    middle = round(np.log(3.95e-6 / AIR.first_wavelength_m) / step)
+    place = middle + np.linspace(0.2, 3.1, 41)
+    edges = AIR.first_wavelength_m * np.exp(step * place)
+    samples = AIR.first_wavelength_m * np.exp(step * np.arange(middle, middle + 6))
+    clear = AIR.transmission(samples, 1.5, 0.002)
+    fine = np.linspace(place[:-1], place[1:], 401)
+    weight = np.interp(
+        fine, np.arange(middle, middle + 6), samples * clear
+    )  # the mean is one over wavelength
+    by_hand = step * np.trapezoid(weight, fine, axis=0) / np.diff(edges)
+    np.testing.assert_allclose(AIR.pixel_means(edges, 1.5, 0.002), by_hand, rtol=3e-7)
+
+
+def test_the_heights_that_are_said_to_be_served_are_served():
+    with pytest.raises(RangeError) as refused:
+        atmosphere.load_atmosphere(9000.0)
+    low, high = (float(text) for text in re.search(r"serves (\d+) to (\d+) m", str(refused.value)).groups())
+    assert 0.0 < low < 2600.0 < 4200.0 < high < 9000.0
+    for height in (low + 1.0, high - 1.0):
+        assert atmosphere.load_atmosphere(height).span_m[0] < 2e-6
+    for height in (low - 1.0, high + 1.0):
+        with pytest.raises(RangeError, match="does not reach"):
+            atmosphere.load_atmosphere(height)
 
 
 def test_pixel_means_are_additive_and_meet_the_monochromatic_mean():

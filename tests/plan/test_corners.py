@@ -72,6 +72,13 @@ def test_the_quick_answer_takes_fixed_nights_and_never_a_night_with_its_halves()
     assert float(chosen @ gain[:, 0]) >= 2.0
 
 
+def test_the_quick_answer_takes_no_forbidden_night_however_good():
+    gain = np.array([[9.0], [1.0], [1.0]])
+    rules = Rules(forbidden_nights=(0,), fixed_sets=((0, 1),))
+    chosen = greedy(nights(3), gain, Amount(np.array([2.0])), rules, np.ones(1, dtype=bool))
+    assert chosen.tolist() == [0.0, 1.0, 1.0]
+
+
 def test_the_quick_answer_drops_what_turned_out_not_to_be_needed():
     # the first choice (most per cost) is made superfluous by the two that follow
     gain = np.array([[0.8, 0.8, 0.0], [1.0, 0.0, 0.5], [0.0, 1.0, 0.5]])

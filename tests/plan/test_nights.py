@@ -127,6 +127,9 @@ def test_temperature_error_needs_both_lines():
 def test_goals_fail_together_under_one_sky():
     gain, demand = one(np.ones(6)), Amount(np.array([3.0]))
     alone = curve(gain, demand, np.arange(6), np.ones(6), np.arange(6), PLAIN)
+    alone = joint_curve([(gain, demand)], np.arange(6), np.ones(6), np.arange(6), PLAIN)
+    assert alone.units.tolist() == [1, 2, 3, 4, 5, 6]
+    assert alone.cost.tolist() == [1.0, 2.0, 3.0, 4.0, 5.0, 6.0]
     twice = joint_curve([(gain, demand), (2 * gain, demand)], np.arange(6), np.ones(6), np.arange(6), PLAIN)
     np.testing.assert_allclose(twice.probability, alone.probability, atol=1e-12)
 
@@ -138,8 +141,8 @@ def test_scatter_has_the_stated_size():
     )
     # I goes with the square of the signal: sigma(ln I) = 2 sqrt(0.2² + 0.3²)
     assert np.log(drawn).std() == pytest.approx(2.0 * np.hypot(0.2, 0.3), rel=0.02)
-    sky = scatter_factors((4000, 10), rng, quartile_information=((1.5, 1.0, 0.6),))
-    np.testing.assert_allclose(np.quantile(sky, [0.25, 0.5, 0.75]), [0.6, 1.0, 1.5], rtol=0.03)
+    sky = scatter_factors((4000, 10), rng, quartile_information=((1.5, 0.8, 0.4),))
+    np.testing.assert_allclose(np.quantile(sky, [0.25, 0.5, 0.75]), [0.4, 0.8, 1.5], rtol=0.03)
     assert np.all(scatter_factors((5, 3), rng) == 1.0)
 
 

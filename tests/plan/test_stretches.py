@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from hypothesis import given
@@ -145,6 +147,29 @@ def test_chart_puts_each_night_in_its_row():
     assert np.array_equal(seen[0], seen[2])
     assert chart[1, 60] == pytest.approx(np.nan, nan_ok=True)  # 10.0 h, in the hole
     assert chart[1, 72] == pytest.approx(1.0)  # 12 h
+
+
+def test_a_visit_shorter_than_a_step_is_a_step():
+    steps = season(nights=1)
+    first, end = runs(steps.time_s, steps.step_s, steps.observable, steps.night, longest_s=60.0)
+    assert np.all(end - first == 1)
+    assert first.size == steps.observable.sum()
+
+
+def test_rate_of_longitude_is_that_towards_the_nearer_neighbour():
+    steps = replace(season(nights=1), time_s=np.array([0.0, 100.0, 300.0, 350.0]))
+    steps = replace(steps, longitude_rad=np.array([0.0, 1.0, 2.0, 2.9]))
+    np.testing.assert_allclose(longitude_rate(steps), [1e-2, 1e-2, 0.9 / 50.0, 0.9 / 50.0])
+
+
+def test_chart_of_wide_columns_holds_the_mean_of_what_can_be_observed():
+    steps = season(nights=2, step_s=600.0)
+    hour, chart = season_chart(steps, steps.airmass, 24)  # six steps in each hour
+    for night in (0, 1):
+        for k in (8, 10, 15):
+            inside = (steps.time_s // 3600.0 == 24 * night + k) & steps.observable
+            assert chart[night, k] == pytest.approx(steps.airmass[inside].mean(), rel=1e-12)
+    assert hour[10] == 10.5
 
 
 def test_longitudes_of_a_stretch_are_those_half_a_step_beyond_its_steps():

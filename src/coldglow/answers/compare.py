@@ -148,9 +148,10 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
     best = int(np.argmax(given.information))
     common = use.instrument.operation.common_floor
     open_s = max(need.open_s for need in wanted)
+    reached = bool(np.isfinite(open_s))
     fixed_k = seen.systematic(float(given.shutter_s[best])).temperature_total_k
-    nights = float(planned.header["nights"].value) if "nights" in planned.header else np.inf
-    feasible = bool(np.isfinite(open_s)) and planned.feasible
+    nights = float(planned.header["nights"].value) if reached and "nights" in planned.header else np.inf
+    feasible = reached and planned.feasible
     return Verdict(
         use.instrument.name,
         use.setting.name,
@@ -160,7 +161,7 @@ def _judge_one(request: Request, use: Use, track: Track) -> Verdict:
         float(snr(given.information[best], common_floor=common)),
         float(temperature_error(given.matrix[best])) if np.isfinite(fixed_k) else np.inf,
         fixed_k,
-        _noisiest(seen) if np.isfinite(open_s) else "floors",
+        _noisiest(seen) if reached else "floors",
         feasible,
         "" if feasible else _why_not(wanted, planned),
         conditions_words(use, scene.air),
@@ -275,10 +276,11 @@ def _sentences(request: Request, best: list[Verdict]) -> Iterator[str]:
     if request.coverage.asked:
         yield "These are the goals on the whole disk; `cover` answers how to cover the rotation."
     bad = [verdict for verdict in best if not verdict.feasible]
-    costly = [f"{_name(verdict)} with {verdict.asked}" for verdict in bad if verdict.asked]
+    bounded = [verdict for verdict in bad if np.isfinite(verdict.time_to_goal_s)]
+    costly = [f"{_name(verdict)} with {verdict.asked}" for verdict in bounded if verdict.asked]
     if costly:
         yield f"More than the budget allows: {words.listing(costly)}."
-    deep = [_name(verdict) for verdict in bad if not verdict.asked and np.isfinite(verdict.time_to_goal_s)]
+    deep = [_name(verdict) for verdict in bounded if not verdict.asked]
     if deep:
         yield (
             f"Not with all the nights on offer, or not with the wanted probability: {words.listing(deep)}."

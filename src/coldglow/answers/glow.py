@@ -9,6 +9,7 @@ import numpy as np
 from coldglow.answers.common.inputs import NamePath, Quantity, as_target, in_si, place_errors
 from coldglow.describe.column import mean_path_factor
 from coldglow.describe.records import Target
+from coldglow.errors import RangeError
 from coldglow.light.emission import (
     equilibrium_warnings,
     line_radiance_w_m2_sr,
@@ -70,8 +71,13 @@ def glow(
         fraction = 1.0
         along_m2, kind = in_si(column_density, "column", "column"), "along the line of sight, as asked"
     low_m, high_m = (in_si(edge, "wavelength", "band") for edge in band) if band else (1.9e-6, 5.5e-6)
+    for name, value, unit in (("temperature", kelvin, "K"), ("column", along_m2, "m-2")):
+        if not value > 0.0:
+            raise RangeError(f"a {name} of {value:g} {unit} is not positive")
+    if not low_m < high_m:
+        raise RangeError(f"the band begins at {1e6 * low_m:g} um and ends at {1e6 * high_m:g} um, not later")
     with place_errors(record):
-        lines = lines_in(min(low_m, high_m), max(low_m, high_m))
+        lines = lines_in(low_m, high_m)
         radiance = line_radiance_w_m2_sr(lines, kelvin, along_m2)
         photons = photon_radiance_s_m2_sr(lines, kelvin, along_m2)
         total = float(total_radiance_w_m2_sr(load_lines(), kelvin, along_m2))

@@ -71,9 +71,9 @@ class LineList:
         """Return the index of the line that a label or a vacuum wavelength means.
 
         A label is ``Q(1,0)`` or ``Q(1;0)``, with the band before it where several bands have such a line
-        (``2v2(l2)-ground tR(4,4)``); without a band the line that glows most per molecule at 600 K is
-        taken. A wavelength is a number in metres or a text with unit (``3.953 um``) and means the line
-        that glows most within half a nanometre of it.
+        (``2v2(l2)-ground tR(4,4)``); without a band the line that glows most per molecule at 600 K of
+        all in the packaged list is meant. A wavelength is a number in metres or a text with unit
+        (``3.953 um``) and means the line that glows most within half a nanometre of it.
 
         Raises:
             NotFoundError: there is no such line among these; the sentence names the nearest ones.
@@ -89,11 +89,25 @@ class LineList:
             i for i, name in enumerate(self.label) if name == label and (not band or self.band[i] == band)
         ]
         if matches:
-            return max(matches, key=self._glow)
+            best = max(matches, key=self._glow)
+            return best if band else self._meant(label, best)
         quote = " (a label with a comma needs quotes in a list)" if text.count("(") != text.count(")") else ""
         near = get_close_matches(label, sorted({name for name in self.label if name}), 3, 0.4)
         hint = f"the nearest labels are {', '.join(near)}" if near else "no label is near it"
         raise NotFoundError(f"no line {wanted!r} among these {len(self)} lines{quote}; {hint}")
+
+    def _meant(self, label: str, best: int) -> int:
+        """Return the line among these, unless a label without band means one that is not among them."""
+        every = load_lines()
+        same = [i for i, name in enumerate(every.label) if name == label]
+        meant = max(same, key=every._glow, default=-1)
+        if meant < 0 or every._glow(meant) <= 1.01 * self._glow(best):
+            return best
+        raise NotFoundError(
+            f"{label} is the line of {every.band[meant]} at {1e6 * every.wavelength_m[meant]:.5f} um, which "
+            f"is not among these {len(self)}; write '{self.band[best]} {label}' for the one at "
+            f"{1e6 * self.wavelength_m[best]:.5f} um"
+        )
 
     def _glow(self, index: int) -> float:
         """Return the photon emission of a line, up to a common factor, at 600 K."""

@@ -23,6 +23,7 @@ _UNIT_WORDS = {
 }
 _SHORT_NAMES = {"snr": "SNR", "ra": "RA", "dec": "Dec", "icrs": "ICRS", "utc": "UTC", "lte": "LTE"}
 NOTHING = "–"
+LONG_H = 10000  # a time beyond is told as such
 
 
 def decimals_for(value: float, digits: int) -> int:
@@ -160,11 +161,16 @@ def rounded_pair(value: float, error: float) -> tuple[str, str, int]:
 
 
 def duration(seconds: float) -> str:
-    """Return a length of time in plain words: ``3 h 20 min``, ``45 s``, ``never`` for infinity."""
+    """Return a length of time in plain words: ``3 h 20 min``, ``45 s``, ``never`` for infinity.
+
+    Beyond what any telescope gives it is only "more than 10 000 h".
+    """
     if math.isnan(seconds):
         return NOTHING
     if math.isinf(seconds):
         return "never"
+    if seconds > 3600.0 * LONG_H:
+        return f"more than {LONG_H // 1000} 000 h"
     if seconds < 0:
         return "−" + duration(-seconds)
     if seconds < 10:

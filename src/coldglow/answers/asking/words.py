@@ -126,7 +126,7 @@ def _answer(plan: Plan) -> Iterator[str]:
         yield f"That is more than the budget of {words.listing(most)}: not feasible as it stands."
     names = [given.name(int(i)) for i in plan.order[: plan.chosen + 1]]
     tail = f"; {'; '.join(names[:LISTED])}" + (" and so on" if len(names) > LISTED else "")
-    yield f"In the order of their worth these are{tail[1:]}."
+    yield f"They are asked for in this order:{tail[1:]}."
     if request.goal.snr is not None and request.goal.probability == 0.5:
         yield "At an expected SNR equal to the goal the measured one reaches it about half of the time."
 
@@ -144,14 +144,16 @@ def _coverage(plan: Plan, choice: Choice | None) -> Iterator[str]:
             f"in these numbers, of {plan.choice.question.bins}."
         )
         yield from missing_words(choice)
+    if plan.chosen is None or plan.chosen < plan.needed:
+        return
     if plan.method == "all sets compared":
         yield "The insurance is the best there is at this cost: all sets were compared."
     elif plan.method and plan.request.coverage.block_nights > 1:
         yield "Nights come in blocks, for which no insurance is worked out: these are those of the cover."
     elif plan.method:
         yield (
-            "The insurance was added to the smallest cover one by one, the most helpful first, and each "
-            "exchanged while that helped: good, but not proven to be the best."
+            "The insurance was added one by one, what helps the coverage most first, and each exchanged "
+            "while that helped: good, but not proven to be the best."
         )
 
 
