@@ -73,7 +73,7 @@ def glow(
     low_m, high_m = (in_si(edge, "wavelength", "band") for edge in band) if band else (1.9e-6, 5.5e-6)
     for name, value, unit in (("temperature", kelvin, "K"), ("column", along_m2, "m-2")):
         if not value > 0.0:
-            raise RangeError(f"a {name} of {value:g} {unit} is not positive")
+            raise RangeError(f"a {name} of {value:g} {unit} is not above 0 {unit}")
     if not low_m < high_m:
         raise RangeError(f"the band begins at {1e6 * low_m:g} um and ends at {1e6 * high_m:g} um, not later")
     with place_errors(record):

@@ -27,15 +27,17 @@ def comparison(
 ) -> Figure:
     """Draw a ruled row per instrument and setting, in the order given, with its time on a log scale.
 
-    `time_to_goal_h`: ndarray[row], inf or nan where the goal is out of reach; `limited_by` says why, or
-    what limits.
+    `time_to_goal_h`: ndarray[row], inf or nan where the goal is out of reach, as it is beyond 10 000 h;
+    `limited_by` says why, or what limits.
     """
+    time_to_goal_h = np.where(time_to_goal_h <= words.LONG_H, time_to_goal_h, np.inf)
     count = len(labels)
     left = min(0.3 + 0.068 * max(map(len, labels), default=10), 2.6)
     figure, ((main,),) = look.panels(1.0 + _ROW_IN * count, margins_in=(left, 2.15, 0.45, 0.5))
     finite = time_to_goal_h[np.isfinite(time_to_goal_h)]
     low, high = (float(finite.min()), float(finite.max())) if finite.size else (0.1, 10.0)
-    low, high = 10 ** np.floor(np.log10(low) - 0.3), 10 ** np.ceil(np.log10(high) + 0.1)
+    low = 10 ** np.floor(np.log10(low) - 0.3)
+    high = min(10 ** np.ceil(np.log10(high) + 0.1), words.LONG_H)
     main.set_xscale("log")
     main.set_xlim(low, high)
     main.set_ylim(count - 0.5, -0.5)
