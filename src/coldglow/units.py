@@ -126,7 +126,7 @@ _SUPERSCRIPTS = str.maketrans("⁻⁺⁰¹²³⁴⁵⁶⁷⁸⁹−", "-+0123456
 def quoted(text: str) -> str:
     """Return the text between back quotes, shortened when it is long, on one line, controls as escapes."""
     line = " ".join(text.split())
-    line = "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in line)
+    line = "".join(c if c.isprintable() else repr(c)[1:-1] for c in line)
     return f"`{line if len(line) <= 60 else line[:57] + '...'}`"
 
 
