@@ -13,7 +13,7 @@ from coldglow.answers.nights import nights
 from coldglow.cli import parse
 from coldglow.describe.load import load_instrument, load_request, load_target, names
 from coldglow.describe.records import Use
-from coldglow.errors import DateError, NotFoundError, RangeError
+from coldglow.errors import DateError, DescriptionError, NotFoundError, RangeError
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
 THREE = ["echelle-8m", "longslit-4m", "cold-space-ifu"]
@@ -178,3 +178,12 @@ def test_an_imager_tells_no_temperature(three):
     found = compare(request(), ["narrowband-3m"])
     assert np.all(np.isinf(found["temperature_error"]))
     assert np.all(np.isfinite(three["temperature_error"][three["feasible"]]))
+
+
+def test_a_broken_file_that_nobody_asked_for_is_left_out(tmp_path, monkeypatch):
+    (tmp_path / "broken.yaml").write_text("format: coldglow-instrument/1\nextends: echelle-8m\nnonsense: 1\n")
+    asked = request()
+    monkeypatch.chdir(tmp_path)
+    assert "echelle-8m" in {uses[0].instrument.name for uses in rivals(asked)}
+    with pytest.raises(DescriptionError, match="nonsense"):
+        rivals(asked, [str(tmp_path / "broken.yaml")])

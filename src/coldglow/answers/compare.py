@@ -18,7 +18,7 @@ from coldglow.answers.nights import nights_of
 from coldglow.describe.load import load_instrument_for, names
 from coldglow.describe.records import Instrument, Request, Use
 from coldglow.detect.exposure import NOISE_SOURCES
-from coldglow.errors import DateError, NotFoundError, RangeError, SaturationError
+from coldglow.errors import DateError, DescriptionError, NotFoundError, RangeError, SaturationError
 from coldglow.plan.compare import ranking
 from coldglow.plan.goal import snr, temperature_error
 from coldglow.report import words
@@ -100,9 +100,11 @@ def rivals(
 ) -> list[tuple[Use, ...]]:
     """Return every setting of every instrument, grouped by instrument.
 
-    An instrument that the request names keeps the request's description and cost.
+    An instrument that the request names keeps the request's description and cost. Of the files that lie
+    about, unasked for, those with mistakes are left out.
     """
     own = {use.instrument.name: use for use in reversed(request.uses)}
+    asked_for = instruments is not None
     if instruments is None:
         shipped = names("instrument")
         instruments = [*shipped, *(name for name in own if name not in shipped)]
@@ -113,7 +115,12 @@ def rivals(
         elif str(each) in own:
             instrument = own[str(each)].instrument
         else:
-            instrument = load_instrument_for(request, each)
+            try:
+                instrument = load_instrument_for(request, each)
+            except DescriptionError:
+                if asked_for:
+                    raise
+                continue
         cost = own[instrument.name].cost_per_night if instrument.name in own else 1.0
         found[instrument.name] = tuple(Use(instrument, setting, cost) for setting in instrument.settings)
     return list(found.values())
