@@ -76,7 +76,7 @@ def goals_of(request: Request, given: Offers) -> list[Wanted]:
         )
     if goal.column_error is not None:
         swapped = given.matrix[:, None, ::-1, ::-1]  # the same demand with the roles of N and T exchanged
-        text = f"column to ± {words.percent(goal.column_error)}"
+        text = f"column to ± {words.short(100.0 * goal.column_error)} %"
         found.append(Wanted(swapped, TemperatureError(np.array([goal.column_error])), text))
     return found
 

@@ -205,7 +205,7 @@ def _stare_words(choice: Choice) -> Iterator[str]:
         f"A stare of {words.duration(length_s)} ({words.number(turns, 3)} turns) from {begin}, {visits}, "
         f"gives {covered_words(choice)}"
         + (
-            "; no shorter one that sees a full turn does, whenever it begins."
+            "; no shorter one that sees a full turn does, of all starts tried."
             if cover.kind == "full"
             else ": the longest there is."
         )

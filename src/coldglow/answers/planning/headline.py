@@ -156,7 +156,7 @@ def _how_long(found: Findings) -> str:
     for index, need in enumerate(best.needs):
         if np.isfinite(need.clock_s):
             text = f"{names[need.name]} takes {words.duration(need.clock_s)} of clock time"
-            text += ", the shortest visit" if need.open_s <= best.seen.visit.shortest_s else ""
+            text += " (the shortest visit)" if need.open_s <= best.seen.visit.shortest_s else ""
             random = span(best.brightness.random_s[index])
             parts.append(f"{text} ({random} if the planet is 1σ brighter or fainter)" if random else text)
         else:
