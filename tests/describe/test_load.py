@@ -6,7 +6,7 @@ import pytest
 import yaml
 
 from coldglow.describe.load import load_any, load_instrument, load_request, load_target, names
-from coldglow.describe.records import Estimate, Instrument, Orbit, Origin, Request, Target
+from coldglow.describe.records import Budget, Estimate, Instrument, Orbit, Origin, Request, Target
 from coldglow.describe.resolved import resolved, resolved_text
 from coldglow.errors import DescriptionError, NotFoundError
 
@@ -222,3 +222,17 @@ def test_an_instrument_needs_a_setting(write):
 
 def test_an_origin_that_knows_nothing_says_so():
     assert Origin("x.yaml").locate("emission.column") is None
+
+
+@pytest.mark.parametrize(
+    ("budget", "nights", "hours", "allowed"),
+    [
+        (Budget(None, None), 1e4, 1e5, True),
+        (Budget(3.0, None), 3.0, 1e5, True),
+        (Budget(3.0, None), 3.5, 1.0, False),
+        (Budget(3.0, 20.0), 2.0, 20.0, True),
+        (Budget(3.0, 20.0), 2.0, 20.5, False),
+    ],
+)
+def test_a_budget_is_of_nights_and_of_hours(budget, nights, hours, allowed):
+    assert budget.allows(nights, hours) is allowed

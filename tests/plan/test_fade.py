@@ -202,3 +202,9 @@ def test_the_coldest_temperature_of_a_year_costs_exactly_the_budget():
     assert edge.kind == "found"
     assert nights_for(night_information(grid, 0, edge.value, column), rules) == 3
     assert nights_for(night_information(grid, 0, edge.value - 0.01, column), rules) == 4
+
+
+def test_in_space_the_time_is_used_by_the_hour():
+    rules = Rules(5.0, 1.67, whole=False)
+    np.testing.assert_allclose(nights_for(np.array([10.0, 50.0, 0.0]), rules), [2.5, 0.5, np.inf])
+    assert nights_for(np.array([10.0, 50.0]), Rules(5.0, 1.67)).tolist() == [3.0, 1.0]
