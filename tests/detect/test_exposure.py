@@ -174,6 +174,18 @@ def test_an_array_of_moments_is_each_of_them(make):
         assert both.variance_share[i] == pytest.approx(one.variance_share[0], rel=1e-3)
 
 
+def test_moments_of_different_airmass_are_each_of_them(make):
+    made = make.instrument(detector={"full_well_e": 1e9})
+    moments = make.moments_of(made, airmass=(1.05, 1.45, 1.9), range_rate_m_s=(4e3,) * 3)
+    arguments = (Glow(LINES, 500.0, 1e15, make.grey), AIR, made, made.settings[0])
+    together = expose_moments(moments, *arguments)
+    for i in range(3):
+        one = expose_moments(moments.take(slice(i, i + 1)), *arguments)
+        assert together.matrix[i, 0, 0] == pytest.approx(one.matrix[0, 0, 0], rel=5e-3)
+        assert together.variance_share[i] == pytest.approx(one.variance_share[0], rel=1e-2, abs=1e-6)
+    assert together.line_transmission[2] < together.line_transmission[0]
+
+
 def test_the_planets_rotation_adds_to_its_range_rate(make):
     made = make.instrument(detector={"full_well_e": 1e9})
     still = make.moments_of(made, range_rate_m_s=(21e3,))

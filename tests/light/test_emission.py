@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from scipy import constants
 
 from coldglow.errors import RangeError
 from coldglow.light import emission
@@ -200,3 +201,17 @@ def test_an_impossible_temperature_is_refused(temperature_k):
     with pytest.raises(RangeError, match="above 0 K") as caught:
         emission.partition_function([500.0, temperature_k])
     assert caught.value.key == "emission.temperature"
+
+
+@pytest.mark.parametrize("temperature_k", [200.0, 600.0, 1500.0])
+def test_radiance_and_optical_depth_obey_kirchhoffs_law(lines, temperature_k):
+    # in equilibrium a thin line radiates its optical depth times the Planck function, over its whole profile
+    column_m2 = 1e12
+    frequency = constants.c / lines.wavelength_m
+    planck = 2.0 * constants.h * frequency**3 / constants.c**2
+    planck = planck / np.expm1(constants.h * frequency / (constants.k * temperature_k))
+    mass_kg = 3.0 * (constants.value("proton mass") + constants.m_e) - constants.m_e
+    width = frequency / constants.c * np.sqrt(constants.k * temperature_k / mass_kg)
+    depth = emission.optical_depth(lines, temperature_k, column_m2)
+    radiance = emission.line_radiance_w_m2_sr(lines, temperature_k, column_m2)
+    np.testing.assert_allclose(planck * depth * np.sqrt(2.0 * np.pi) * width, radiance, rtol=2e-5)

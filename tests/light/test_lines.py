@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import time
 
 import numpy as np
@@ -125,6 +126,9 @@ def test_an_unknown_line_names_the_nearest(lines, wanted, named):
 def test_a_band_without_lines_is_refused():
     with pytest.raises(RangeError, match=r"1\.9 to 5\.5 um"):
         lines_in(1.0e-6, 1.2e-6)
+    band = lines_in(3.9e-6, 4.0e-6)
+    assert len(band) > 50
+    assert band.wavelength_m.min() >= 3.9e-6
 
 
 def test_only_well_placed_lines_can_be_called_hidden(lines):
@@ -134,3 +138,13 @@ def test_only_well_placed_lines_can_be_called_hidden(lines):
     assert np.all(sigma[~placed] > 1.5e4)  # 0.3 cm-1 at 5 263 cm-1 is 17 km/s
     index = lines.quality.index("D")
     assert sigma[index] == pytest.approx(299792458.0 * lines.wavelength_m[index] / 0.01)
+
+
+def test_a_label_means_its_brightest_line_and_no_fainter_one_that_happens_to_be_there():
+    band = lines_in(3.90e-6, 4.05e-6)
+    with pytest.raises(
+        NotFoundError, match=r"R\(3,3\)l is the line of v2-ground at 3\.5336.* which is not"
+    ) as refused:
+        band.find("R(3,3)l")
+    name = re.search("write '(.*)' for", str(refused.value)).group(1)
+    assert f"{band.band[band.find(name)]} R(3,3)l" == name

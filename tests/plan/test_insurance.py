@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from itertools import combinations
 
 import numpy as np
@@ -62,6 +63,16 @@ def test_insurance_keeps_the_base_and_raises_the_chance():
     assert np.all(np.diff(chances) > 0.0)
     kinds = np.bincount(found.chosen % 3)
     assert kinds.tolist() == [3, 3, 3]  # insurance is spread over what can fail
+
+
+def test_the_best_per_cost_are_tried_first(monkeypatch):
+    monkeypatch.setattr(insurance, "BRUTE_SETS", 0)
+    gain = np.linspace(0.05, 1.0, 20)[:, None]
+    candidates = replace(nights(20), cost=np.where(np.arange(20) < 18, 1.0, 2.0))
+    rules, certain = Rules(cost_max=2.0), Weather(1.0, 0.0, 100, 5)
+    found = robust_set(candidates, gain, Amount(np.array([1.74])), rules, certain)
+    assert found.chosen.tolist() == [16, 17]  # 0.85 and 0.9 for one each; the two brightest cost two each
+    assert found.probability == 1.0
 
 
 def test_no_more_is_added_than_is_enough(monkeypatch):
