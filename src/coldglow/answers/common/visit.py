@@ -144,7 +144,7 @@ def _error_need(kind: str, shown: str, beyond: str, open_s: float, visit: Visit)
     clock_s = float(visit.clock_s(open_s))
     text = f"The {kind} is known to ± {shown} (random) in {words.duration(clock_s)}"
     if 0.0 < open_s <= visit.shortest_s:
-        text += ", the shortest visit there is"
+        text += " (the shortest visit there is)"
     if not np.isfinite(open_s):
         text = f"The {kind} is never known to ± {shown}: these lines alone do not give it"
     elif beyond:

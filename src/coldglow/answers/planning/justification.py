@@ -91,7 +91,7 @@ def _sensitivity(each: Exposed) -> str:
     for index, need in enumerate(each.needs):
         text = need.text
         if np.isfinite(need.clock_s):
-            text += " on the clock, all overheads included"
+            text += ", all overheads included"
             random = span(each.brightness.random_s[index])
             text += f" ({random} for a planet 1σ brighter or fainter)" if random else ""
         parts.append(f"{text}.")
