@@ -176,6 +176,8 @@ def parse_quantity(text: str, kind: str, default_unit: str | None = None) -> flo
         sign, degrees, minutes, seconds = parts.groups()
         value = int(degrees) + int(minutes) / 60 + float(seconds or 0) / 3600
         return math.radians(-value if sign == "-" else value)
+    if angle and re.match(r"[+-]?\d+:", stripped):
+        raise UnitError(f"{quoted(text)} is no angle; minutes and seconds have two digits and are below 60")
     number = _NUMBER.match(stripped)
     if not number or not re.match(r"[+-]?\.?\d", number.group()):
         raise UnitError(f"{quoted(text)} is not a number; {advice}")
