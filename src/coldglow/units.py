@@ -177,7 +177,9 @@ def parse_quantity(text: str, kind: str, default_unit: str | None = None) -> flo
         value = int(degrees) + int(minutes) / 60 + float(seconds or 0) / 3600
         return math.radians(-value if sign == "-" else value)
     if angle and re.match(r"[+-]?\d+:", stripped):
-        raise UnitError(f"{quoted(text)} is no angle; minutes and seconds have two digits and are below 60")
+        raise UnitError(
+            f"{quoted(text)} is no angle; minutes and seconds are whole numbers below 60, the last with decimals"
+        )
     number = _NUMBER.match(stripped)
     if not number or not re.match(r"[+-]?\.?\d", number.group()):
         raise UnitError(f"{quoted(text)} is not a number; {advice}")
