@@ -177,9 +177,7 @@ def parse_quantity(text: str, kind: str, default_unit: str | None = None) -> flo
         value = int(degrees) + int(minutes) / 60 + float(seconds or 0) / 3600
         return math.radians(-value if sign == "-" else value)
     if angle and re.match(r"[+-]?\d+:", stripped):
-        raise UnitError(
-            f"{quoted(text)} is no angle; minutes and seconds are whole numbers below 60, the last with decimals"
-        )
+        raise UnitError(f"{quoted(text)} is no angle; minutes and seconds are whole numbers below 60")
     number = _NUMBER.match(stripped)
     if not number or not re.match(r"[+-]?\.?\d", number.group()):
         raise UnitError(f"{quoted(text)} is not a number; {advice}")
