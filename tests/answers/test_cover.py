@@ -142,7 +142,7 @@ def test_more_nights_never_make_a_cover_dearer():
 
 
 def test_fixed_and_forbidden_nights():
-    asked = request(first="2027-11-18", last="2027-12-08", snr=25.0)
+    asked = request(first="2027-11-18", last="2027-12-08", snr=8.0)
     dates = replace(
         asked.dates, fixed=("2027-11-20 second", "2027-12-01"), forbidden=("2027-11-19", "2027-11-21 first")
     )

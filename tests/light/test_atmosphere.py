@@ -11,6 +11,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.constants import c
+from scipy.integrate import trapezoid
 from scipy.ndimage import gaussian_filter1d
 
 from coldglow.errors import NotFoundError, RangeError
@@ -181,7 +182,7 @@ def test_pixels_finer_than_the_table_are_means_of_straight_lines_between_its_sam
     weight = np.interp(
         fine, np.arange(middle, middle + 6), samples * clear
     )  # the mean is one over wavelength
-    by_hand = step * np.trapezoid(weight, fine, axis=0) / np.diff(edges)
+    by_hand = step * trapezoid(weight, fine, axis=0) / np.diff(edges)
     np.testing.assert_allclose(AIR.pixel_means(edges, 1.5, 0.002), by_hand, rtol=3e-7)
 
 

@@ -124,6 +124,8 @@ def test_the_same_answer_in_locales_with_other_commas_and_letters(write, tmp_pat
     assert said == "".join(
         plain_character(letter) if letter in lacking else letter for letter in f"{hours(request)}\n"
     )
+    if not lacking:
+        return
     run(["plan", request, "--out", tmp_path / "plain"], tmp_path, LC_ALL="C.UTF-8")
     run(["plan", request, "--out", tmp_path / "foreign"], tmp_path, SPOKEN, LOCALES[name], **place)
     plain, foreign = (
