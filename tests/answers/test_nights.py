@@ -269,3 +269,13 @@ def test_the_account_adds_up(covering):
     within = replace(asked, budget=Budget(0.5, None))
     assert not nights_of(within, found, choice).feasible
     assert any("more than the budget" in text for text in nights_of(within, found, choice).sentences)
+
+
+def test_what_is_said_of_the_insurance(covering):
+    asked, found, choice = covering
+    assert any("insurance was added" in text for text in nights_of(asked, found, choice).sentences)
+    certain = replace(asked, weather=replace(asked.weather, clear_fraction=1.0))
+    assert not any("insurance was added" in text for text in nights_of(certain, found).sentences)
+    blocks = replace(asked, coverage=replace(asked.coverage, block_nights=2, candidates="night", snr=8.0))
+    said = nights_of(blocks, found).sentences
+    assert any("Nights come in blocks, for which no insurance" in text for text in said)

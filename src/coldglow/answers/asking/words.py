@@ -144,13 +144,12 @@ def _coverage(plan: Plan, choice: Choice | None) -> Iterator[str]:
             f"in these numbers, of {plan.choice.question.bins}."
         )
         yield from missing_words(choice)
-    if plan.chosen is None or plan.chosen < plan.needed:
-        return
-    if plan.method == "all sets compared":
-        yield "The insurance is the best there is at this cost: all sets were compared."
-    elif plan.method and plan.request.coverage.block_nights > 1:
+    insured = plan.chosen is not None and plan.chosen >= plan.needed
+    if plan.method and plan.request.coverage.block_nights > 1:
         yield "Nights come in blocks, for which no insurance is worked out: these are those of the cover."
-    elif plan.method:
+    elif insured and plan.method == "all sets compared":
+        yield "The insurance is the best there is at this cost: all sets were compared."
+    elif insured and plan.method:
         yield (
             "The insurance was added one by one, what helps the coverage most first, and each exchanged "
             "while that helped: good, but not proven to be the best."

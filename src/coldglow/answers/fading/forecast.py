@@ -93,7 +93,7 @@ def fading(request: Request, use: Use) -> Fading:
         operation.visit_floor,
         operation.common_floor,
         budget.clear_nights,
-        whole=budget.unit != "day",
+        whole=not isinstance(use.instrument.place, Orbit),
     )
     grid = _grid(nights, kelvin, column_m2, kelvins, columns_m2)
     coldest = _coldest(grid, nights, float(column_m2[0]), rules, 1.0)

@@ -86,5 +86,5 @@ def _map(found: Fading, table: Table) -> Picture:
         f"{needed} over temperature and vertical column; {found.request.target.name} stands at "
         f"{kelvin[0]:.0f} K in {years[0]}.",
         f"{needed} for SNR {words.short(found.rules.snr)} over temperature and vertical column in "
-        f"the geometry of {years[0]}{way}. The cross shows the state of that year and its uncertainty.",
+        f"the geometry of {years[0]}{way}. The star shows the state of that year and its uncertainty.",
     )
