@@ -109,6 +109,20 @@ def fading() -> Figure:
     )
 
 
+def fading_in_space() -> Figure:
+    year = np.arange(2028, 2051)
+    middle, light = 391.0 - 6.5 * (year - 2028), np.exp(-(year - 2028) / 4.0)
+    days = 8e-5 / light
+    return fade.fade(
+        year,
+        (middle - 20, middle, middle + 20),
+        (light * 0.6, light, light * 1.5),
+        (days, days, days * 3),
+        1.67,
+        unit="day",
+    )
+
+
 def nights_map() -> Figure:
     temperature = np.linspace(300, 700, 41)
     column = np.geomspace(1e14, 1e16, 31)
@@ -232,6 +246,7 @@ def figures() -> dict[str, Callable[[], Figure]]:
         "spectrum-crowded": crowded_spectrum,
         "spectrum-imager": two_pixels,
         "comparison-long": long_comparison,
+        "fade-space": fading_in_space,
         "disk-large": lambda: beam(46.0, 1.0),
     }
 

@@ -68,13 +68,12 @@ def _nights(
     finite = np.concatenate(
         [bound[np.isfinite(bound)] for bound in interval] + [np.array([1.0, budget or 1.0])]
     )
-    top = 3 * min(float(finite.max()), 300 * float(np.median(finite)))
+    top = max(3 * min(float(finite.max()), 300 * float(np.median(finite))), 3 * (budget or 0.0))
     low, middle, high = (np.minimum(bound, 10 * top) for bound in interval)
     _band(axes, year, (low, middle, high))
     axes.set_yscale("log")
     axes.set_ylim(min(0.7, 0.7 * float(finite[finite > 0].min())), top)
-    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: words.short(value)))
-    axes.yaxis.set_minor_formatter("")
+    look.powers_of_ten(axes.yaxis)
     if budget is not None:
         axes.axhline(budget, color=look.BRICK, linewidth=1, linestyle=look.DASHES[1])
         axes.annotate(
